@@ -1,0 +1,52 @@
+"""The registry of published sources that docstrings, notebooks and tests cite by id.
+
+Keep ids short and stable. `seen` says what was read: "text" (the source itself), "abstract", or "memory".
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True)
+class Source:
+    """One published source: id, full reference with edition, and how much of it was seen."""
+
+    id: str
+    reference: str
+    seen: str
+
+
+SOURCES: dict[str, Source] = {}
+
+
+def register(*sources: Source) -> None:
+    """Add sources to the registry; an id is used once."""
+    for source in sources:
+        SOURCES[source.id] = source
+
+
+register(
+    Source(
+        "HENDERSON-1977",
+        "D. M. Henderson, Euler Angles, Quaternions, and Transformation Matrices: Working Relationships, "
+        "NASA TM-74839 / JSC-12960, July 1977",
+        "abstract",
+    ),
+    Source("DIEBEL-2006", "J. Diebel, Representing Attitude, Stanford University, 20 Oct 2006", "abstract"),
+    Source(
+        "WERTZ-1978",
+        "J. R. Wertz (ed.), Spacecraft Attitude Determination and Control, Reidel 1978, Appendix E",
+        "memory",
+    ),
+    Source(
+        "SHUSTER-1993",
+        "M. D. Shuster, A Survey of Attitude Representations, J. Astronautical Sciences 41(4), 1993",
+        "memory",
+    ),
+    Source("NAIF-ROTATION", "NAIF, CSPICE Required Reading: Rotations (toolkit N0067)", "text"),
+    Source("SOFA-2023", "IAU SOFA vector/matrix routines, issue 2023-10-11, as in ERFA 2.0.1 test program", "text"),
+    Source("CCSDS-504.0-B-2", "CCSDS 504.0-B-2, Attitude Data Messages, January 2024", "text"),
+    Source("ECSS-E-ST-60-10C", "ECSS-E-ST-60-10C, Control performance, 15 November 2008", "text"),
+    Source("ECSS-E-ST-10-09C", "ECSS-E-ST-10-09C, Reference coordinate system, 31 July 2008", "text"),
+)
