@@ -1,0 +1,234 @@
+"""Charts: ranking, histogram, margin map, margin against time, gains, a varied value; degrees throughout."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+
+import numpy as np
+from matplotlib.axes import Axes
+from matplotlib.patches import Rectangle
+from matplotlib.ticker import FuncFormatter
+from numpy.typing import NDArray
+
+from trunnion.figures.style import (
+    COLOURS,
+    DASHES,
+    INK,
+    LIMIT,
+    LOCK,
+    QUIET,
+    REGION,
+    WORST,
+    house_look,
+    label,
+    new_axes,
+    new_figure,
+    to_svg,
+)
+
+Floats = NDArray[np.float64]
+
+
+@house_look
+def ranking_chart(
+    names: Sequence[str], margins: Sequence[float], *, marked: str | None = None, limit: float | None = None
+) -> str:
+    """Bars of the guaranteed least lock margin, best on top. `margins` in deg; returns SVG text."""
+    order = np.argsort(np.asarray(margins), kind="stable")
+    figure = new_figure(height_mm=18 + 5.6 * len(names))
+    axes = new_axes(figure)
+    for row, index in enumerate(order):
+        chosen = names[index] == marked
+        axes.barh(
+            row,
+            margins[index],
+            height=0.62,
+            color=COLOURS[0] if chosen else "#dfe5ea",
+            edgecolor=INK,
+            linewidth=0.7,
+        )
+        axes.annotate(
+            f"{margins[index]:.2f}°", (margins[index], row), (3, 0), textcoords="offset points", va="center"
+        )
+    axes.set_yticks(range(len(names)), [label(names[index]) for index in order])
+    axes.grid(visible=False, axis="y")
+    axes.set_xlim(0.0, 95.0)
+    axes.set_xlabel("guaranteed least lock margin, deg")
+    _limit_line(axes, limit, vertical=True)
+    return to_svg(figure)
+
+
+@house_look
+def margin_histogram(edges: Floats, shares: Mapping[str, Floats], *, limit: float | None = None) -> str:
+    """Share of samples against lock margin. `edges` (n+1,) deg, each of `shares` (n,) in percent."""
+    figure = new_figure(height_mm=64)
+    axes = new_axes(figure)
+    for index, (name, share) in enumerate(shares.items()):
+        axes.stairs(
+            share,
+            edges,
+            label=label(name),
+            color=COLOURS[index % len(COLOURS)],
+            linestyle=DASHES[index % len(DASHES)],
+            linewidth=1.5,
+        )
+    axes.set_xlim(float(edges[0]), float(edges[-1]))
+    axes.set_ylim(bottom=0.0)
+    axes.set_xlabel("lock margin, deg")
+    axes.set_ylabel("share of samples, %")
+    _limit_line(axes, limit, vertical=True)
+    axes.legend(loc="best")
+    return to_svg(figure)
+
+
+@house_look
+def margin_map(
+    x: Floats,
+    y: Floats,
+    margin: Floats,
+    *,
+    x_label: str,
+    y_label: str,
+    region: tuple[float, float, float, float] | None = None,
+    worst: tuple[float, float] | None = None,
+) -> str:
+    """Lock margin over two angles (deg), singular set and region drawn. margin (len(y), len(x)) deg."""
+    figure = new_figure(height_mm=84)
+    axes = new_axes(figure)
+    levels = np.arange(0.0, 91.0, 10.0)
+    shades = axes.contourf(x, y, margin, levels=levels, cmap="Greys_r", vmin=-40.0, vmax=95.0)
+    lines = axes.contour(x, y, margin, levels=levels[1:-1], colors=[INK], linewidths=0.5)
+    axes.clabel(lines, fmt="%d°", fontsize=6.5)
+    if float(margin.min()) < 2.0:
+        axes.contour(x, y, margin, levels=[1.0], colors=[COLOURS[1]], linewidths=2.0)
+    if region is not None:
+        left, right, low, high = region
+        axes.add_patch(Rectangle((left, low), right - left, high - low, **REGION))
+    if worst is not None:
+        axes.plot(*worst, label="least margin", clip_on=False, **WORST)
+        axes.legend(loc="upper right", facecolor="white", frameon=True, framealpha=0.9, edgecolor=QUIET)
+    axes.grid(visible=False)
+    axes.set_xlabel(f"{label(x_label)}, deg")
+    axes.set_ylabel(f"{label(y_label)}, deg")
+    bar = figure.colorbar(shades, ax=axes, ticks=levels[::3])
+    bar.set_label("lock margin, deg")
+    return to_svg(figure)
+
+
+@house_look
+def margin_against_time(
+    times: Floats,
+    margins: Mapping[str, Floats],
+    *,
+    worst: Mapping[str, tuple[float, float]] | None = None,
+    phases: Sequence[tuple[str, float, float]] = (),
+    limit: float | None = None,
+) -> str:
+    """Lock margin (deg) against time (s); worst points marked, flight phases shaded and named."""
+    figure = new_figure(height_mm=72)
+    axes = new_axes(figure)
+    for index, (name, start, end) in enumerate(phases):
+        axes.axvspan(start, end, facecolor="#e9edf0" if index % 2 == 0 else "#f6f7f8", edgecolor="none")
+        axes.annotate(
+            label(name),
+            ((start + end) / 2, 1.0),
+            xycoords=("data", "axes fraction"),
+            va="bottom",
+            ha="center",
+        )
+    for index, (name, margin) in enumerate(margins.items()):
+        colour, dash = COLOURS[index % len(COLOURS)], DASHES[index % len(DASHES)]
+        axes.plot(times, margin, label=label(name), color=colour, linestyle=dash)
+        if worst and name in worst:
+            axes.plot(*worst[name], clip_on=False, **WORST)
+    axes.set_ylim(0.0, 92.0)
+    axes.set_xlabel("time, s")
+    axes.set_ylabel("lock margin, deg")
+    _limit_line(axes, limit, vertical=False)
+    axes.legend(loc="best", ncols=min(3, max(1, len(margins))))
+    return to_svg(figure)
+
+
+@house_look
+def gain_curves(middle: Floats, curves: Mapping[str, Floats], *, locks: Sequence[float], x_label: str) -> str:
+    """Amplification against the middle angle (deg), logarithmic; the singular values crossed."""
+    figure = new_figure(height_mm=66)
+    axes = new_axes(figure)
+    for index, (name, gain) in enumerate(curves.items()):
+        axes.semilogy(
+            middle,
+            gain,
+            label=label(name),
+            color=COLOURS[index % len(COLOURS)],
+            linestyle=DASHES[index % len(DASHES)],
+        )
+    for number, lock in enumerate(locks):
+        axes.axvline(lock, color=QUIET, linewidth=0.7)
+        axes.plot([lock], [1.0], clip_on=False, label="lock" if number == 0 else None, **LOCK)
+    axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
+    axes.set_xlabel(f"{label(x_label)}, deg")
+    axes.set_ylabel("amplification")
+    axes.legend(loc="upper center")
+    return to_svg(figure)
+
+
+@house_look
+def varied_value(
+    values: Sequence[float],
+    series: Mapping[str, tuple[Sequence[float], Sequence[float]]],
+    *,
+    x_label: str,
+    y_label: str,
+    limits: Mapping[str, Sequence[float]] | None = None,
+    flips: Sequence[tuple[float, float]] = (),
+) -> str:
+    """Result intervals [lo, hi] against one varied spec value, limits dashed, verdict flips bracketed."""
+    figure = new_figure(height_mm=72)
+    axes = new_axes(figure)
+    for start, end in flips:
+        axes.axvspan(start, end, facecolor="#efe3d8", edgecolor=COLOURS[1], hatch="////", linewidth=0.4)
+    for index, (name, (low, high)) in enumerate(series.items()):
+        colour = COLOURS[index % len(COLOURS)]
+        axes.plot(
+            values,
+            low,
+            label=label(name),
+            color=colour,
+            linestyle=DASHES[index % len(DASHES)],
+            marker="o",
+            markersize=3,
+        )
+        axes.fill_between(values, low, high, color=colour, alpha=0.2, linewidth=0)
+    for name, bound in (limits or {}).items():
+        axes.plot(values, bound, label=f"limit {label(name)}", **LIMIT)
+    axes.set_xlabel(label(x_label))
+    axes.set_ylabel(label(y_label))
+    axes.legend(loc="best")
+    return to_svg(figure)
+
+
+@house_look
+def budget_bars(terms: Mapping[str, float], *, total: float, limit: float | None, unit: str) -> str:
+    """Error budget: one bar a term, the combined figure below them, the requirement dashed."""
+    names = [*terms, "combined"]
+    values = [*terms.values(), total]
+    figure = new_figure(height_mm=18 + 6.0 * len(names))
+    axes = new_axes(figure)
+    for row, (name, value) in enumerate(zip(names, values, strict=True)):
+        whole = name == "combined" and row == len(names) - 1
+        axes.barh(
+            -row, value, height=0.6, color=COLOURS[0] if whole else "#dfe5ea", edgecolor=INK, linewidth=0.7
+        )
+        axes.annotate(f"{value:.3g}", (value, -row), (3, 0), textcoords="offset points", va="center")
+    axes.set_yticks([-row for row in range(len(names))], [label(name) for name in names])
+    axes.grid(visible=False, axis="y")
+    axes.set_xlim(0.0, 1.15 * max([*values, limit or 0.0]))
+    axes.set_xlabel(unit)
+    _limit_line(axes, limit, vertical=True)
+    return to_svg(figure)
+
+
+def _limit_line(axes: Axes, limit: float | None, *, vertical: bool) -> None:
+    if limit is None:
+        return
+    (axes.axvline if vertical else axes.axhline)(limit, label="limit", **LIMIT)

@@ -1,0 +1,292 @@
+"""Attitude drawings: triads before and after each turn, mounts on a vehicle, rings, the sphere with its caps.
+
+Everything is drawn in a parallel projection from a quarter above; `up` (the drawing's vertical) is a direction
+of the reference frame, so that a frame whose z axis points down is drawn with z down.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+from matplotlib.axes import Axes
+from matplotlib.figure import Figure
+from matplotlib.patches import Polygon
+from numpy.typing import NDArray
+
+from trunnion.figures.style import (
+    COLOURS,
+    DASHES,
+    INK,
+    LOCK,
+    QUIET,
+    RULE,
+    WORST,
+    bare_axes,
+    house_look,
+    label,
+    new_figure,
+    to_svg,
+)
+
+Floats = NDArray[np.float64]
+
+# Viewer's azimuth from the reference frame's first horizontal axis and elevation above the horizon.
+_VIEW_AZIMUTH = np.radians(-128.0)
+_VIEW_ELEVATION = np.radians(24.0)
+
+
+def view_matrix(up: Floats) -> Floats:
+    """(3, 3) rows right, upward, towards the viewer, in reference components; `up` (3,) is drawn vertical."""
+    up = np.asarray(up, float) / np.linalg.norm(up)
+    first = np.eye(3)[int(np.argmin(np.abs(up)))]
+    ahead = first - up * (first @ up)
+    ahead /= np.linalg.norm(ahead)
+    left = np.cross(up, ahead)
+    towards = np.cos(_VIEW_ELEVATION) * (np.cos(_VIEW_AZIMUTH) * ahead + np.sin(_VIEW_AZIMUTH) * left)
+    towards = towards + np.sin(_VIEW_ELEVATION) * up
+    right = np.cross(up, towards)
+    right /= np.linalg.norm(right)
+    return np.array([right, np.cross(towards, right), towards])
+
+
+@house_look
+def turns_drawing(
+    stages: Sequence[Floats], axis_words: Sequence[str], captions: Sequence[str], *, up: Floats
+) -> str:
+    """Vehicle axes before and after each turn, one panel a stage.
+
+    stages: (3, 3) matrices, columns the vehicle axes in reference components; captions: one line a panel.
+    """
+    view = view_matrix(up)
+    columns = 2 if len(stages) % 2 == 0 else len(stages)
+    rows = len(stages) // columns
+    figure = new_figure(height_mm=62 * rows)
+    for number, (stage, caption) in enumerate(zip(stages, captions, strict=True), start=1):
+        axes = bare_axes(figure, rows, columns, number)
+        if number > 1:
+            _triad(axes, view, stages[number - 2], ["", "", ""], faint=True)
+        _outline(axes, view @ stage)
+        _triad(axes, view, stage, axis_words)
+        _frame_panel(axes, caption)
+    return to_svg(figure)
+
+
+@house_look
+def mount_drawing(R_bs: Floats, host_words: Sequence[str], sensor_words: Sequence[str], *, up: Floats) -> str:
+    """A sensor triad on its host: host axes at the left, the sensor's axes at the right, same view.
+
+    R_bs (3, 3): columns are the sensor axes in host components.
+    """
+    view = view_matrix(up)
+    figure = new_figure(width_mm=130, height_mm=64)
+    axes = bare_axes(figure, 1, 2, 1)
+    _outline(axes, view)
+    _triad(axes, view, np.eye(3), host_words)
+    _frame_panel(axes, "host axes")
+    axes = bare_axes(figure, 1, 2, 2)
+    _outline(axes, view)
+    _triad(axes, view, R_bs, sensor_words, colour=COLOURS[1])
+    _frame_panel(axes, "sensor axes on the host")
+    return to_svg(figure)
+
+
+@house_look
+def rings_drawing(
+    axes_directions: Sequence[Floats], names: Sequence[str], *, up: Floats, parallel: tuple[int, int] | None
+) -> str:
+    """Gimbal rings at one set of joint angles, outermost first; axes that have become parallel are marked.
+
+    axes_directions: unit vectors (3,) of the joint axes in reference components, as they lie at those angles.
+    """
+    view = view_matrix(up)
+    figure = new_figure(width_mm=110, height_mm=84)
+    axes = bare_axes(figure)
+    count = len(axes_directions)
+    for index, (axis, name) in enumerate(zip(axes_directions, names, strict=True)):
+        radius = 1.0 - 0.2 * index
+        following = axes_directions[index + 1] if index + 1 < count else axes_directions[index - 1]
+        _ring(axes, view, axis, following, radius, index)
+        marked = parallel is not None and index in parallel
+        tip = view @ (axis * (radius + 0.22))
+        tail = view @ (-axis * (radius + 0.22))
+        axes.plot(
+            [tail[0], tip[0]],
+            [tail[1], tip[1]],
+            color=COLOURS[index % len(COLOURS)],
+            linewidth=2.4 if marked else 1.2,
+            linestyle=DASHES[index % len(DASHES)],
+        )
+        text = f"{index + 1} {label(name)}" + (" (parallel)" if marked else "")
+        shift = 0.12 * index if marked else 0.0
+        axes.annotate(
+            text,
+            (tip[0], tip[1] + shift),
+            (4, 3),
+            textcoords="offset points",
+            color=COLOURS[index % len(COLOURS)],
+        )
+    _frame_panel(axes, "")
+    return to_svg(figure)
+
+
+@house_look
+def sphere_drawing(
+    tracks: Sequence[tuple[str, Floats]],
+    *,
+    lock: Floats,
+    cap: float,
+    up: Floats,
+    lock_word: str,
+    worst: Floats | None = None,
+) -> str:
+    """Directions of a vehicle axis on the unit sphere against the forbidden caps around the lock line.
+
+    tracks: (name, (N, 3) unit vectors in reference components); lock (3,) unit; cap: half angle, rad.
+    """
+    view = view_matrix(up)
+    figure = new_figure(width_mm=120, height_mm=96)
+    axes = bare_axes(figure)
+    turn = np.linspace(0.0, 2 * np.pi, 181)
+    axes.plot(np.cos(turn), np.sin(turn), color=INK, linewidth=0.8)
+    _graticule(axes, view, up)
+    for sign in (1.0, -1.0):
+        _cap(axes, view, sign * lock, cap)
+        point = view @ (sign * lock)
+        if point[2] >= 0:
+            axes.plot(point[0], point[1], **LOCK)
+            axes.annotate(label(lock_word), (point[0], point[1]), (6, 6), textcoords="offset points")
+    for index, (name, directions) in enumerate(tracks):
+        _track(axes, view, directions, name, index)
+    if worst is not None:
+        point = view @ worst
+        axes.plot(point[0], point[1], label="least margin", **WORST)
+    axes.legend(loc="center left", bbox_to_anchor=(1.0, 0.5))
+    _frame_panel(axes, "", size=1.15)
+    return to_svg(figure)
+
+
+def _track(axes: Axes, view: Floats, directions: Floats, name: str, index: int) -> None:
+    points = directions @ view.T
+    colour = COLOURS[index % len(COLOURS)]
+    front = points[:, 2] >= 0
+    if len(points) > 400 or name.endswith("(points)"):
+        axes.plot(points[front, 0], points[front, 1], ".", markersize=1.6, color=colour, label=label(name))
+        return
+    shown = np.where(front[:, None], points, np.nan)
+    hidden = np.where(front[:, None], np.nan, points)
+    axes.plot(
+        shown[:, 0], shown[:, 1], color=colour, linestyle=DASHES[index % len(DASHES)], label=label(name)
+    )
+    axes.plot(hidden[:, 0], hidden[:, 1], color=colour, linewidth=0.5, alpha=0.5)
+
+
+def _graticule(axes: Axes, view: Floats, up: Floats) -> None:
+    up = np.asarray(up, float) / np.linalg.norm(up)
+    first = np.eye(3)[int(np.argmin(np.abs(up)))]
+    ahead = first - up * (first @ up)
+    ahead /= np.linalg.norm(ahead)
+    side = np.cross(up, ahead)
+    turn = np.linspace(0.0, 2 * np.pi, 121)
+    for height in np.radians([-60, -30, 0, 30, 60]):
+        ring = (
+            np.cos(height) * (np.cos(turn)[:, None] * ahead + np.sin(turn)[:, None] * side)
+            + np.sin(height) * up
+        )
+        _faint(axes, ring @ view.T)
+    for bearing in np.radians(np.arange(0, 180, 30)):
+        side_way = np.cos(bearing) * ahead + np.sin(bearing) * side
+        _faint(axes, (np.cos(turn)[:, None] * side_way + np.sin(turn)[:, None] * up) @ view.T)
+
+
+def _faint(axes: Axes, points: Floats) -> None:
+    front = np.where(points[:, 2:3] >= 0, points, np.nan)
+    axes.plot(front[:, 0], front[:, 1], color=RULE, linewidth=0.5)
+
+
+def _cap(axes: Axes, view: Floats, centre: Floats, half_angle: float) -> None:
+    if half_angle <= 0:
+        return
+    first = np.eye(3)[int(np.argmin(np.abs(centre)))]
+    one = np.cross(centre, first)
+    one /= np.linalg.norm(one)
+    two = np.cross(centre, one)
+    turn = np.linspace(0.0, 2 * np.pi, 121)[:, None]
+    rim = np.cos(half_angle) * centre + np.sin(half_angle) * (np.cos(turn) * one + np.sin(turn) * two)
+    points = rim @ view.T
+    if (view @ centre)[2] < 0:
+        return
+    inside = points[points[:, 2] >= -0.02]
+    axes.add_patch(
+        Polygon(
+            inside[:, :2], closed=True, facecolor="none", edgecolor=COLOURS[1], hatch="////", linewidth=1.0
+        )
+    )
+
+
+def _triad(
+    axes: Axes,
+    view: Floats,
+    triad: Floats,
+    words: Sequence[str],
+    *,
+    faint: bool = False,
+    colour: str | None = None,
+) -> None:
+    """Three arrows, the columns of `triad`; each is named and differs in dash from the others."""
+    for index in range(3):
+        tip = view @ triad[:, index]
+        tint = RULE if faint else (colour or COLOURS[index])
+        axes.annotate(
+            "",
+            (tip[0], tip[1]),
+            (0, 0),
+            arrowprops={
+                "arrowstyle": "-|>",
+                "color": tint,
+                "linewidth": 0.9 if faint else 1.5,
+                "linestyle": "solid" if index == 0 else DASHES[index],
+                "shrinkA": 0,
+                "shrinkB": 0,
+                "mutation_scale": 9,
+            },
+        )
+        if words[index]:
+            length = max(float(np.hypot(tip[0], tip[1])), 1e-9)
+            away = tip[:2] * (1.0 + 0.16 / max(length, 0.35))
+            axes.text(
+                away[0], away[1], label(words[index]), color=tint, ha="center", va="center", fontsize=7.5
+            )
+
+
+def _outline(axes: Axes, view: Floats) -> None:
+    """A plain vehicle of our own drawing: a dart with a fin, forward along x, down along z."""
+    dart = np.array([[0.62, 0.0, 0.0], [-0.4, 0.3, 0.0], [-0.28, 0.0, 0.0], [-0.4, -0.3, 0.0]])
+    fin = np.array([[-0.02, 0.0, 0.0], [-0.36, 0.0, -0.22], [-0.28, 0.0, 0.0]])
+    for shape, shade in ((dart, "#eef1f3"), (fin, "#d9dfe4")):
+        points = shape @ view.T
+        axes.add_patch(Polygon(points[:, :2], closed=True, facecolor=shade, edgecolor=QUIET, linewidth=0.8))
+
+
+def _ring(axes: Axes, view: Floats, axis: Floats, across: Floats, radius: float, index: int) -> None:
+    """A ring in the plane of its own axis and the next ring's axis, so that it carries both bearings."""
+    one = np.asarray(axis, float)
+    two = np.asarray(across, float) - one * float(np.dot(axis, across))
+    size = float(np.linalg.norm(two))
+    if size < 1e-6:
+        two = np.cross(one, np.eye(3)[int(np.argmin(np.abs(one)))])
+        size = float(np.linalg.norm(two))
+    two = two / size
+    turn = np.linspace(0.0, 2 * np.pi, 181)[:, None]
+    points = radius * (np.cos(turn) * one + np.sin(turn) * two) @ view.T
+    axes.plot(points[:, 0], points[:, 1], color=COLOURS[index % len(COLOURS)], linewidth=2.2)
+
+
+def _frame_panel(axes: Axes, caption: str, *, size: float = 1.28) -> None:
+    axes.set_xlim(-size, size)
+    axes.set_ylim(-size, size)
+    if caption:
+        axes.set_title(label(caption), fontsize=7.5, pad=2)
+
+
+__all__ = ["Figure", "mount_drawing", "rings_drawing", "sphere_drawing", "turns_drawing", "view_matrix"]
