@@ -45,7 +45,9 @@ class Sequence(enum.Enum):
 
     @property
     def third_axis(self) -> int:
-        """The axis that completes first and second: the third for three different axes, else the unused one."""
+        """The axis that completes first and second: the third for three different axes, else the unused
+        one.
+        """
         i, j, _ = self.axes
         return 3 - i - j
 
