@@ -47,9 +47,7 @@ def ranking_chart(
             edgecolor=INK,
             linewidth=0.7,
         )
-        axes.annotate(
-            f"{margins[index]:.2f}°", (margins[index], row), (3, 0), textcoords="offset points", va="center"
-        )
+        axes.annotate(f"{margins[index]:.2f}°", (margins[index], row), (3, 0), textcoords="offset points", va="center")
     axes.set_yticks(range(len(names)), [label(names[index]) for index in order])
     axes.grid(visible=False, axis="y")
     axes.set_xlim(0.0, 95.0)
@@ -216,9 +214,7 @@ def budget_bars(terms: Mapping[str, float], *, total: float, limit: float | None
     axes = new_axes(figure)
     for row, (name, value) in enumerate(zip(names, values, strict=True)):
         whole = name == "combined" and row == len(names) - 1
-        axes.barh(
-            -row, value, height=0.6, color=COLOURS[0] if whole else "#dfe5ea", edgecolor=INK, linewidth=0.7
-        )
+        axes.barh(-row, value, height=0.6, color=COLOURS[0] if whole else "#dfe5ea", edgecolor=INK, linewidth=0.7)
         axes.annotate(f"{value:.3g}", (value, -row), (3, 0), textcoords="offset points", va="center")
     axes.set_yticks([-row for row in range(len(names))], [label(name) for name in names])
     axes.grid(visible=False, axis="y")

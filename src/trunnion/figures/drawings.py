@@ -1,6 +1,6 @@
-"""Attitude drawings: triads before and after each turn, mounts on a vehicle, rings, the sphere with its caps.
+"""Attitude drawings: triads before and after each turn, mounts, rings, the sphere with its caps.
 
-Everything is drawn in a parallel projection from a quarter above; `up` (the drawing's vertical) is a direction
+All in a parallel projection from a quarter above; `up` (the drawing's vertical) is a direction
 of the reference frame, so that a frame whose z axis points down is drawn with z down.
 """
 
@@ -51,9 +51,7 @@ def view_matrix(up: Floats) -> Floats:
 
 
 @house_look
-def turns_drawing(
-    stages: Sequence[Floats], axis_words: Sequence[str], captions: Sequence[str], *, up: Floats
-) -> str:
+def turns_drawing(stages: Sequence[Floats], axis_words: Sequence[str], captions: Sequence[str], *, up: Floats) -> str:
     """Vehicle axes before and after each turn, one panel a stage.
 
     stages: (3, 3) matrices, columns the vehicle axes in reference components; captions: one line a panel.
@@ -175,9 +173,7 @@ def _track(axes: Axes, view: Floats, directions: Floats, name: str, index: int) 
         return
     shown = np.where(front[:, None], points, np.nan)
     hidden = np.where(front[:, None], np.nan, points)
-    axes.plot(
-        shown[:, 0], shown[:, 1], color=colour, linestyle=DASHES[index % len(DASHES)], label=label(name)
-    )
+    axes.plot(shown[:, 0], shown[:, 1], color=colour, linestyle=DASHES[index % len(DASHES)], label=label(name))
     axes.plot(hidden[:, 0], hidden[:, 1], color=colour, linewidth=0.5, alpha=0.5)
 
 
@@ -189,10 +185,7 @@ def _graticule(axes: Axes, view: Floats, up: Floats) -> None:
     side = np.cross(up, ahead)
     turn = np.linspace(0.0, 2 * np.pi, 121)
     for height in np.radians([-60, -30, 0, 30, 60]):
-        ring = (
-            np.cos(height) * (np.cos(turn)[:, None] * ahead + np.sin(turn)[:, None] * side)
-            + np.sin(height) * up
-        )
+        ring = np.cos(height) * (np.cos(turn)[:, None] * ahead + np.sin(turn)[:, None] * side) + np.sin(height) * up
         _faint(axes, ring @ view.T)
     for bearing in np.radians(np.arange(0, 180, 30)):
         side_way = np.cos(bearing) * ahead + np.sin(bearing) * side
@@ -218,9 +211,7 @@ def _cap(axes: Axes, view: Floats, centre: Floats, half_angle: float) -> None:
         return
     inside = points[points[:, 2] >= -0.02]
     axes.add_patch(
-        Polygon(
-            inside[:, :2], closed=True, facecolor="none", edgecolor=COLOURS[1], hatch="////", linewidth=1.0
-        )
+        Polygon(inside[:, :2], closed=True, facecolor="none", edgecolor=COLOURS[1], hatch="////", linewidth=1.0)
     )
 
 
@@ -254,9 +245,7 @@ def _triad(
         if words[index]:
             length = max(float(np.hypot(tip[0], tip[1])), 1e-9)
             away = tip[:2] * (1.0 + 0.16 / max(length, 0.35))
-            axes.text(
-                away[0], away[1], label(words[index]), color=tint, ha="center", va="center", fontsize=7.5
-            )
+            axes.text(away[0], away[1], label(words[index]), color=tint, ha="center", va="center", fontsize=7.5)
 
 
 def _outline(axes: Axes, view: Floats) -> None:
