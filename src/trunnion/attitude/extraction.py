@@ -71,13 +71,14 @@ def chain_angles(
 ) -> Extraction:
     """Angles of the chain E (..., 3, 3), rebuilt to rounding at every margin, and the lock margin.
 
-    Ranges: outer angles (-pi, pi]; middle angle [-pi/2, pi/2] for three different axes, [0, pi] for a repeated
-    axis; with `other_branch` the second triple of the same attitude, (a + pi, pi - b, c + pi) or
-    (a + pi, -b, c + pi). At lock (margin at most `lock_within` rad; default: rounding, see tolerances) the middle
-    angle is exactly its singular value, one outer angle is zero by `policy` and the other carries the sum or
-    difference that is known; the rebuilt attitude misses E by at most the margin then. Single precision input is
-    worked in single precision. `E` must be a rotation (see `require_rotation`); this inner function does not
-    look again. Source: HENDERSON-1977 for the sequences; the residual form is proved in `symbolic`.
+    Ranges: outer angles (-pi, pi]; middle angle [-pi/2, pi/2] for three different axes, [0, pi] for a
+    repeated axis; with `other_branch` the second triple of the same attitude, (a + pi, pi - b, c + pi) or
+    (a + pi, -b, c + pi). At lock (margin at most `lock_within` rad; default: rounding, see tolerances) the
+    middle angle is exactly its singular value, one outer angle is zero by `policy` and the other carries the
+    sum or difference that is known; the rebuilt attitude misses E by at most the margin then. Single
+    precision input is worked in single precision. `E` must be a rotation (see `require_rotation`); this inner
+    function does not look again. Source: HENDERSON-1977 for the sequences; the residual form is proved in
+    `symbolic`.
     """
     chain = np.asarray(E)
     if chain.dtype != np.float32:

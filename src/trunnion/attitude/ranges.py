@@ -44,15 +44,16 @@ def check(
     by_middle = full[0] and half[1] and full[2]
     by_outer = full[1] and sorted((full[0], full[2])) == [False, True] and (half[0] or half[2])
     if not (by_middle or by_outer):
+        stated = ", ".join(f"{_deg(low)} to {_deg(high)}" for low, high in ranges)
         raise AttitudeError(
-            f"{of}: ranges {', '.join(f'{_deg(lo)} to {_deg(hi)}' for lo, hi in ranges)} do not give every "
-            "attitude exactly one triple",
+            f"{of}: ranges {stated} do not give every attitude exactly one triple",
             remedy="outer angles a full turn (-180 to 180 deg or 0 to 360 deg) and the middle one half a turn, "
-            "or the middle one a full turn and one outer angle half a turn; travel limits belong into an envelope",
+            "or the middle one a full turn and one outer angle half a turn; "
+            "travel limits belong into an envelope",
         )
     if by_middle and not _is_branch(ranges[1], sequence, signs[1], offsets[1]):
         raise AttitudeError(
-            f"{of}: the middle range {_deg(ranges[1][0])} to {_deg(ranges[1][1])} has a singular value inside",
+            f"{of}: its middle range {_deg(ranges[1][0])} to {_deg(ranges[1][1])} holds a singular value inside",
             remedy="a branch runs from one singular value to the next: "
             + ("0 to 180 deg" if sequence.repeated else "-90 to 90 deg")
             + " before senses and offsets",
@@ -80,9 +81,7 @@ def choose(stated: Array, other: Array, ranges: Ranges, of: str) -> Array:
     two, two_fits = _into(other, ranges)
     lost = ~(one_fits | two_fits)
     if np.any(lost):
-        raise AttitudeError(
-            f"{of}: an attitude has no triple inside the stated ranges", remedy="widen the ranges"
-        )
+        raise AttitudeError(f"{of}: an attitude has no triple inside the stated ranges", remedy="widen the ranges")
     return np.where(one_fits[..., None], one, two)
 
 
@@ -103,9 +102,7 @@ def _into_one(angle: Array, low: float, high: float, *, outer: bool) -> tuple[Ar
     """
     whole = _close(high - low, _TURN)
     if whole and low == 0.0:
-        value = np.where(
-            (angle >= low) & (angle < high), angle, angle - _TURN * np.floor((angle - low) / _TURN)
-        )
+        value = np.where((angle >= low) & (angle < high), angle, angle - _TURN * np.floor((angle - low) / _TURN))
         return np.where(value >= high, low, value), np.ones(np.shape(angle), dtype=bool)
     value = np.where((angle > low) & (angle <= high), angle, angle + _TURN * np.floor((high - angle) / _TURN))
     if whole:

@@ -122,9 +122,7 @@ def rate_gains(margin: ArrayLike) -> RateGains:
         )
 
 
-def convention_rate_matrix(
-    convention: Convention, angles: ArrayLike, axes: RateAxes = RateAxes.BODY
-) -> Array:
+def convention_rate_matrix(convention: Convention, angles: ArrayLike, axes: RateAxes = RateAxes.BODY) -> Array:
     """B (..., 3, 3) for the stated angles (..., 3) rad of a convention: w = B d(stated angles)/dt, senses
     included.
 
@@ -134,9 +132,7 @@ def convention_rate_matrix(
     if axes is RateAxes.BODY:
         B = convention.right.T @ body_rate_matrix(chain, sequence=convention.sequence, sense=convention.sense)
     else:
-        B = convention.left @ reference_rate_matrix(
-            chain, sequence=convention.sequence, sense=convention.sense
-        )
+        B = convention.left @ reference_rate_matrix(chain, sequence=convention.sequence, sense=convention.sense)
     return B * np.asarray(convention.signs, dtype=float)
 
 
@@ -196,7 +192,7 @@ def _require_margin(margin: Array, least: float) -> None:
     bad = margin <= least
     if np.any(bad):
         raise AttitudeError(
-            f"angle rates are asked for {np.degrees(np.min(margin)):.3g} deg from lock; they grow without bound "
-            f"there, and at {np.degrees(least):.3g} deg or less they are refused",
+            f"angle rates are asked for {np.degrees(np.min(margin)):.3g} deg from lock; they grow without "
+            f"bound there, and at {np.degrees(least):.3g} deg or less they are refused",
             remedy="use the angular velocity or the quaternion rate there, or another sequence",
         )

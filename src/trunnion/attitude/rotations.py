@@ -45,9 +45,7 @@ def unit(v: ArrayLike, what: str = "direction") -> Array:
     vector = np.asarray(v, dtype=float)
     scale = np.max(np.abs(vector), axis=-1, keepdims=True)
     if vector.shape[-1:] != (3,) or not np.all(np.isfinite(vector)) or np.any(scale == 0.0):
-        raise AttitudeError(
-            f"{what} {_short(vector)} is no direction", remedy="give three numbers, not all zero"
-        )
+        raise AttitudeError(f"{what} {_short(vector)} is no direction", remedy="give three numbers, not all zero")
     scaled = vector / scale
     return scaled / np.linalg.norm(scaled, axis=-1, keepdims=True)
 
@@ -192,9 +190,7 @@ def rotation_angle(R1: ArrayLike, R2: ArrayLike) -> Array:
     """
     A, B = np.asarray(R1, dtype=float), np.asarray(R2, dtype=float)
     D = np.swapaxes(A, -1, -2) @ B
-    v = np.stack(
-        [D[..., 2, 1] - D[..., 1, 2], D[..., 0, 2] - D[..., 2, 0], D[..., 1, 0] - D[..., 0, 1]], axis=-1
-    )
+    v = np.stack([D[..., 2, 1] - D[..., 1, 2], D[..., 0, 2] - D[..., 2, 0], D[..., 1, 0] - D[..., 0, 1]], axis=-1)
     return np.arctan2(np.linalg.norm(v, axis=-1), np.trace(D, axis1=-2, axis2=-1) - 1.0)
 
 
@@ -204,9 +200,7 @@ def quaternion_angle(p: ArrayLike, q: ArrayLike) -> Array:
     return 2.0 * np.arctan2(np.linalg.norm(d[..., 1:], axis=-1), np.abs(d[..., 0]))
 
 
-def same_attitude(
-    R1: ArrayLike, R2: ArrayLike, tolerance: float = tolerances.SAME_ATTITUDE
-) -> NDArray[np.bool_]:
+def same_attitude(R1: ArrayLike, R2: ArrayLike, tolerance: float = tolerances.SAME_ATTITUDE) -> NDArray[np.bool_]:
     """Are these the same attitude: is the turn between them at most `tolerance` rad? Triples are never
     compared.
     """
@@ -241,9 +235,7 @@ def require_rotation(M: ArrayLike, what: str = "matrix", tolerance: float = tole
         raise AttitudeError(f"{what} has shape {R.shape}", remedy="three rows of three numbers")
     if not np.all(np.isfinite(R)):
         bad = ~np.all(np.isfinite(R), axis=(-2, -1))
-        raise AttitudeError(
-            f"{what}{_first(bad)} holds a value that is no number", remedy="nine finite numbers"
-        )
+        raise AttitudeError(f"{what}{_first(bad)} holds a value that is no number", remedy="nine finite numbers")
     off = np.max(np.abs(np.swapaxes(R, -1, -2) @ R - np.eye(3)), axis=(-2, -1))
     mirrored = determinant(R) < 0.0
     if np.any(mirrored):
@@ -256,8 +248,8 @@ def require_rotation(M: ArrayLike, what: str = "matrix", tolerance: float = tole
         raise AttitudeError(
             f"{what}{_first(bad)} is not a rotation: its columns miss unit length or right angles by "
             f"{off[bad].flat[0]:.3g}",
-            remedy=f"at most {tolerance:g} is taken for rounding; give more digits, or take the nearest rotation "
-            "knowingly",
+            remedy=f"at most {tolerance:g} is taken for rounding; give more digits, or fit the nearest "
+            "rotation knowingly",
         )
     return R
 

@@ -25,7 +25,7 @@ RANGE = 1e-9
 #: chain of double precision products here and below every alignment tolerance met in practice.
 SAME_ATTITUDE = 1e-9
 
-#: Lock is taken as reached within this many roundings (pure number, times the working precision: 8.9e-16 rad in
-#: double precision). There the outer angles are known to 0.1 rad at best, and setting the middle angle onto its
-#: singular value moves the rebuilt attitude by no more than that margin.
+#: Lock is taken as reached within this many roundings (pure number, times the working precision: 8.9e-16 rad
+#: in double precision). There the outer angles are known to 0.1 rad at best, and setting the middle angle
+#: onto its singular value moves the rebuilt attitude by no more than that margin.
 LOCK_ROUNDINGS = 4
