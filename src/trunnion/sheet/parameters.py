@@ -1,0 +1,56 @@
+"""From the plain values of the injected cell back to numerical objects, and from input names to files."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from pathlib import Path
+from typing import Any
+
+from trunnion.errors import CalculationError
+
+
+def input_path(name: str) -> Path:
+    """The input file `name`, in `inputs/` beside the notebook (the working folder) or one folder up.
+
+    A notebook reads only what was copied for it: a name with a folder in it is refused.
+    """
+    if Path(name).name != name or name in ("", ".", ".."):
+        raise CalculationError(
+            f"'{name}' is not the name of an input file", remedy="inputs are plain names in inputs/"
+        )
+    for folder in (Path("inputs"), Path("..") / "inputs"):
+        path = folder / name
+        if path.is_file():
+            return path
+    raise CalculationError(
+        f"input file '{name}' is not in inputs/ beside this notebook",
+        remedy="run the notebook in its revision folder, where `trunnion compute` copied the inputs",
+    )
+
+
+def convention(plain: Mapping[str, Any]) -> Any:
+    """The convention an injected parameter describes."""
+    from trunnion.spec.build import convention_from_plain
+
+    return convention_from_plain(plain)
+
+
+def region(plain: Mapping[str, Any]) -> Any:
+    """The region (envelope) an injected parameter describes; its tables are read from `inputs/`."""
+    from trunnion.spec.build import region_from_plain
+
+    return region_from_plain(plain, open_table=open_table)
+
+
+def mount(plain: Mapping[str, Any]) -> Any:
+    """The mount an injected parameter describes."""
+    from trunnion.spec.build import mount_from_plain
+
+    return mount_from_plain(plain)
+
+
+def open_table(plain: Mapping[str, Any]) -> Any:
+    """Read the attitude table an injected parameter describes from the copied input file it names."""
+    from trunnion.tables import read_table
+
+    return read_table(input_path(plain["table"]), plain)
