@@ -50,6 +50,14 @@ def view_matrix(up: Floats) -> Floats:
     return np.array([right, np.cross(towards, right), towards])
 
 
+def upward(axes: Sequence[str]) -> Floats:
+    """The direction (3,) drawn upward for a frame with these axis names: along `up`, away from `down`, or z."""
+    for index, axis in enumerate(axes):
+        if axis in ("up", "down"):
+            return np.eye(3)[index] * (1.0 if axis == "up" else -1.0)
+    return np.array([0.0, 0.0, 1.0])
+
+
 @house_look
 def turns_drawing(stages: Sequence[Floats], axis_words: Sequence[str], captions: Sequence[str], *, up: Floats) -> str:
     """Vehicle axes before and after each turn, one panel a stage.

@@ -1,0 +1,65 @@
+"""Injected parameters as rows a reviewer reads: name, what is stated, source."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from trunnion.attitude.conventions import Convention
+from trunnion.attitude.words import degrees_text
+
+# What a row shows elsewhere or not at all.
+_APART = frozenset({"name", "source", "text"})
+
+
+def convention_rows(name: str, plain: Mapping[str, Any]) -> list[dict[str, str]]:
+    """Rows of one convention."""
+    return [_row(f"convention {name}", plain)]
+
+
+def region_rows(name: str, plain: Mapping[str, Any]) -> list[dict[str, str]]:
+    """Rows of one region."""
+    return [_row(f"region {name}", plain)]
+
+
+def mount_rows(name: str, plain: Mapping[str, Any]) -> list[dict[str, str]]:
+    """Rows of one mount."""
+    return [_row(f"mount {name}", plain)]
+
+
+def _row(title: str, plain: Mapping[str, Any]) -> dict[str, str]:
+    return {"input": title, "stated": words(plain), "source": str(plain.get("source", "not stated"))}
+
+
+def words(value: Any) -> str:
+    """A plain value in one line: `sequence 3-2-1; about moving axes; zero forward: north, down: down`."""
+    if isinstance(value, Mapping):
+        return "; ".join(f"{key} {_inner(entry)}" for key, entry in value.items() if key not in _APART)
+    return _inner(value)
+
+
+def _inner(value: Any) -> str:
+    if isinstance(value, Mapping):
+        if "axes" in value and "name" in value:  # a frame: its name and axes say all
+            return f"{value['name']} ({_inner(value['axes'])})"
+        if "sequence" in value and "name" in value:  # a convention stated among the inputs or beside
+            return f"{value['name']} ({value['sequence']} about {value.get('about', 'the axes its standard names')})"
+        return ", ".join(f"{key}: {_inner(entry)}" for key, entry in value.items() if key not in _APART)
+    if isinstance(value, list | tuple):
+        return ", ".join(_inner(entry) for entry in value)
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    return f"{value:.12g}" if isinstance(value, float) else str(value)
+
+
+def angles_text(convention: Convention, R_rb: NDArray[np.float64]) -> str:
+    """The convention's own angles of an attitude, with `(lock)` where only a combination of the outer two exists."""
+    found = convention.angles(R_rb)
+    texts = [
+        f"{name} {degrees_text(float(angle), 3)}"
+        for name, angle in zip(convention.angle_names, np.asarray(found.angles), strict=True)
+    ]
+    return ", ".join(texts) + (" (lock: last turn set to zero)" if bool(found.singular) else "")

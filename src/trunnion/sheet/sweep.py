@@ -1,0 +1,289 @@
+"""What the envelope-sweep template calls: margins of conventions over regions, ranked, pictured and checked."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from trunnion.attitude.conventions import Convention
+from trunnion.attitude.sequences import Sequence
+from trunnion.envelope.margins import entry_margin_table, lock_margin
+from trunnion.envelope.regions import Region, Track, Union
+from trunnion.envelope.results import AngleRange, Extreme
+from trunnion.figures import charts, drawings
+from trunnion.sheet import display, parameters, region_checks
+from trunnion.sheet.describe import angles_text, convention_rows, region_rows
+from trunnion.sheet.maps import angle_map, body_track, histogram
+from trunnion.sheet.rounding import interval_text
+
+Array = NDArray[np.float64]
+
+
+class EnvelopeSweep:
+    """The conventions and regions of one sweep; each `show_…` displays one part and records what it finds."""
+
+    def __init__(self, *, conventions: Mapping[str, Any], envelopes: Mapping[str, Any]) -> None:
+        self._plain = {"conventions": dict(conventions), "envelopes": dict(envelopes)}
+        self.conventions: dict[str, Convention] = {
+            name: parameters.convention(plain) for name, plain in conventions.items()
+        }
+        self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
+
+    @cached_property
+    def margins(self) -> dict[tuple[str, str], AngleRange]:
+        """Least and largest lock margin by (convention, region)."""
+        return {
+            (name, over): lock_margin(region, convention)
+            for name, convention in self.conventions.items()
+            for over, region in self.regions.items()
+        }
+
+    def show_inputs(self) -> None:
+        """The conventions and regions as the injected parameters state them."""
+        display.inputs(
+            [row for name, plain in self._plain["conventions"].items() for row in convention_rows(name, plain)]
+            + [row for name, plain in self._plain["envelopes"].items() for row in region_rows(name, plain)]
+        )
+
+    def show_assumptions(self) -> None:
+        """What is taken for granted about each table: the motion between its rows and the error of its source."""
+        tracks = self._tracks()
+        texts = [
+            f"Between the rows of {name} the vehicle {track.between.value}; "
+            + (
+                "the error of the recorded attitude is not stated: its margins are those of the recorded estimate."
+                if track.attitude_error is None
+                else f"the true attitude lies within {np.degrees(track.attitude_error):g}° of the recorded one."
+            )
+            for name, track in tracks.items()
+        ]
+        display.statement("assumptions", texts or ["None beyond the inputs: every region is stated in closed form."])
+
+    def show_margins(self) -> None:
+        """The table of least margins, each one recorded with its witness, and where each is reached."""
+        for (name, over), found in self.margins.items():
+            self._record("lock margin", name, over, found.least)
+            self._record("largest lock margin", name, over, found.largest)
+        display.table(
+            "tbl:margins",
+            ["convention", *self.regions],
+            [
+                [name, *(_least_text(self.margins[name, over].least) for over in self.regions)]
+                for name in self.conventions
+            ],
+            caption="Least lock margin of each convention over each region",
+            align="l" + "r" * len(self.regions),
+            notes=["Rounded down. Basis: " + self._bases()],
+        )
+        display.table(
+            "tbl:witnesses",
+            ["convention", "region", "margin there", "the convention's own angles there", "place in the region"],
+            [self._witness_row(name, over) for name, over in self.margins],
+            caption="Where the least margin is reached",
+            align="llrll",
+        )
+
+    def show_pairs(self) -> None:
+        """The nine axis pairs over all regions together, with the sequences each pair serves."""
+        first = next(iter(self.conventions.values()))
+        words = [first.body.word(axis) for axis in range(3)]
+        rows = [
+            [
+                first.reference.word(i),
+                *(f"{_floor_degrees(self._entries[i, k])} ({', '.join(_served(i, k))})" for k in range(3)),
+            ]
+            for i in range(3)
+        ]
+        display.table(
+            "tbl:pairs",
+            ["reference axis", *(f"body {word}" for word in words)],
+            rows,
+            caption="Least angle between each reference axis and each body axis over all regions, with the sequences "
+            "about moving axes that lock there",
+            align="lrrr",
+            notes=["A sequence about fixed axes locks where the reversed sequence about moving axes does."],
+        )
+
+    def show_ranking(self) -> None:
+        """All twelve sequences about moving axes, best guaranteed margin first."""
+        names = [sequence.value for sequence in Sequence]
+        values = [float(np.degrees(self._entries[sequence.axes[0], sequence.axes[2]])) for sequence in Sequence]
+        best = names[int(np.argmax(values))]
+        display.figure(
+            "fig:ranking",
+            charts.ranking_chart(names, values),
+            caption="The twelve sequences about moving axes, zero attitude along the frames' own axes",
+            alt=f"Bar chart of the guaranteed least lock margin of the twelve sequences; best is {best} with "
+            f"{max(values):.2f} degrees.",
+        )
+
+    def show_distribution(self) -> None:
+        """How the margin is distributed over samples of all regions, for each convention."""
+        edges, shares = histogram(self.conventions, self.regions, self._plain["envelopes"])
+        display.figure(
+            "fig:distribution",
+            charts.margin_histogram(edges, shares),
+            caption="Distribution of the lock margin over samples drawn evenly in each region's own angles, and over "
+            "the rows of tables (an illustration, not evidence)",
+            alt="Histogram of lock margins in per cent of samples, one curve a convention.",
+        )
+
+    def show_maps(self) -> None:
+        """One map for each convention: its margin over two angles of the box region that governs it."""
+        for name, convention in self.conventions.items():
+            drawn = angle_map(convention, self.regions, {over: self.margins[name, over].least for over in self.regions})
+            if drawn is not None:
+                display.figure(
+                    f"fig:map-{name}",
+                    charts.margin_map(**drawn.picture),
+                    caption=f"Lock margin of {name} over {drawn.words}; the box is the region {drawn.region}",
+                    alt=f"Contour map of the lock margin of {name}; the least margin in the box is marked.",
+                )
+
+    def show_history(self) -> None:
+        """Margin against time for every table, and the track of the carried axis among the lock directions."""
+        for name, track in self._tracks().items():
+            R = _matrices(track)
+            curves = {key: np.degrees(convention.lock_margin(R)) for key, convention in self.conventions.items()}
+            worst = {
+                key: (float(track.times[int(curve.argmin())]), float(curve.min())) for key, curve in curves.items()
+            }
+            display.figure(
+                f"fig:history-{name}",
+                charts.margin_against_time(track.times, curves, worst=worst),
+                caption=f"Lock margin of the recorded estimate against time, {name}; least rows marked",
+                alt=f"Lock margin in degrees against time for the table {name}, one curve a convention.",
+            )
+            key, convention = min(self.conventions.items(), key=lambda pair: worst[pair[0]][1])
+            display.figure(
+                f"fig:sphere-{name}",
+                drawings.sphere_drawing(**body_track(name, track, convention)),
+                caption=f"Path of the axis that {key} must keep away from its lock line, {name}",
+                alt=f"Sphere with the path of the carried axis of {key} and caps of ten degrees about the lock line.",
+            )
+
+    def show_rates(self) -> None:
+        """The largest outer angle rate a stated body rate can demand, where the margin is proven."""
+        rows = []
+        for name in self.conventions:
+            for over, plain in self._plain["envelopes"].items():
+                rate = plain.get("max body rate")
+                if rate is not None:
+                    rows.append(self._rate_row(name, over, parameters.rate(rate)))
+        if not rows:
+            display.statement("rates", "No region states a body rate, so no angle rates are worked out.")
+            return
+        display.table(
+            "tbl:rates",
+            ["convention", "region", "body rate", "amplification", "largest outer angle rate"],
+            rows,
+            caption="Outer angle rates the stated body rates can demand",
+            align="llrrr",
+        )
+
+    def show_checks(self) -> None:
+        """Each least margin again by scipy: at its witness, and by searching the region rebuilt from its words."""
+        for (name, over), found in self.margins.items():
+            region_checks.check_least_margin(
+                f"check:{name}:{over}",
+                f"least lock margin of {name} over {over}",
+                convention=self.conventions[name],
+                plain=self._plain["envelopes"][over],
+                region=self.regions[over],
+                claimed=found.least,
+            )
+
+    def show_results(self) -> None:
+        """The results in one table: interval, basis, witness."""
+        display.table(
+            "tbl:results",
+            ["quantity", "of", "over", "value", "basis", "governed by"],
+            [
+                ["lock margin", name, over, _least_text(found.least), found.least.basis.value, _governed(found.least)]
+                for (name, over), found in self.margins.items()
+            ],
+            caption="Results of this calculation",
+            align="lllrll",
+        )
+
+    @cached_property
+    def _entries(self) -> Array:
+        """Guaranteed least angle (3, 3) rad between reference axis i and body axis k over all regions together."""
+        return entry_margin_table(Union(dict(self.regions))).least
+
+    def _tracks(self) -> dict[str, Track]:
+        return {name: region for name, region in self.regions.items() if isinstance(region, Track)}
+
+    def _bases(self) -> str:
+        return "; ".join(
+            f"{over} {'/'.join(sorted({self.margins[name, over].least.basis.value for name in self.conventions}))}"
+            for over in self.regions
+        )
+
+    def _record(self, quantity: str, name: str, over: str, extreme: Extreme) -> None:
+        witness = extreme.witness
+        display.record(
+            quantity=quantity,
+            of=name,
+            over=over,
+            lo=float(np.degrees(extreme.lo)),
+            hi=float(np.degrees(extreme.hi)),
+            unit="deg",
+            basis=extreme.basis,
+            attained=None if witness is None else float(np.degrees(witness.value)),
+            witness=None
+            if witness is None
+            else {"matrix": witness.matrix, "where": witness.where, "time": witness.time},
+            note=f"governed by {_governed(extreme)}" if extreme.governing else "",
+        )
+
+    def _witness_row(self, name: str, over: str) -> list[str]:
+        witness = self.margins[name, over].least.witness
+        if witness is None:
+            return [name, over, "", "", "bound only, no attitude is known to reach it"]
+        when = "" if witness.time is None else f", t = {witness.time:.3f} s"
+        angles = angles_text(self.conventions[name], witness.matrix)
+        return [name, over, f"{np.degrees(witness.value):.4f}°", angles, f"{witness.where}{when}"]
+
+    def _rate_row(self, name: str, over: str, rate: float) -> list[str]:
+        least = self.margins[name, over].least.lo
+        body = f"{np.degrees(rate):g} deg/s"
+        if least <= 0.0:
+            return [name, over, body, "unbounded", "unbounded: lock is within the region"]
+        gain = 1.0 / np.sin(least)
+        display.record(
+            quantity="largest angle rate",
+            of=name,
+            over=over,
+            lo=None,
+            hi=float(np.degrees(rate * gain)),
+            unit="deg/s",
+            basis=self.margins[name, over].least.basis,
+        )
+        return [name, over, body, f"{gain:.3f}", f"{np.degrees(rate * gain):.1f} deg/s"]
+
+
+def _matrices(track: Track) -> Array:
+    from trunnion.attitude.rotations import matrix_from_quaternion
+
+    return matrix_from_quaternion(track.quaternions)
+
+
+def _least_text(extreme: Extreme) -> str:
+    return interval_text(float(np.degrees(extreme.lo)), None).removeprefix("at least ")
+
+
+def _floor_degrees(angle: float) -> str:
+    return interval_text(float(np.degrees(angle)), None).removeprefix("at least ")
+
+
+def _governed(extreme: Extreme) -> str:
+    return ", ".join(extreme.governing)
+
+
+def _served(i: int, k: int) -> list[str]:
+    return [sequence.value for sequence in Sequence if (sequence.axes[0], sequence.axes[2]) == (i, k)]
