@@ -50,3 +50,26 @@ register(
     Source("ECSS-E-ST-60-10C", "ECSS-E-ST-60-10C, Control performance, 15 November 2008", "text"),
     Source("ECSS-E-ST-10-09C", "ECSS-E-ST-10-09C, Reference coordinate system, 31 July 2008", "text"),
 )
+
+register(
+    Source(
+        "NASA-JEOD",
+        "NASA JEOD, models/utils/orientation/src/euler_angles.cc and its specification, public repository nasa/jeod",
+        "text",
+    ),
+    Source(
+        "HUYNH-2009",
+        "D. Q. Huynh, Metrics for 3D Rotations: Comparison and Analysis, J. Math. Imaging Vis. 35 (2009) 155-164",
+        "abstract",
+    ),
+    Source(
+        "SHOEMAKE-1985",
+        "K. Shoemake, Animating Rotation with Quaternion Curves, SIGGRAPH 1985",
+        "memory",
+    ),
+    Source(
+        "BUG-REPORTS",
+        "Public bug reports about angles at and near lock, each with repository and number",
+        "text",
+    ),
+)

@@ -74,13 +74,9 @@ class Convention:
                     remedy="state it on the right-handed partner; conversion serves the left-handed one",
                 )
         if len(set(self.angle_names)) != 3:
-            raise AttitudeError(
-                f"{of} names its angles {', '.join(self.angle_names)}", remedy="three different names"
-            )
+            raise AttitudeError(f"{of} names its angles {', '.join(self.angle_names)}", remedy="three different names")
         if len(self.signs) != 3 or any(sign not in (1, -1) for sign in self.signs):
-            raise AttitudeError(
-                f"{of} has senses {self.signs}", remedy="+1 or -1 for each of the three angles"
-            )
+            raise AttitudeError(f"{of} has senses {self.signs}", remedy="+1 or -1 for each of the three angles")
         if len(self.offsets) != 3 or not np.all(np.isfinite(self.offsets)):
             raise AttitudeError(f"{of} has offsets {self.offsets}", remedy="three finite angles")
         for side in ("left", "right"):
@@ -123,9 +119,7 @@ class Convention:
 
     def matrix(self, angles: ArrayLike) -> Array:
         """R_rb (..., 3, 3) of stated angles (..., 3) rad. Any values, in range or not."""
-        return self._carry(
-            chain_matrix(self.chain_from_stated(angles), sequence=self.sequence, sense=self.sense)
-        )
+        return self._carry(chain_matrix(self.chain_from_stated(angles), sequence=self.sequence, sense=self.sense))
 
     def quaternion(self, angles: ArrayLike) -> Array:
         """Quaternion (..., 4) of R_rb, scalar first, of stated angles (..., 3) rad; first non-zero component

@@ -72,9 +72,7 @@ class Frame:
 
     def __post_init__(self) -> None:
         if len(self.axes) != 3 or not all(self.axes):
-            raise AttitudeError(
-                f"frame '{self.name}' names {len(self.axes)} axes", remedy="name three: x, y, z"
-            )
+            raise AttitudeError(f"frame '{self.name}' names {len(self.axes)} axes", remedy="name three: x, y, z")
         hand = handedness(self.axes)
         x, y, z = self.axes
         if hand == 0:
