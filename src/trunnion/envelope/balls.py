@@ -10,6 +10,7 @@ from __future__ import annotations
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from trunnion.attitude.basis import Basis
 from trunnion.attitude.rotations import about
@@ -46,7 +47,7 @@ def listed_spread(matrices: Array, u: Array, v: Array, label: str = "pose", time
     return _at_rows(best * sign, matrices[index], index, label, times)
 
 
-def _at_rows(value: Array, matrices: Array, index: Array, label: str, times: Array | None) -> Spread:
+def _at_rows(value: Array, matrices: Array, index: NDArray[np.intp], label: str, times: Array | None) -> Spread:
     where = empty_texts(value.shape[1])
     for place in np.ndindex(*index.shape):
         where[place] = f"{label} {index[place] + 1:,}"

@@ -37,6 +37,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from trunnion.envelope.vectors import (
     TURN,
@@ -117,17 +118,17 @@ def _chunk_range(axes: Array, low: Array, high: Array, u: Array, v: Array) -> tu
     return result[0], result[2], result[1], result[3]
 
 
-def _into_range(angles: Array, low: Array, high: Array) -> tuple[Array, Array]:
+def _into_range(angles: Array, low: Array, high: Array) -> tuple[Array, NDArray[np.bool_]]:
     """Bring angles (3, K, M) into [low, high] by whole turns; clipped angles and which are inside."""
     moved = angles + TURN * np.ceil((low - _END_TOLERANCE - angles) / TURN)
-    inside = (moved <= high + _END_TOLERANCE).all(axis=0)
+    inside = np.all(moved <= high + _END_TOLERANCE, axis=0)
     return np.minimum(np.maximum(moved, low), high), inside
 
 
 def _candidates(axes: Array, low: Array, high: Array, u: Array, v: Array) -> Array:
     """All candidate angles (3, K, M), in the ranges or not."""
     ends = np.stack([low, high], axis=1)  # (angle, end, M)
-    p, q, r = _columns(axes, 3)
+    p, _, r = _columns(axes, 3)
     x = turned(p, -ends[0], u[:, None])  # (3, end of a, M)
     z = turned(r, ends[2], v[:, None])  # (3, end of c, M)
     lists = [

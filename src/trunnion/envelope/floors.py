@@ -132,7 +132,7 @@ def rate_limited_spread(times: Array, quaternions: Array, rate: float, offset: i
 def _renumber(spread: Spread, offset: int) -> None:
     if offset:
         for place in np.ndindex(*spread.where.shape):
-            row = int(spread.where[place].split()[1].replace(",", ""))
+            row = int(str(spread.where[place]).split()[1].replace(",", ""))
             spread.where[place] = f"row {row + offset:,}"
 
 

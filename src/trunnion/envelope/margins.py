@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from trunnion.attitude.conventions import Convention
-from trunnion.attitude.sequences import Sense
+from trunnion.attitude.sequences import Sense, Sequence
 from trunnion.envelope.balls import listed_spread, widened
 from trunnion.envelope.chains import box_chain, chain_spread
 from trunnion.envelope.cones import free_cone_spread, rolled_cone_box
@@ -86,18 +86,8 @@ def lock_margin(region: Region, convention: Convention) -> MarginRange:
     The margin is the rotation angle to the nearest attitude at which the convention locks: the angle between the
     lines of its two lock directions. lo and hi bracket each extreme; the witness is an attitude of the region.
     """
-    u, v = as_pairs(*lock_axes(convention))
+    u, v = as_pairs(*convention.lock_axes)
     return ranges_of(spread_of(region, u, v), u, v, line=True)[0]
-
-
-def lock_axes(convention: Convention) -> tuple[Array, Array]:
-    """Constant unit vectors u (reference components) and v (body components): lock means R_rb v lies along ±u.
-
-    Moving axes i-j-k: u = left e_i, v = right^T e_k; fixed axes: u = left e_k, v = right^T e_i.
-    """
-    i, _, k = convention.sequence.axes
-    first, last = (i, k) if convention.sense is Sense.MOVING else (k, i)
-    return np.asarray(convention.left)[:, first], np.asarray(convention.right)[last]
 
 
 def direction_clearance(region: Region, body_direction: ArrayLike, reference_direction: ArrayLike) -> AngleRange:
@@ -134,10 +124,10 @@ class EntryTable:
         """Guaranteed upper bounds (3, 3) rad on the margins."""
         return np.array([[entry.largest.hi for entry in row] for row in self.ranges])
 
-    def of(self, convention: Convention) -> MarginRange:
-        """The range that belongs to a convention's sequence and sense, constants being those of the table."""
-        i, _, k = convention.sequence.axes
-        row, column = (i, k) if convention.sense is Sense.MOVING else (k, i)
+    def of(self, sequence: Sequence, sense: Sense) -> MarginRange:
+        """The range that belongs to a sequence about moving or fixed axes."""
+        i, _, k = sequence.axes
+        row, column = (i, k) if sense is Sense.MOVING else (k, i)
         return self.ranges[row][column]
 
 

@@ -206,7 +206,8 @@ def _require_rows(times: Array, quaternions: Array) -> None:
         raise RegionError(f"time goes back after {_row(step < 0.0)}", remedy="rows in order of time")
     if (step == 0.0).any():
         raise RegionError(
-            f"{_row(step == 0.0)} and the next bear the same time ({_count(step == 0.0)}): the times have lost resolution",
+            f"{_row(step == 0.0)} and the next bear the same time ({_count(step == 0.0)}): "
+            "the times have lost resolution",
             remedy="give times with more digits, or remove repeated rows",
         )
 

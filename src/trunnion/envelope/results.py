@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -193,7 +194,7 @@ def joined(parts: dict[str, Spread], *, named: bool = True) -> Spread:
         for index in np.ndindex(*choice.shape):
             governing[index] = tuple(name for name, tie in zip(names, tied[(slice(None), *index)], strict=True) if tie)
 
-    def pick(arrays: list[Array]) -> Array:
+    def pick(arrays: list[Any]) -> Any:
         stacked = np.stack(arrays)
         rows, columns = np.indices(choice.shape)
         return stacked[choice, rows, columns]
@@ -203,8 +204,8 @@ def joined(parts: dict[str, Spread], *, named: bool = True) -> Spread:
         np.where(sign > 0, highs.min(axis=0), highs.max(axis=0)),
         pick([s.matrices for s in spreads]),
         pick([s.times for s in spreads]),
-        pick([s.where for s in spreads]),  # type: ignore[misc]
-        governing if named else pick([s.governing for s in spreads]),  # type: ignore[misc]
+        pick([s.where for s in spreads]),
+        governing if named else pick([s.governing for s in spreads]),
         weakest(*(s.basis for s in spreads)),
     )
 

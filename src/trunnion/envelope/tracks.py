@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -38,7 +39,7 @@ def pieces(track: Track) -> list[slice]:
         return [slice(0, len(track.times))]
     cuts = np.flatnonzero(np.diff(track.times) > track.longest_gap) + 1
     edges = [0, *cuts.tolist(), len(track.times)]
-    return [slice(start, stop) for start, stop in zip(edges[:-1], edges[1:], strict=True)]
+    return [slice(start, stop) for start, stop in pairwise(edges)]
 
 
 def _piece_spread(track: Track, piece: slice, u: Array, v: Array) -> Spread:

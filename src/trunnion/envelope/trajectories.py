@@ -1,10 +1,10 @@
 """Exact extremes between the rows of a table under slerp: continuous time, no sampling.
 
 For unit quaternions q the set where u lies along R(q) v is a great circle of the quaternion sphere: there are two
-linear maps P and N (2 × 4 each, rows of one orthogonal 4 × 4 matrix) with |P q| = sin(angle/2), |N q| = cos(angle/2).
-Along a slerp step, q(t) = cos t q0 + sin t q1', P q(t) runs along an ellipse and |P q(t)|² = A + B cos(2t - t0): at most
-one minimum inside a step, at a parameter given by one arctangent. The angle there is 2 atan2(|P q|, |N q|), accurate
-at both ends. The largest angle is the least one to -u.
+linear maps P and N (2 × 4 each, rows of one orthogonal 4 × 4 matrix) with |P q| = sin(angle/2) and
+|N q| = cos(angle/2). Along a slerp step, q(t) = cos t q0 + sin t q1', P q(t) runs along an ellipse and
+|P q(t)|² = A + B cos(2t - t0): at most one minimum inside a step, at a parameter given by one arctangent. The angle
+there is 2 atan2(|P q|, |N q|), accurate at both ends. The largest angle is the least one to -u.
 
 Screening. The angle changes by no more than the rotation angle. Rows are taken in blocks; the middle row of a block and
 the length of way in it bound the block from below, and only blocks that can beat the best value seen are looked at.
@@ -40,9 +40,9 @@ def rows_of(quaternions: Array) -> Rows:
     """Prepare rows (N, 4) for screening."""
     count = len(quaternions)
     blocks = max(1, -(-(count - 1) // BLOCK))
-    chord = np.zeros(blocks * BLOCK)
-    chord[: count - 1] = _squared_chords(quaternions)
-    chord = chord.reshape(blocks, 2, BLOCK // 2)
+    padded = np.zeros(blocks * BLOCK)
+    padded[: count - 1] = _squared_chords(quaternions)
+    chord = padded.reshape(blocks, 2, BLOCK // 2)
     # Cauchy-Schwarz: the sum of n step angles is at most sqrt(n × sum of squares)
     way = _CHORD_TO_ANGLE * np.sqrt(BLOCK // 2 * chord.sum(axis=2).max(axis=1))
     widest = _CHORD_TO_ANGLE * np.sqrt(chord.max(axis=(1, 2)))
@@ -62,7 +62,7 @@ def _squared_chords(quaternions: Array) -> Array:
 
 @dataclass(frozen=True, eq=False)
 class LeastAngles:
-    """Least angle of M pairs over a slerp path: value (M,) rad, the row before and the fraction of the step after it."""
+    """Least angle of M pairs over a slerp path: value (M,) rad, the row before, the fraction of the step after it."""
 
     value: Array
     row: NDArray[np.intp]
@@ -214,9 +214,8 @@ def step_minima(q0: Array, q1: Array, form: Array) -> tuple[Array, Array]:
     return value, np.where(moving, turn / np.where(moving, length, 1.0), 0.0)
 
 
-def attitudes_at(quaternions: Array, row: Array, fraction: Array) -> Array:
+def attitudes_at(quaternions: Array, row: NDArray[np.intp], fraction: Array) -> Array:
     """Quaternions (M, 4) at fractions of the slerp steps after rows."""
-    row = np.asarray(row)
     after = np.minimum(row + 1, len(quaternions) - 1)
     q0, q1 = quaternions[row], quaternions[after]
     q1 = np.where(np.einsum("ij,ij->i", q0, q1)[:, None] < 0.0, -q1, q1)
@@ -229,6 +228,6 @@ def attitudes_at(quaternions: Array, row: Array, fraction: Array) -> Array:
     return found / np.linalg.norm(found, axis=1, keepdims=True)
 
 
-def matrices_at(quaternions: Array, row: Array, fraction: Array) -> Array:
+def matrices_at(quaternions: Array, row: NDArray[np.intp], fraction: Array) -> Array:
     """Matrices (M, 3, 3) at fractions of the slerp steps after rows."""
     return matrix_from_quaternion(attitudes_at(quaternions, row, fraction))
