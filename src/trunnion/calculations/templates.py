@@ -22,6 +22,8 @@ from trunnion.calculations.digest import sha256, sha256_json
 from trunnion.calculations.notebooks import PARAMETERS_TAG, Notebook, read_notebook, tagged, tags
 from trunnion.errors import Fault, Place, TemplateError
 
+_EMPTY: tuple[Any, ...] = (None, "", [], {})  # defaults that say "must be given"
+
 
 @dataclass(frozen=True)
 class Take:
@@ -73,7 +75,7 @@ class Template:
         """
         found = {}
         for name, entry in self._declaration.get("takes", {}).items():
-            required = bool(entry.get("required", self.defaults.get(name) is None))
+            required = bool(entry.get("required", self.defaults.get(name) in _EMPTY))
             found[name] = Take(name, str(entry.get("kind", "value")), str(entry.get("help", "")), required)
         return found
 
@@ -99,7 +101,7 @@ class Template:
             if name not in self.takes
         ]
         for take in self.takes.values():
-            if take.required and parameters.get(take.name) is None:
+            if take.required and parameters.get(take.name) in _EMPTY:
                 cause = f"template '{self.name}' needs '{take.name}', which is not given"
                 faults.append(Fault(cause, take.help or f"give a {take.kind}", where))
         for name, value in parameters.items():

@@ -13,6 +13,7 @@ from typing import Any
 
 from trunnion.errors import CalculationError
 from trunnion.sheet.rounding import interval_text, with_unit
+from trunnion.units import LIMIT_SLACK_DEG
 
 MIME = "application/vnd.trunnion.item+json"
 SCHEMA = 1
@@ -39,10 +40,7 @@ def plain(value: Any, place: str = "") -> Any:
     if value is None or isinstance(value, str | bool):
         return value
     if isinstance(value, Mapping):
-        return {
-            _key(key, place): plain(entry, f"{place}.{key}" if place else str(key))
-            for key, entry in value.items()
-        }
+        return {_key(key, place): plain(entry, f"{place}.{key}" if place else str(key)) for key, entry in value.items()}
     if isinstance(value, list | tuple):
         return [plain(entry, f"{place}[{index}]") for index, entry in enumerate(value)]
     if isinstance(value, int):
@@ -202,9 +200,7 @@ def finding_item(identity: str, text: str, *, against: str) -> Item:
 def assumption_item(identity: str, text: str, *, status: str = "open") -> Item:
     """A stated input, confirmed or still open."""
     line = f"Assumption {identity} ({status}): {text}"
-    return _item(
-        "assumption", identity, {"text/markdown": _safe(line), "text/plain": line}, text=text, status=status
-    )
+    return _item("assumption", identity, {"text/markdown": _safe(line), "text/plain": line}, text=text, status=status)
 
 
 def result_text(payload: Mapping[str, Any]) -> str:
@@ -222,16 +218,21 @@ def result_text(payload: Mapping[str, Any]) -> str:
 def _require_interval(name: str, payload: Mapping[str, Any]) -> None:
     lo, hi, attained = payload["lo"], payload["hi"], payload["attained"]
     if payload["basis"] not in BASES:
-        raise CalculationError(
-            f"{name}: basis '{payload['basis']}' is not one", remedy=f"one of {', '.join(BASES)}"
-        )
+        raise CalculationError(f"{name}: basis '{payload['basis']}' is not one", remedy=f"one of {', '.join(BASES)}")
     if not isinstance(payload["unit"], str):
         raise CalculationError(f"{name}: a result needs its unit", remedy="for instance unit='deg'")
     if lo is None and hi is None and attained is None:
         raise CalculationError(f"{name}: neither bound nor attained value", remedy="give lo, hi or attained")
     if lo is not None and hi is not None and lo > hi:
+        raise CalculationError(f"{name}: lower bound {lo} above upper bound {hi}", remedy="exchange lo and hi")
+    if attained is None:
+        return
+    below = lo is not None and attained < lo - LIMIT_SLACK_DEG
+    above = hi is not None and attained > hi + LIMIT_SLACK_DEG
+    if below or above:
         raise CalculationError(
-            f"{name}: lower bound {lo} above upper bound {hi}", remedy="exchange lo and hi"
+            f"{name}: the value reached, {attained}, contradicts its bounds {lo} and {hi}",
+            remedy="a proven bound can't be passed: one of the two routes is wrong",
         )
 
 
@@ -256,16 +257,12 @@ def _require_rectangle(
     if wrong:
         raise CalculationError(f"{identity}: row {wrong[0]} has not the {len(headers)} cells of its heading")
     if len(align) != len(headers) or set(align) - {"l", "r", "c"}:
-        raise CalculationError(
-            f"{identity}: align needs {len(headers)} of l, r, c", remedy="for instance 'lrr'"
-        )
+        raise CalculationError(f"{identity}: align needs {len(headers)} of l, r, c", remedy="for instance 'lrr'")
 
 
 def _safe(text: str) -> str:
     """Text shown as Markdown: characters that would become markup are escaped, `$…$` stays mathematics."""
-    return (
-        "".join(f"\\{sign}" if sign in "\\`*_<>[]#|" else sign for sign in text) if "$" not in text else text
-    )
+    return "".join(f"\\{sign}" if sign in "\\`*_<>[]#|" else sign for sign in text) if "$" not in text else text
 
 
 def _markdown_table(
@@ -290,8 +287,5 @@ def _markdown_row(cells: Sequence[str]) -> str:
 def _text_table(headers: Sequence[str], rows: Sequence[Sequence[str]], caption: str) -> str:
     lines = [headers, *rows]
     widths = [max(len(line[column]) for line in lines) for column in range(len(headers))]
-    text = [
-        "  ".join(cell.ljust(width) for cell, width in zip(line, widths, strict=True)).rstrip()
-        for line in lines
-    ]
+    text = ["  ".join(cell.ljust(width) for cell, width in zip(line, widths, strict=True)).rstrip() for line in lines]
     return "\n".join(([caption] if caption else []) + text)

@@ -1,0 +1,298 @@
+"""The main job: plan, run what is out of date, judge, write results and sheets.
+
+Binding the package is not done here: this room lies above `binding`. What it needs is in `Computed`.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Collection, Mapping, Sequence
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+from trunnion import __version__
+from trunnion.calculations import judgement, sheets, store, writes
+from trunnion.calculations.digest import content_digest, sha256
+from trunnion.calculations.judgement import Judgement
+from trunnion.calculations.notebooks import canonical_bytes
+from trunnion.calculations.plan import Planned, plan
+from trunnion.calculations.results import Recorded, recorded
+from trunnion.calculations.run import Job, Outcome, Progress, run
+from trunnion.calculations.store import RevisionFolder
+from trunnion.errors import Fault, SpecError, TrunnionError
+
+COMPUTED, FAILED, MISSING = "computed", "failed", "missing"
+
+
+@dataclass(frozen=True)
+class Done:
+    """One calculation after the run: its state, its body and what it records, or why there is none."""
+
+    planned: Planned
+    state: str
+    fresh: bool = False
+    body: bytes | None = None
+    digest: str = ""
+    recorded: Recorded | None = None
+    error: str = ""
+    failure: Outcome | None = None
+
+
+@dataclass(frozen=True)
+class Computed:
+    """A workbook after `compute`: calculations in the order of the spec, and the judgements."""
+
+    workbook: Any
+    folder: RevisionFolder
+    done: tuple[Done, ...]
+    judgements: tuple[Judgement, ...]
+    results: Mapping[str, Any] = field(default_factory=dict)
+
+    @property
+    def failed(self) -> list[Done]:
+        """Calculations that failed."""
+        return [entry for entry in self.done if entry.state == FAILED]
+
+    @property
+    def satisfied(self) -> bool:
+        """Whether every requirement that counts is met, or accepted by an approved deviation."""
+        return all(entry.satisfied for entry in self.judgements if entry.counts)
+
+
+def compute(
+    workbook: Any,
+    *,
+    output: Path | None = None,
+    only: Collection[str] = (),
+    workers: int | None = None,
+    allow_local: bool = False,
+    approved: Collection[str] = (),
+    tell: Callable[[Progress], None] | None = None,
+) -> Computed:
+    """Compute a loaded workbook into its revision folder.
+
+    Runs only what is out of date (of `only`, if given); every other body is kept byte for byte. A failed calculation
+    does not stop the others. `approved` are ids of deviations an approver has signed. Raises SpecError,
+    TemplateError or StoreError before anything is run; what a calculation raises is in `Computed.failed`.
+    """
+    _require_known(workbook, only)
+    planned = plan(workbook, allow_local=allow_local, only=frozenset(only))
+    folder = store.revision_folder(workbook.root, workbook.document.revision, output)
+    with folder.locked():
+        _copy_inputs(folder, planned)
+        kept, due = _sort(folder, planned, only)
+        outcomes = _run(folder, due, workers, tell)
+        done = tuple(_done(folder, entry, kept, outcomes) for entry in planned)
+        _write_state(folder, done)
+        computed = _judged(workbook, folder, done, approved)
+        _write_sheets(computed)
+        writes.write_if_changed(folder.path / "results.json", _results_bytes(computed.results))
+    return computed
+
+
+def _require_known(workbook: Any, only: Collection[str]) -> None:
+    known = [calculation.id for calculation in workbook.calculations]
+    unknown = sorted(set(only) - set(known))
+    if unknown:
+        raise TrunnionError(f"there is no calculation {', '.join(unknown)}", remedy=f"known: {', '.join(known)}")
+
+
+def _copy_inputs(folder: RevisionFolder, planned: Sequence[Planned]) -> None:
+    for entry in {file.held: file for one in planned for file in one.inputs.values()}.values():
+        if entry.content is not None:
+            folder.keep_input(entry.path, entry.content)
+
+
+def _sort(
+    folder: RevisionFolder, planned: Sequence[Planned], only: Collection[str]
+) -> tuple[dict[str, bytes], list[Planned]]:
+    """Bodies that stand, by calculation id, and the calculations to run."""
+    checksums = {
+        entry["key"]: entry.get("sha256") for entry in folder.read_state()["calculations"].values() if "key" in entry
+    }
+    kept: dict[str, bytes] = {}
+    due = []
+    for entry in planned:
+        content = folder.sound_body(entry.key, checksums.get(entry.key)) or _elsewhere(folder, entry.key)
+        if content is not None:
+            kept[entry.id] = content
+        elif not only or entry.id in only:
+            folder.set_aside(entry.key)
+            due.append(entry)
+    return kept, due
+
+
+def _elsewhere(folder: RevisionFolder, key: str) -> bytes | None:
+    """A sound body of the key from another revision, copied byte for byte; only where its checksum is recorded."""
+    if folder.body(key).exists():
+        return None
+    for other in store.other_revisions(folder):
+        for entry in other.read_state()["calculations"].values():
+            if entry.get("key") == key and entry.get("sha256"):
+                return folder.take_body_from(other, key, entry["sha256"])
+    return None
+
+
+def _run(
+    folder: RevisionFolder, due: Sequence[Planned], workers: int | None, tell: Callable[[Progress], None] | None
+) -> dict[str, Outcome]:
+    jobs = [
+        Job(
+            calculation=entry.id,
+            template=entry.template.path,
+            parameters=entry.parameters,
+            folder=folder.path,
+            body=folder.body(entry.key),
+            failed=folder.failed(entry.id, entry.template.name),
+        )
+        for entry in due
+    ]
+    return run(jobs, workers=workers, tell=tell) if jobs else {}
+
+
+def _done(folder: RevisionFolder, entry: Planned, kept: Mapping[str, bytes], outcomes: Mapping[str, Outcome]) -> Done:
+    outcome = outcomes.get(entry.id)
+    if outcome is not None and not outcome.done:
+        return Done(entry, FAILED, error=outcome.error, failure=outcome)
+    content = kept.get(entry.id)
+    if outcome is not None:
+        content = folder.body(entry.key).read_bytes()
+    if content is None:
+        return Done(entry, MISSING, error="out of date and not asked for")
+    writes.remove(folder.failed(entry.id, entry.template.name))
+    body = store.read_body(content)
+    try:
+        found = recorded(entry.id, body)
+    except TrunnionError as err:
+        return Done(entry, FAILED, body=content, error=str(err))
+    return Done(entry, COMPUTED, outcome is not None, content, content_digest(body), found)
+
+
+def _write_state(folder: RevisionFolder, done: Sequence[Done]) -> None:
+    state = folder.read_state()
+    entries = {}
+    for entry in done:
+        former = state["calculations"].get(entry.planned.id)
+        if entry.body is not None:
+            entries[entry.planned.id] = {
+                "key": entry.planned.key,
+                "parts": dict(entry.planned.parts),
+                "sha256": sha256(entry.body),
+                "digest": entry.digest,
+                "state": entry.state,
+            }
+        elif former is not None:
+            entries[entry.planned.id] = former
+    folder.write_state({**state, "calculations": entries})
+
+
+def _judged(workbook: Any, folder: RevisionFolder, done: tuple[Done, ...], approved: Collection[str]) -> Computed:
+    records = {entry.planned.id: entry.recorded for entry in done if entry.recorded is not None}
+    judgements = judgement.judge_all(
+        workbook.requirements,
+        workbook.decisions,
+        records,
+        without_angles=angle_free(workbook),
+        deviations=workbook.deviations,
+        approved=approved,
+    )
+    broken = judgement.broken_promises(workbook.calculations, workbook.requirements, judgements, set(records))
+    if broken:
+        raise SpecError([Fault(fault.cause, fault.remedy, fault.place) for fault in broken])
+    computed = Computed(workbook, folder, done, tuple(judgements))
+    return Computed(workbook, folder, done, tuple(judgements), results_of(computed))
+
+
+def angle_free(workbook: Any) -> set[str]:
+    """Candidates of decisions that are no convention of the workbook: a quaternion or a matrix inside."""
+    named = {name for decision in workbook.decisions for name in decision.over}
+    return {name for name in named if name not in workbook.conventions and name not in workbook.mounts}
+
+
+def results_of(computed: Computed) -> dict[str, Any]:
+    """`results.json` as plain JSON: no times, no paths, the same for the same spec, data and program."""
+    document = computed.workbook.document
+    return {
+        "schema": 1,
+        "program": {"name": "trunnion", "version": __version__},
+        "document": {
+            "number": document.number,
+            "title": document.title,
+            "revision": document.revision,
+            "supersedes": document.supersedes,
+        },
+        "calculations": [_plain_calculation(entry) for entry in computed.done],
+        "requirements": judgement.plain_requirements(computed.judgements),
+        "decisions": [
+            {"id": decision.id, "chosen": decision.chosen, "over": list(decision.over)}
+            for decision in computed.workbook.decisions
+        ],
+    }
+
+
+def _plain_calculation(entry: Done) -> dict[str, Any]:
+    found = entry.recorded
+    return {
+        "id": entry.planned.id,
+        "title": entry.planned.title,
+        "template": entry.planned.template.name,
+        "local_template": entry.planned.template.local,
+        "key": entry.planned.key,
+        "digest": entry.digest,
+        "state": entry.state,
+        "error": entry.error,
+        "inputs": [
+            {"path": file.path, "held": file.held if file.copied else None, "sha256": file.sha256, "size": file.size}
+            for file in entry.planned.inputs.values()
+        ],
+        "libraries": {**entry.planned.parts["libraries"], "python": entry.planned.parts["python"]},
+        "results": [result.plain() for result in found.results] if found else [],
+        "checks": [dict(check) for check in found.checks] if found else [],
+        "findings": [dict(finding) for finding in found.findings] if found else [],
+    }
+
+
+def _results_bytes(results: Mapping[str, Any]) -> bytes:
+    return canonical_bytes(results)
+
+
+def _write_sheets(computed: Computed) -> None:
+    for entry in computed.done:
+        if entry.body is None:
+            continue
+        sheet = sheets.sheet_of(store.read_body(entry.body), sheet_text(computed, entry))
+        path = computed.folder.sheet(entry.planned.id, entry.planned.template.name)
+        writes.write_if_changed(path, canonical_bytes(sheet))
+
+
+def sheet_text(computed: Computed, entry: Done) -> sheets.SheetText:
+    """What the generated cells of one sheet say."""
+    document, planned = computed.workbook.document, entry.planned
+    libraries = ", ".join(f"{name} {version}" for name, version in planned.parts["libraries"].items())
+    rows = [
+        ("document", f"{document.number}, revision {document.revision}"),
+        ("calculation", f"{planned.number}: {planned.title}"),
+        ("date", document.date or "not issued"),
+        ("template", planned.template.name + (" (the workbook's own)" if planned.template.local else "")),
+        ("program", f"trunnion {__version__}; Python {planned.parts['python']}, {libraries}"),
+        ("content digest", entry.digest),
+    ]
+    warnings = (
+        [f"Independent check {name} does not agree." for name in entry.recorded.failed_checks] if entry.recorded else []
+    )
+    if planned.template.local:
+        warnings.append(f"Made with a template of the workbook's own (sha256 {planned.template.file_digest}).")
+    return sheets.SheetText(planned.id, rows, requirement_rows(computed, planned.id), (), warnings)
+
+
+def requirement_rows(computed: Computed, calculation: str) -> list[tuple[str, ...]]:
+    """The requirements that rest on a calculation, one row a candidate."""
+    rows = []
+    for judged in computed.judgements:
+        if any(part.result is not None and part.result.calculation == calculation for part in judged.parts):
+            asked = judged.asked
+            accepted = f" ({judged.deviation})" if judged.deviation else ""
+            chosen = judged.candidate + (" (chosen)" if judged.counts and asked.of != judged.candidate else "")
+            verdict = judged.verdict.value + accepted
+            rows.append((asked.requirement, asked.text, chosen, judged.value_text, judged.basis_text, verdict))
+    return rows

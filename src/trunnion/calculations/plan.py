@@ -1,0 +1,209 @@
+"""From the spec to calculations: templates found, parameters resolved to plain values, inputs read, keys made.
+
+Nothing is run and nothing is written here. All faults of all calculations are collected before anything is said.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+from trunnion.calculations import keys, templates
+from trunnion.calculations.digest import sha256
+from trunnion.calculations.store import held_name
+from trunnion.calculations.templates import Template
+from trunnion.errors import Fault, Place, SpecError, TemplateError, TrunnionError
+
+ALL = "all"
+
+
+@dataclass(frozen=True)
+class InputFile:
+    """An input as read: its path in the workbook, the name notebooks read it by, content digest, size."""
+
+    path: str
+    held: str
+    sha256: str
+    size: int
+    content: bytes | None  # None where it is above the copied size: listed by digest only
+
+    @property
+    def copied(self) -> bool:
+        """Whether the revision folder holds it."""
+        return self.content is not None
+
+
+@dataclass(frozen=True)
+class Planned:
+    """One calculation ready to run: what it takes, what it reads, and the content key that follows."""
+
+    id: str
+    template: Template
+    parameters: Mapping[str, Any]
+    inputs: Mapping[str, InputFile]
+    parts: Mapping[str, Any]
+    key: str
+    title: str
+    number: str
+    shows: tuple[str, ...]
+
+
+@dataclass
+class _Reader:
+    """Resolves names and files of one workbook, each once."""
+
+    workbook: Any
+    folder: Path
+    copied_limit: float
+    files: dict[str, InputFile] = field(default_factory=dict)
+
+    def file(self, path: str) -> InputFile:
+        """Read an input file of the workbook."""
+        if path not in self.files:
+            place = self.folder / path
+            if not place.resolve().is_relative_to(self.folder.resolve()):
+                raise TrunnionError(f"'{path}' leaves the workbook", remedy="put the file into its folder")
+            try:
+                content = place.read_bytes()
+            except OSError as err:
+                cause = f"the file '{path}' can't be read ({err.strerror})"
+                raise TrunnionError(cause, remedy="write its path from the workbook's folder") from err
+            digest = sha256(content)
+            kept = content if len(content) <= self.copied_limit else None
+            self.files[path] = InputFile(path, held_name(path, digest), digest, len(content), kept)
+        return self.files[path]
+
+
+def plan(workbook: Any, *, allow_local: bool = False, only: frozenset[str] = frozenset()) -> list[Planned]:
+    """Plan every calculation of a workbook.
+
+    `only` limits which local templates need consent; unplanned ids in it are an error. SpecError holds every fault;
+    TemplateError asks for consent to local templates, naming each with its SHA-256.
+    """
+    reader = _Reader(workbook, workbook.root, float(workbook.max_copied_size))
+    around = keys.surroundings()
+    planned: list[Planned] = []
+    faults: list[Fault] = []
+    for calculation in workbook.calculations:
+        try:
+            planned.append(_planned(calculation, reader, around))
+        except SpecError as err:
+            faults += err.faults
+        except TrunnionError as err:
+            faults.append(_placed(err.fault, workbook, calculation.id))
+    if faults:
+        raise SpecError(faults)
+    _require_consent([entry for entry in planned if not only or entry.id in only], allow_local)
+    return planned
+
+
+def _planned(calculation: Any, reader: _Reader, around: keys.Surroundings) -> Planned:
+    template = templates.find(calculation.template, reader.folder)
+    given = {key.replace(" ", "_"): value for key, value in calculation.parameters.items()}
+    place = _place(reader.workbook, calculation.id)
+    inputs: dict[str, InputFile] = {}
+    resolved = {}
+    for name, value in given.items():
+        take = template.takes.get(name)
+        if take is not None:
+            resolved[name] = _resolved(take.kind, value, reader, inputs)
+    faults = template.check({**given, **resolved}, place=place)
+    if faults:
+        raise SpecError(faults)
+    digests = {entry.held: entry.sha256 for entry in inputs.values()}
+    parts = keys.key_parts(calculation.id, template, resolved, digests, around)
+    return Planned(
+        id=calculation.id,
+        template=template,
+        parameters=resolved,
+        inputs=inputs,
+        parts=parts,
+        key=keys.content_key(parts),
+        title=calculation.title or template.title,
+        number=calculation.number or f"{reader.workbook.document.number}-{calculation.id}",
+        shows=tuple(calculation.shows or ()),
+    )
+
+
+def _require_consent(planned: list[Planned], allowed: bool) -> None:
+    own = {entry.template.name: entry.template for entry in planned if entry.template.local}
+    if not own or allowed:
+        return
+    listed = "\n".join(f"    {template.path}  sha256 {template.file_digest}" for template in own.values())
+    raise TemplateError(
+        f"this workbook brings templates of its own, which are programs that run as you:\n{listed}",
+        remedy="read them, then run again with --allow-local-templates",
+    )
+
+
+def _as_written(reader: _Reader, value: Any) -> Any:
+    from trunnion.spec.parts.base import to_plain
+
+    return to_plain(value)
+
+
+def _part(section: str) -> Callable[[_Reader, Any], Any]:
+    """A resolver of one name to its part, written out with everything it refers to."""
+
+    def resolve(reader: _Reader, name: Any) -> Any:
+        return reader.workbook.plain(section, name)
+
+    return resolve
+
+
+def _parts(section: str) -> Callable[[_Reader, Any], Any]:
+    """A resolver of a list of names, or `all`, to parts by name."""
+
+    def resolve(reader: _Reader, names: Any) -> Any:
+        known = getattr(reader.workbook, section)
+        wanted = list(known) if names == ALL else [names] if isinstance(names, str) else list(names)
+        return {name: reader.workbook.plain(section, name) for name in wanted}
+
+    return resolve
+
+
+_RESOLVERS: dict[str, Callable[[_Reader, Any], Any]] = {
+    "convention": _part("conventions"),
+    "conventions": _parts("conventions"),
+    "envelope": _part("envelopes"),
+    "envelopes": _parts("envelopes"),
+    "mount": _part("mounts"),
+    "mounts": _parts("mounts"),
+    "frame": _part("frames"),
+    "frames": _parts("frames"),
+}
+_FILE_KEYS = ("table", "file")
+
+
+def _resolved(kind: str, value: Any, reader: _Reader, inputs: dict[str, InputFile]) -> Any:
+    """The plain value of one parameter, with the names of copied inputs for its files."""
+    if kind in _FILE_KEYS:
+        return _with_inputs({kind: value}, reader, inputs)[kind]
+    return _with_inputs(_RESOLVERS.get(kind, _as_written)(reader, value), reader, inputs)
+
+
+def _with_inputs(value: Any, reader: _Reader, inputs: dict[str, InputFile]) -> Any:
+    """The plain value with every file path replaced by the name the notebook reads it by."""
+    if isinstance(value, dict):
+        made = {}
+        for key, entry in value.items():
+            if key in _FILE_KEYS and isinstance(entry, str):
+                found = reader.file(entry)
+                inputs[entry] = found
+                made[key] = found.held
+            else:
+                made[key] = _with_inputs(entry, reader, inputs)
+        return made
+    if isinstance(value, list):
+        return [_with_inputs(entry, reader, inputs) for entry in value]
+    return value
+
+
+def _place(workbook: Any, calculation: str) -> Place:
+    return workbook.place(f"calculations.{calculation}")
+
+
+def _placed(fault: Fault, workbook: Any, calculation: str) -> Fault:
+    return fault if str(fault.place) else Fault(fault.cause, fault.remedy, _place(workbook, calculation))
