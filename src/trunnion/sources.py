@@ -73,3 +73,42 @@ register(
         "text",
     ),
 )
+
+register(
+    Source(
+        "MARKLEY-1988",
+        "F. L. Markley, Attitude Determination Using Vector Observations and the Singular Value Decomposition, "
+        "J. Astronautical Sciences 36(3), 1988, 245-258",
+        "memory",
+    ),
+    Source(
+        "SHUSTER-OH-1981",
+        "M. D. Shuster and S. D. Oh, Three-Axis Attitude Determination from Vector Observations, "
+        "J. Guidance and Control 4(1), 1981, 70-77",
+        "memory",
+    ),
+    Source(
+        "SCHAUB-JUNKINS",
+        "H. Schaub and J. L. Junkins, Analytical Mechanics of Space Systems, problem 3.38, through public solutions",
+        "text",
+    ),
+    Source(
+        "PIOVAN-BULLO-2012",
+        "G. Piovan and F. Bullo, On Coordinate-Free Rotation Decomposition: Euler Angles About Arbitrary Axes, "
+        "IEEE Trans. Robotics 28(3), 2012, 728-733",
+        "memory",
+    ),
+    Source("DAVENPORT-1973", "P. B. Davenport, Rotations about Nonorthogonal Axes, AIAA J. 11(6), 1973", "memory"),
+    Source(
+        "BORKOWSKI-1987",
+        "K. M. Borkowski, Near Zenith Tracking Limits for Altitude-Azimuth Telescopes, "
+        "Acta Astronomica 37, 1987, 79-88",
+        "abstract",
+    ),
+    Source("IRAM-SCAN", "IRAM public wiki, NIKA run 3, attachment scan_speed.txt", "text"),
+    Source(
+        "FIELD-REPORTS",
+        "Public reports on mounts and gimbals: issue threads, pull requests, press reports; each case names its own",
+        "text",
+    ),
+)

@@ -8,7 +8,7 @@ columns say where each sensor axis points in the host. With the host's attitude 
 from __future__ import annotations
 
 import enum
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -17,7 +17,8 @@ from numpy.typing import ArrayLike
 
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.frames import Frame
-from trunnion.attitude.rotations import matrix_from_quaternion, quaternion_from_matrix
+from trunnion.attitude.rotations import about, matrix_from_quaternion, quaternion_from_matrix
+from trunnion.attitude.sequences import Sense
 from trunnion.errors import AttitudeError, HardwareError
 from trunnion.hardware.limits import PARALLEL
 from trunnion.hardware.properness import require_proper
@@ -292,6 +293,22 @@ def mount_from_angles(
     said = ", ".join(f"{n} {np.degrees(v):g} deg" for n, v in zip(convention.angle_names, a, strict=True))
     way = f"angles {convention.sequence.value} about {convention.sense.value}: {said}"
     return Mount(name, host, R, stated_as=way, typed=a, stated_angles=(a, convention), **details)
+
+
+def mount_from_turns(
+    turns: Sequence[tuple[str, float]], sense: Sense, host: Frame, *, name: str = "mount", **details: Any
+) -> Mount:
+    """A mount from turns said one after the other: `[("starboard", pi), ("down", pi / 2)]`, axis word and angle (rad).
+
+    The sensor starts aligned with the host. Sense.FIXED: every turn is about the host's own axis; Sense.MOVING: about
+    the axis of that name as the sensor carries it by then. The two differ, and nothing in the words says which.
+    """
+    R = np.eye(3)
+    for axis, angle in turns:
+        step = about(host.direction(axis), angle)
+        R = step @ R if sense is Sense.FIXED else R @ step
+    said = " then ".join(f"{axis} {np.degrees(angle):g} deg" for axis, angle in turns)
+    return Mount(name, host, R, stated_as=f"turns about {sense.value}: {said}", **details)
 
 
 @dataclass(frozen=True)
