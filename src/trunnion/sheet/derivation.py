@@ -1,0 +1,223 @@
+"""What the convention-derivation template calls: the convention derived, proven, drawn and confirmed."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from trunnion.attitude.conventions import Convention
+from trunnion.attitude.words import degrees_text, number_text, singular_attitudes
+from trunnion.figures import charts, drawings
+from trunnion.sheet import display, parameters
+from trunnion.sheet.derivation_checks import show_checks
+from trunnion.sheet.describe import convention_rows
+from trunnion.symbolic.derivation import Derivation, derive
+from trunnion.symbolic.statement import ConventionStatement, statement
+from trunnion.symbolic.steps import Step
+
+# The derivation's own sections, by the part of the notebook that shows them.
+_PRODUCT = ("The three elementary turns", "The product")
+_EXTRACTION = ("Angles from the matrix",)
+_SINGULAR = ("The singular attitudes",)
+_RATES = ("Angle rates and angular velocity",)
+_EXPANSION = ("Near the singular attitudes",)
+_OTHER = ("Small angles", "The quaternion", "Inverse and transposed mapping")
+
+_RANK_AT_LOCK = 2
+
+
+class ConventionDerivation:
+    """One convention; each `show_…` displays one part of its derivation and records what it finds."""
+
+    def __init__(self, *, convention: Mapping[str, Any]) -> None:
+        self._plain = dict(convention)
+        self.convention: Convention = parameters.convention(convention)
+
+    @cached_property
+    def derivation(self) -> Derivation:
+        """Every formula of the convention with its proof."""
+        return derive(self.convention)
+
+    @cached_property
+    def statement(self) -> ConventionStatement:
+        """The convention in words, for the interface document."""
+        return statement(self.convention)
+
+    def show_inputs(self) -> None:
+        """The convention as the injected parameters state it."""
+        display.inputs(convention_rows(self.convention.name, self._plain))
+
+    def show_assumptions(self) -> None:
+        """What the derivation takes for granted."""
+        display.statement(
+            "assumptions", "None: both frames are right-handed triads and the turns are about their axes."
+        )
+
+    def show_statement(self) -> None:
+        """The convention in words: what each angle does, where the angles lock, what the matrix means."""
+        for number, part in enumerate(self.statement.parts, start=1):
+            display.statement(f"statement-{number}", part.paragraphs, title=part.title)
+
+    def show_turns(self) -> None:
+        """The body axes before and after each turn, and the table of symbols."""
+        reference, body = self.convention.reference, self.convention.body
+        display.figure(
+            "fig:turns",
+            drawings.turns_drawing(
+                self.statement.stages, body.axes, self.statement.stage_captions, up=drawings.upward(reference.axes)
+            ),
+            caption=f"The axes of {body.name} at zero and after each turn of {self.convention.name}",
+            alt="Four drawings of the body axes: " + "; ".join(self.statement.stage_captions),
+        )
+        display.table(
+            "tbl:notation",
+            ["symbol", "means"],
+            [[f"${symbol}$", meaning] for symbol, meaning in self.derivation.notation],
+            caption="Symbols of this derivation",
+        )
+
+    def show_product(self) -> None:
+        """Each elementary turn and their product."""
+        self._show(_PRODUCT)
+
+    def show_extraction(self) -> None:
+        """The angles from the entries of the matrix, with their quadrants."""
+        self._show(_EXTRACTION)
+
+    def show_singular_case(self) -> None:
+        """Both singular values of the middle angle: substitution, reduction to one turn, what is left."""
+        self._show(_SINGULAR)
+
+    def show_rates(self) -> None:
+        """Rate matrices both ways, determinant, and the loss of rank at lock, which is recorded."""
+        self._show(_RATES)
+        for place, attitude in enumerate(singular_attitudes(self.convention), start=1):
+            rank = int(np.linalg.matrix_rank(self._rates_at_lock(attitude.angle), tol=1e-9))
+            display.record(
+                quantity="rank of the rate matrix at lock",
+                of=self.convention.name,
+                over=f"singular value {place}, {self.convention.angle_names[1]} {degrees_text(attitude.angle)}",
+                lo=rank,
+                hi=rank,
+                attained=rank,
+                unit="",
+                basis="exact",
+                note=f"of 3; the reduction above shows {_RANK_AT_LOCK}",
+            )
+
+    def show_gains(self) -> None:
+        """Growth of the outer rates and the condition number against the distance from lock."""
+        rows = self.derivation.conditions
+        display.table(
+            "tbl:gains",
+            ["lock margin", "|determinant|", "largest outer angle rate a unit body rate", "condition number"],
+            [[degrees_text(float(np.radians(row[0]))), *(f"{value:.6g}" for value in row[1:])] for row in rows],
+            caption="Rates against the distance from lock",
+            align="rrrr",
+        )
+        margins = np.linspace(0.5, 90.0, 180)
+        sine = np.sin(np.radians(margins))
+        display.figure(
+            "fig:gains",
+            charts.gain_curves(
+                margins,
+                {
+                    "outer angle rate": 1.0 / sine,
+                    "condition number": np.sqrt(
+                        (1.0 + np.abs(np.cos(np.radians(margins)))) / (1.0 - np.cos(np.radians(margins)))
+                    ),
+                },
+                locks=[0.0],
+                x_label="lock margin",
+            ),
+            caption="Amplification of a unit body rate into the outer angle rates, and the condition number",
+            alt="Two curves that grow without bound as the lock margin goes to zero.",
+        )
+
+    def show_expansion(self) -> None:
+        """First terms near the singular attitudes."""
+        self._show(_EXPANSION)
+
+    def show_other_forms(self) -> None:
+        """Small angles, the quaternion, the inverse and the transposed map."""
+        self._show(_OTHER)
+
+    def show_numbers(self) -> None:
+        """One worked triple through the derived formulas: matrix, quaternion, and back to the angles."""
+        angles = (
+            np.radians([10.0, -35.0, 50.0]) if not self.convention.sequence.repeated else np.radians([10.0, 35.0, 50.0])
+        )
+        stated = self.convention.stated_from_chain(angles)
+        matrix = self.derivation.value("matrix", stated)
+        quaternion = self.derivation.value("quaternion", stated).ravel()
+        back = self.derivation.angles(matrix)
+        names = self.convention.angle_names
+        display.table(
+            "tbl:worked",
+            ["quantity", "value"],
+            [
+                [
+                    "angles",
+                    ", ".join(f"{name} {degrees_text(float(a))}" for name, a in zip(names, stated, strict=True)),
+                ],
+                *([f"matrix, row {row + 1}", "  ".join(number_text(v, 6) for v in matrix[row])] for row in range(3)),
+                ["quaternion, scalar first", "  ".join(number_text(v, 6) for v in quaternion)],
+                [
+                    "angles read back",
+                    ", ".join(f"{name} {degrees_text(float(a))}" for name, a in zip(names, back, strict=True)),
+                ],
+            ],
+            caption="A worked attitude",
+        )
+
+    def show_checks(self) -> None:
+        """The derived formulas against scipy, at ordinary attitudes and at both singular ones."""
+        show_checks(self.derivation)
+
+    def show_results(self) -> None:
+        """What was proven, and where the convention is singular."""
+        proofs = [step.proof for step in self.derivation.steps if step.proof is not None]
+        display.record(
+            quantity="proven identities",
+            of=self.convention.name,
+            over=None,
+            lo=len(proofs),
+            hi=len(proofs),
+            attained=len(proofs),
+            unit="",
+            basis="exact",
+        )
+        display.table(
+            "tbl:results",
+            ["result", "value"],
+            [
+                ["identities shown and proven", str(len(proofs))],
+                ["digits of the numeric proof", str(min(proof.digits for proof in proofs))],
+                *(
+                    [f"singular value {place}", f"{self.convention.angle_names[1]} {degrees_text(attitude.angle)}"]
+                    for place, attitude in enumerate(singular_attitudes(self.convention), start=1)
+                ),
+                ["rank of the rate matrix there", f"{_RANK_AT_LOCK} of 3"],
+            ],
+            caption="Results of this calculation",
+        )
+
+    def _show(self, sections: tuple[str, ...]) -> None:
+        for title, steps in self.derivation.sections():
+            if title in sections:
+                for step in steps:
+                    _show_step(step)
+
+    def _rates_at_lock(self, middle: float) -> Any:
+        return self.derivation.value("body rates", [0.4, middle, -0.9])
+
+
+def _show_step(step: Step) -> None:
+    """One step: its words, its formula, its proof."""
+    proof = f" Proof: {step.proof}." if step.proof is not None else ""
+    display.statement(f"step-{step.id}", step.prose + proof, title=step.title)
+    if step.latex:
+        display.equation(f"eq:{step.id}", step.latex, step.title)
