@@ -3,6 +3,7 @@
 from trunnion.tables.confine import Limits
 from trunnion.tables.reading import read_table
 from trunnion.tables.statements import Between, Form, Order, Scalar, TableStatement, statement_from_plain
+from trunnion.tables.streaming import iter_chunks
 from trunnion.tables.table import AttitudeTable, Trouble
 
 __all__ = [
@@ -14,6 +15,7 @@ __all__ = [
     "Scalar",
     "TableStatement",
     "Trouble",
+    "iter_chunks",
     "read_table",
     "statement_from_plain",
 ]

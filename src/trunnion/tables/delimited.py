@@ -10,6 +10,7 @@ import io
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 
@@ -21,7 +22,7 @@ from trunnion.tables.statements import TableStatement
 from trunnion.tables.table import SHOWN_ROWS, Trouble
 
 MAX_LINE = 1 << 20  # bytes; a longer line is no table
-_HEAD = 4 << 20
+HEAD = 4 << 20
 _EMPTY = ("", "nan", "NaN", "NA", "N/A", "null", "NULL", "None")
 
 
@@ -94,12 +95,12 @@ def read_csv(data: memoryview, statement: TableStatement, path: Path) -> Columns
     """The stated columns of a CSV given as bytes."""
     import pyarrow as pa
 
-    layout = read_layout(bytes(data[:_HEAD]), path, statement.separator)
+    layout = read_layout(bytes(data[:HEAD]), path, statement.separator)
     names = wanted_columns(statement)
     require_columns(names, layout, path, statement.separator)
     for time_type in (None, pa.float64()):
         try:
-            columns = _columns_from(_read_fast(data, layout, names, statement.separator, time_type), names)
+            columns = columns_of_table(_read_fast(data, layout, names, statement.separator, time_type), names)
             columns.line_of = lambda row: _line_of(data, layout, row)
             return columns
         except pa.ArrowInvalid:
@@ -130,7 +131,7 @@ def convert_options(names: list[str], time_type: object) -> object:
     return arrow_csv.ConvertOptions(include_columns=names, column_types=types, null_values=list(_EMPTY))
 
 
-def _columns_from(table: object, names: list[str]) -> Columns:
+def columns_of_table(table: object, names: list[str]) -> Columns:
     """Columns of an arrow table; a time column that is no number raises ArrowInvalid, so the patient way is taken."""
     import pyarrow as pa
 
@@ -138,6 +139,32 @@ def _columns_from(table: object, names: list[str]) -> Columns:
         raise pa.ArrowInvalid("time column is not numeric")
     arrays = [to_numpy(table.column(name)) for name in names]  # type: ignore[attr-defined]
     return Columns(arrays[0], [values.astype(float, copy=False) for values in arrays[1:]])
+
+
+def open_batches(path: Path, layout: Layout, names: list[str], separator: str, time_type: object) -> Iterator[Any]:
+    """Record batches of about 1 MiB of text, as pyarrow reads them from the file."""
+    import pyarrow as pa
+    from pyarrow import csv as arrow_csv
+
+    with pa.OSFile(str(path), "rb") as handle:
+        handle.seek(layout.data_offset)
+        if layout.data_offset >= handle.size():
+            return
+        reader = arrow_csv.open_csv(
+            pa.input_stream(handle),
+            read_options=arrow_csv.ReadOptions(column_names=list(layout.names), block_size=MAX_LINE, use_threads=False),
+            parse_options=arrow_csv.ParseOptions(delimiter=separator),
+            convert_options=convert_options(names, time_type),
+        )
+        yield from reader
+
+
+def find_faults(lines: Iterator[bytes], layout: Layout, names: list[str], separator: str, path: Path) -> list[Trouble]:
+    """Go through all rows, keep none, and report the wrong ones."""
+    report = _Report()
+    for _ in _parsed_rows(lines, layout, names, separator, report, 1):
+        pass
+    return report.troubles()
 
 
 def _is_clock(kind: object) -> bool:
@@ -200,22 +227,26 @@ def read_patiently(
     lines: Iterator[bytes], layout: Layout, names: list[str], separator: str, path: Path, first_row: int = 1
 ) -> Columns:
     """Read row by row, keep the rows that can be read, and report each that can't with row and line number."""
+    report = _Report()
+    kept = list(_parsed_rows(lines, layout, names, separator, report, first_row))
+    matrix = np.array([numbers for _, numbers in kept], dtype=float).reshape(-1, len(names))
+    rows = np.array([row for row, _ in kept], dtype=np.int64)
+    return Columns(matrix[:, 0], list(matrix[:, 1:].T), rows, damage=report.troubles())
+
+
+def _parsed_rows(
+    lines: Iterator[bytes], layout: Layout, names: list[str], separator: str, report: _Report, first_row: int
+) -> Iterator[tuple[int, list[float]]]:
+    """(row number, numbers) of each row that can be read; the others go on the report."""
     places = [layout.names.index(name) for name in names]
-    width, report = len(layout.names), _Report()
-    kept_rows: list[int] = []
-    cells: list[list[float]] = []
     row = first_row - 1
     for number, line in enumerate(lines, layout.header_line + 1):
         if not line.strip():
             continue
         row += 1
-        numbers = _parse_row(line, separator, width, places, layout.names, report, row, number)
+        numbers = _parse_row(line, separator, len(layout.names), places, layout.names, report, row, number)
         if numbers is not None:
-            kept_rows.append(row)
-            cells.append(numbers)
-    matrix = np.array(cells, dtype=float).reshape(-1, len(names))
-    rows = np.array(kept_rows, dtype=np.int64)
-    return Columns(matrix[:, 0], list(matrix[:, 1:].T), rows, damage=report.troubles())
+            yield row, numbers
 
 
 def _parse_row(

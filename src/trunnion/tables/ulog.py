@@ -25,15 +25,8 @@ _READER = "trunnion.tables.foreign.ulog:read_topic"
 def read_ulog_table(statement: TableStatement, path: Path, limits: Limits) -> AttitudeTable:
     """One topic of a log. Damage of any kind (see `ulog_health`) stops it unless the statement accepts damage."""
     seal = Seal.of(path)
-    health = examine(path)
+    health, series, names = open_log(statement, path, keep=statement.topic)
     damage = health.troubles()
-    structural = [trouble for trouble in damage if trouble.kind == "damaged log"]
-    if structural and not statement.accept_damaged:
-        refuse_damage(damage, statement, path)
-    require_answers("ulog", statement, {}, path)
-    series = require_topic(health, statement, path)
-    names = wanted_columns(statement)
-    require_fields(series, names, path)
     options = {"topic": series.topic.name, "instance": series.topic.instance, "columns": names}
     returned = read_confined(_READER, path, options, limits)
     seal.require_unchanged(path)
@@ -44,11 +37,27 @@ def read_ulog_table(statement: TableStatement, path: Path, limits: Limits) -> At
     return assemble(columns, statement, path, seal.sha256)
 
 
+def open_log(statement: TableStatement, path: Path, keep: str | None) -> tuple[Health, Series, list[str]]:
+    """The walked log, the stated topic's series and the wanted fields, time first; TableError where one is missing.
+
+    Damage of the file itself comes before all questions, unless the statement accepts it.
+    """
+    health = examine(path, keep)
+    damage = health.troubles()
+    if any(trouble.kind == "damaged log" for trouble in damage):
+        refuse_damage(damage, statement, path)
+    require_answers("ulog", statement, {}, path)
+    series = require_topic(health, statement, path)
+    names = wanted_columns(statement)
+    require_fields(series, names, path)
+    return health, series, names
+
+
 def require_topic(health: Health, statement: TableStatement, path: Path) -> Series:
     """The stated topic's series, or TableError with the topics the log holds."""
     series = health.find(statement.topic or "", statement.instance)
-    if series is None or not series.stamps:
-        held = sorted({other.label for other in health.series.values() if other.stamps})
+    if series is None or not series.count:
+        held = sorted({other.label for other in health.series.values() if other.count})
         which = f"'{statement.topic}'" + (f" instance {statement.instance}" if statement.instance else "")
         raise file_error(path, f"the log holds no samples of topic {which}", nearest_hint(statement.topic or "", held))
     return series
@@ -68,7 +77,7 @@ def _disagreements(returned: Returned, series: Series) -> list[Trouble]:
     if returned.meta["corrupt"]:
         found.append(Trouble("damaged log", "the log reader found damage in the file", 1))
     stamps = returned.arrays["stamps"].astype(np.uint64)
-    walked = np.array(series.stamps, dtype=np.uint64)
+    walked = np.frombuffer(series.stamps or b"", dtype=np.uint64)
     if len(stamps) != len(walked):
         text = f"the log reader gives {len(stamps)} samples, the walk through the file {len(walked)}"
         found.append(Trouble("damaged log", text, abs(len(stamps) - len(walked))))
@@ -82,7 +91,7 @@ def _gap_damage(series: Series, statement: TableStatement) -> list[Trouble]:
     """Gaps of the logged time stamps above the stated largest one; in a log they stop the reading."""
     if statement.max_gap is None:
         return []
-    stamps = np.array(series.stamps, dtype=np.uint64)
+    stamps = np.frombuffer(series.stamps or b"", dtype=np.uint64)
     times, _, _ = seconds(stamps.astype(np.int64), "us")
     findings, _ = gap_troubles(times, np.arange(1, len(times) + 1), statement.max_gap)
     return findings
@@ -91,6 +100,6 @@ def _gap_damage(series: Series, statement: TableStatement) -> list[Trouble]:
 def _summary(health: Health, series: Series) -> str:
     total = sum(health.messages.values())
     return (
-        f"{len(series.stamps)} samples of '{series.label}' among {total} messages in {health.size} bytes; "
+        f"{series.count} samples of '{series.label}' among {total} messages in {health.size} bytes; "
         "the format has no closing record, so a log cut exactly between two messages can't be told from a whole one"
     )

@@ -7,6 +7,7 @@ changed bytes inside numbers that stay plausible.
 from __future__ import annotations
 
 import struct
+from array import array
 from collections import Counter
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -21,10 +22,12 @@ _UNKNOWN_INCOMPATIBLE = 0xFE  # of the first flag byte; bit 0 (appended data) is
 
 @dataclass
 class Series:
-    """What the walk saw of one topic: how many samples and their time stamps (as logged)."""
+    """What the walk saw of one topic: samples, zero time stamps, and the stamps themselves where they are asked for."""
 
     topic: Topic
-    stamps: list[int] = field(default_factory=list)
+    count: int = 0
+    zeros: int = 0
+    stamps: array[int] | None = None
 
     @property
     def label(self) -> str:
@@ -43,6 +46,7 @@ class Health:
     contents: dict[str, list[int]] = field(default_factory=dict)
     dropouts: list[int] = field(default_factory=list)
     appended: list[int] = field(default_factory=list)
+    keep: str | None = None
 
     def note_content(self, reason: str, offset: int) -> None:
         """Remember a message whose content contradicts the log's own definitions."""
@@ -51,7 +55,7 @@ class Health:
     def find(self, name: str, instance: int) -> Series | None:
         """The series of a topic, the longest if it was subscribed more than once."""
         found = [s for s in self.series.values() if s.topic.name == name and s.topic.instance == instance]
-        return max(found, key=lambda series: len(series.stamps), default=None)
+        return max(found, key=lambda series: series.count, default=None)
 
     def troubles(self) -> list[Trouble]:
         """Everything that speaks against the log, with counts and the first byte offsets."""
@@ -90,10 +94,9 @@ class Health:
         """Zero time stamps among real ones; a topic that never fills its stamp is left alone."""
         found = []
         for series in self.series.values():
-            zeros = series.stamps.count(0)
-            if 0 < zeros < len(series.stamps):
-                text = f"topic '{series.label}': {zeros} of {len(series.stamps)} time stamps are zero"
-                found.append(Trouble("damaged log", text, zeros))
+            if 0 < series.zeros < series.count:
+                text = f"topic '{series.label}': {series.zeros} of {series.count} time stamps are zero"
+                found.append(Trouble("damaged log", text, series.zeros))
         return found
 
 
@@ -102,9 +105,12 @@ def _bytes_listed(offsets: list[int]) -> str:
     return f"byte {listed}" + (", …" if len(offsets) > SHOWN_ROWS else "")
 
 
-def examine(path: Path) -> Health:
-    """Walk a log from first to last byte. Raises TableError for a file that is no ULog at all."""
-    health = Health(size=path.stat().st_size)
+def examine(path: Path, keep: str | None = None) -> Health:
+    """Walk a log from first to last byte, keeping the time stamps of the topic `keep` only.
+
+    Raises TableError for a file that is no ULog at all.
+    """
+    health = Health(size=path.stat().st_size, keep=keep)
     words = Dictionary()
     with path.open("rb", buffering=1 << 20) as handle:
         require_header(handle.read(HEADER_SIZE), path)
@@ -136,7 +142,9 @@ def _take_in(message: Message, words: Dictionary, health: Health) -> None:
     reason = words.learn(message)
     if kind == "A" and reason is None:
         number = int.from_bytes(payload[1:3], "little")
-        health.series.setdefault(number, Series(words.topics[number]))
+        topic = words.topics[number]
+        stamps = array("Q") if topic.name == health.keep else None
+        health.series.setdefault(number, Series(topic, stamps=stamps))
     elif kind == "B":
         reason = _flags(payload, health)
     elif kind == "O":
@@ -161,11 +169,15 @@ def _take_data(message: Message, words: Dictionary, health: Health) -> None:
     if not topic.dtype.itemsize <= len(message.payload) - 2 <= topic.padded_size:
         health.note_content("samples of the wrong size for their topic", message.offset)
         return
+    series = health.series[number]
+    series.count += 1
     fields = topic.dtype.fields
     if fields and "timestamp" in fields:
         kind, start = fields["timestamp"][:2]
         stamp = int.from_bytes(message.payload[2 + start : 2 + start + kind.itemsize], "little")
-        health.series[number].stamps.append(stamp)
+        series.zeros += stamp == 0
+        if series.stamps is not None:
+            series.stamps.append(stamp & 0xFFFFFFFFFFFFFFFF)
 
 
 def _flags(payload: bytes, health: Health) -> str | None:

@@ -11,21 +11,47 @@ from trunnion.tables.refusals import Refused
 
 
 def read_columns(path: str, options: dict[str, Any]) -> tuple[dict[str, np.ndarray], dict[str, Any]]:
-    """Named columns as arrays "0", "1", … and the key-value texts of the file's schema."""
+    """Named columns as arrays "0", "1", …, in the order named."""
     import pyarrow as pa
     import pyarrow.parquet as pq
 
     with pa.OSFile(path, "rb") as handle:
         file = pq.ParquetFile(handle, pre_buffer=False)
-        names = file.schema_arrow.names
-        for name in options["columns"]:
-            if name not in names:
-                raise Refused(f"there is no column '{name}'", nearest_hint(name, names))
-            if names.count(name) > 1:
-                raise Refused(f"there are {names.count(name)} columns '{name}'", "rename one of them")
+        _require_names(file.schema_arrow.names, options["columns"])
         table = file.read(columns=options["columns"], use_threads=False)
-        arrays = {str(place): _numbers(table, name) for place, name in enumerate(options["columns"])}
-        return arrays, {"rows": table.num_rows}
+        return _arrays(table, options["columns"]), {"rows": table.num_rows}
+
+
+def row_groups(path: str, options: dict[str, Any]) -> tuple[dict[str, np.ndarray], dict[str, Any]]:
+    """The number of rows of each row group."""
+    import pyarrow.parquet as pq
+
+    metadata = pq.ParquetFile(path).metadata
+    return {}, {"rows": [metadata.row_group(place).num_rows for place in range(metadata.num_row_groups)]}
+
+
+def read_row_groups(path: str, options: dict[str, Any]) -> tuple[dict[str, np.ndarray], dict[str, Any]]:
+    """As `read_columns`, of the row groups numbered in `groups` only."""
+    import pyarrow as pa
+    import pyarrow.parquet as pq
+
+    with pa.OSFile(path, "rb") as handle:
+        file = pq.ParquetFile(handle, pre_buffer=False)
+        _require_names(file.schema_arrow.names, options["columns"])
+        table = file.read_row_groups(options["groups"], columns=options["columns"], use_threads=False)
+        return _arrays(table, options["columns"]), {"rows": table.num_rows}
+
+
+def _require_names(names: list[str], wanted: list[str]) -> None:
+    for name in wanted:
+        if name not in names:
+            raise Refused(f"there is no column '{name}'", nearest_hint(name, names))
+        if names.count(name) > 1:
+            raise Refused(f"there are {names.count(name)} columns '{name}'", "rename one of them")
+
+
+def _arrays(table: Any, wanted: list[str]) -> dict[str, np.ndarray]:
+    return {str(place): _numbers(table, name) for place, name in enumerate(wanted)}
 
 
 def _numbers(table: Any, name: str) -> np.ndarray:
