@@ -72,6 +72,12 @@ register(
         "Public bug reports about angles at and near lock, each with repository and number",
         "text",
     ),
+    Source(
+        "OCE-1203",
+        "Tilt readings of current profilers: dankelley/oce issues 1203 (2017) and 1800 (2021), aodn/imos-toolbox "
+        "pull request 683 (2020), lkilcher/dolfyn issue 43 (2019)",
+        "text",
+    ),
 )
 
 register(
