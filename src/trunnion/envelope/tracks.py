@@ -15,7 +15,7 @@ from trunnion.envelope.floors import rate_limited_spread
 from trunnion.envelope.regions import Between, Track, step_angles
 from trunnion.envelope.results import Spread, closed_form_ends, connected, joined
 from trunnion.envelope.search import bisect_parameter
-from trunnion.envelope.trajectories import least_angles, matrices_at, rows_of
+from trunnion.envelope.trajectories import end_angles, matrices_at, rows_of
 from trunnion.envelope.vectors import Array, dot
 
 NEAR_HALF_TURN = np.radians(170.0)
@@ -56,7 +56,7 @@ def _piece_spread(track: Track, piece: slice, u: Array, v: Array) -> Spread:
 def _slerp_spread(times: Array, quaternions: Array, offset: int, u: Array, v: Array) -> Spread:
     """Exact in continuous time: both ends from the least angle to u and to -u."""
     count = u.shape[1]
-    found = least_angles(rows_of(quaternions), np.concatenate([u, -u], axis=1), np.concatenate([v, v], axis=1))
+    found = end_angles(rows_of(quaternions), u, v)
     stamps = _stamps(times, found.row, found.fraction)
     matrices = matrices_at(quaternions, found.row, found.fraction)
     places = [_place(row + offset, part) for row, part in zip(found.row, found.fraction, strict=True)]

@@ -90,26 +90,24 @@ def _quaternion_from_z(vectors: Array) -> Array:
     return np.where(upper[:, None], near, turned_over)
 
 
-def least_angles(rows: Rows, u: Array, v: Array) -> LeastAngles:
-    """Least angle between u and R v over the whole slerp path, for pairs u, v (3, M)."""
-    lower = _block_bounds(rows, u, v)
+def end_angles(rows: Rows, u: Array, v: Array) -> LeastAngles:
+    """Least angles to u, then least angles to -u, between them and R v over the whole slerp path.
+
+    Pairs u, v (3, M) give 2 M results; pi minus the second half are the largest angles to u.
+    """
     maps = forms(u, v)
-    best = _Best(u.shape[1])
-    for pair in range(u.shape[1]):
-        _first_look(rows, maps[pair], lower[pair], pair, best)
-    dense = _passing(lower, best.value)
-    if np.count_nonzero(dense) * BLOCK > 2 * len(rows.quaternions):
-        lower = _dense_bounds(rows, u, v)
-        dense = _passing(lower, best.value)
-    for pair in range(u.shape[1]):
-        blocks = np.flatnonzero(dense[pair])
-        blocks = blocks[np.argsort(lower[pair, blocks])]
-        for start in range(0, len(blocks), 1024):
-            part = blocks[start : start + 1024]
-            part = part[lower[pair, part] <= best.value[pair] + _SLACK]
-            if len(part) == 0:
-                break
-            best.take(pair, *_examine(rows, maps[pair], part))
+    maps = np.concatenate([maps, maps[:, [2, 3, 0, 1]]])
+    lower = _middle_bounds(rows, u, v)
+    best = _Best(len(maps))
+    for pair in range(len(maps)):
+        at = int(np.argmin(lower[pair]))
+        best.take(pair, *_examine(rows, maps[pair], np.arange(max(at - 4, 0), min(at + 5, len(rows.way))), np.inf))
+    open_blocks = lower <= best.value[:, None] + _SLACK
+    if np.count_nonzero(open_blocks) > 3 * len(rows.way):
+        lower = np.maximum(lower, _dense_bounds(rows, u, v))
+        open_blocks = lower <= best.value[:, None] + _SLACK
+    for pair in range(len(maps)):
+        _search(rows, maps[pair], lower[pair], np.flatnonzero(open_blocks[pair]), pair, best)
     return LeastAngles(best.value, best.row, best.fraction)
 
 
@@ -126,67 +124,92 @@ class _Best:
             self.value[pair], self.row[pair], self.fraction[pair] = value, row, fraction
 
 
-def _first_look(rows: Rows, form: Array, lower: Array, pair: int, best: _Best) -> None:
-    """Examine the few most promising blocks, so that screening starts from a good value."""
-    few = min(16, len(lower))
-    promising = np.argpartition(lower, few - 1)[:few]
-    best.take(pair, *_examine(rows, form, promising))
+def _search(rows: Rows, form: Array, lower: Array, blocks: NDArray[np.intp], pair: int, best: _Best) -> None:
+    """Examine open blocks, the most promising first, until none can beat the best value."""
+    if len(blocks) > 256:
+        blocks = blocks[np.argsort(lower[blocks])]
+    for start in range(0, len(blocks), 256):
+        part = blocks[start : start + 256]
+        part = part[lower[part] <= best.value[pair] + _SLACK]
+        if len(part) == 0:
+            break
+        best.take(pair, *_examine(rows, form, part, best.value[pair]))
 
 
-def _passing(lower: Array, best: Array) -> NDArray[np.bool_]:
-    return lower <= best[:, None] + _SLACK
-
-
-def _block_bounds(rows: Rows, u: Array, v: Array) -> Array:
-    """Lower bounds (M, B) rad from the middle row of each block."""
-    cosines = _cosines(rows.quaternions[rows.middles], u, v)
-    return np.arccos(np.clip(cosines, -1.0, 1.0)) - rows.way
+def _middle_bounds(rows: Rows, u: Array, v: Array) -> Array:
+    """Lower bounds (2 M, B) rad from the middle row of each block."""
+    cosines = _cosines(rows.quaternions[rows.middles].T, u, v)
+    angle = np.arccos(np.clip(cosines, -1.0, 1.0))
+    return np.concatenate([angle, np.pi - angle]) - rows.way
 
 
 def _dense_bounds(rows: Rows, u: Array, v: Array) -> Array:
-    """Lower bounds (M, B) rad from every row of each block and half its widest step."""
-    blocks = len(rows.middles)
-    highest = np.full((u.shape[1], blocks), -1.0)
-    per_chunk = _CHUNK // BLOCK
-    for first in range(0, blocks, per_chunk):
-        last = min(first + per_chunk, blocks)
-        part = rows.quaternions[first * BLOCK : last * BLOCK + 1]
-        cosines = _cosines(part, u, v)
-        starts = np.arange(0, len(part) - 1, BLOCK) if len(part) > 1 else np.array([0])
-        grouped = np.maximum.reduceat(cosines, starts, axis=1)
-        ends = np.minimum(starts + BLOCK, len(part) - 1)
-        highest[:, first:last] = np.maximum(grouped, cosines[:, ends])
-    return np.arccos(np.clip(highest, -1.0, 1.0)) - 0.5 * rows.widest
+    """Lower bounds (2 M, B) rad from every row of each block and half its widest step."""
+    count, blocks = len(rows.quaternions), len(rows.way)
+    highest, lowest, first = (np.empty((u.shape[1], blocks)) for _ in range(3))
+    for start in range(0, blocks, _CHUNK // BLOCK):
+        stop = min(start + _CHUNK // BLOCK, blocks)
+        part = rows.quaternions[start * BLOCK : stop * BLOCK]
+        if len(part) < (stop - start) * BLOCK:
+            part = rows.quaternions[np.minimum(np.arange(start * BLOCK, stop * BLOCK), count - 1)]
+        # row in block before block, so that maxima run along whole arrays instead of short rows
+        cosines = _cosines(part.reshape(-1, BLOCK, 4).transpose(2, 1, 0), u, v)
+        np.max(cosines, axis=1, out=highest[:, start:stop])
+        np.min(cosines, axis=1, out=lowest[:, start:stop])
+        first[:, start:stop] = cosines[:, 0]
+    after = np.concatenate([first[:, 1:], _cosines(rows.quaternions[-1:].T, u, v)], axis=1)
+    near = np.arccos(np.clip(np.maximum(highest, after), -1.0, 1.0))
+    far = np.arccos(np.clip(np.maximum(-lowest, -after), -1.0, 1.0))
+    return np.concatenate([near, far]) - 0.5 * rows.widest
 
 
-def _cosines(quaternions: Array, u: Array, v: Array) -> Array:
-    """u . R v (M, N) for quaternions (N, 4): the nine matrix entries once, then one small product."""
-    w, x, y, z = np.ascontiguousarray(quaternions.T)
+_AXES_U, _AXES_V = np.repeat(np.eye(3), 3, axis=1), np.tile(np.eye(3), (1, 3))
+
+
+def _cosines(components: Array, u: Array, v: Array) -> Array:
+    """u . R v (M, ...) for quaternion components (4, ...): the nine matrix entries once, then one small product."""
+    w, x, y, z = np.ascontiguousarray(components)
     ww, xx, yy, zz = w * w, x * x, y * y, z * z
-    wx, wy, wz, xy, xz, yz = 2 * w * x, 2 * w * y, 2 * w * z, 2 * x * y, 2 * x * z, 2 * y * z
-    entries = np.stack(
-        [
-            ww + xx - yy - zz,
-            xy - wz,
-            xz + wy,
-            xy + wz,
-            ww - xx + yy - zz,
-            yz - wx,
-            xz - wy,
-            yz + wx,
-            ww - xx - yy + zz,
-        ]
+    two_w, two_x = w + w, x + x
+    wx, wy, wz, xy, xz, yz = two_w * x, two_w * y, two_w * z, two_x * y, two_x * z, (y + y) * z
+    plus, minus, both, apart = ww + xx, ww - xx, yy + zz, yy - zz
+    entries = np.empty((9, *w.shape))
+    parts = (
+        (np.subtract, plus, both),
+        (np.subtract, xy, wz),
+        (np.add, xz, wy),
+        (np.add, xy, wz),
+        (np.add, minus, apart),
+        (np.subtract, yz, wx),
+        (np.subtract, xz, wy),
+        (np.add, yz, wx),
+        (np.subtract, minus, apart),
     )
+    for entry, (combine, one, other) in zip(entries, parts, strict=True):
+        combine(one, other, out=entry)
+    if u.shape == (3, 9) and np.array_equal(u, _AXES_U) and np.array_equal(v, _AXES_V):
+        return entries
     weights = (u[:, None] * v[None, :]).reshape(9, -1)
-    return weights.T @ entries
+    return np.tensordot(weights, entries, axes=(0, 0))
 
 
-def _examine(rows: Rows, form: Array, blocks: NDArray[np.intp]) -> tuple[float, int, float]:
-    """Exact least angle within some blocks: value, row before, fraction of the step."""
+def _examine(rows: Rows, form: Array, blocks: NDArray[np.intp], best: float) -> tuple[float, int, float]:
+    """Exact least angle within some blocks where it is below `best`: value, row before, fraction of the step.
+
+    A step can go below `best` only if one of its ends is within half the widest step of it.
+    """
     last = len(rows.quaternions) - 1
-    start = np.minimum(blocks[:, None] * BLOCK + np.arange(BLOCK), last).ravel()
-    stop = np.minimum(start + 1, last)
-    value, fraction = step_minima(rows.quaternions[start], rows.quaternions[stop], form)
+    index = np.minimum(blocks[:, None] * BLOCK + np.arange(BLOCK + 1), last)
+    if best < np.inf:
+        sines = rows.quaternions[index] @ form[:2].T
+        reach = np.minimum(0.5 * (best + 0.5 * rows.widest[blocks] + _SLACK), 0.5 * np.pi)
+        near = sines[..., 0] ** 2 + sines[..., 1] ** 2 <= (np.sin(reach) ** 2)[:, None] + 1e-15
+        start = index[:, :-1][near[:, :-1] | near[:, 1:]]
+        if len(start) == 0:
+            return np.inf, 0, 0.0
+    else:
+        start = index[:, :-1].ravel()
+    value, fraction = step_minima(rows.quaternions[start], rows.quaternions[np.minimum(start + 1, last)], form)
     at = int(np.argmin(value))
     return float(value[at]), int(start[at]), float(fraction[at])
 
