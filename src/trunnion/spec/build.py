@@ -1,0 +1,96 @@
+"""From plain (JSON) parts, as notebooks carry them, back to numerical objects.
+
+Plain parts have their references written out, so nothing but the part itself is needed; tables are opened by
+the caller. Everything wrong raises TrunnionError with cause and remedy.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from functools import cache
+from typing import Any
+
+from pydantic import TypeAdapter, ValidationError
+
+from trunnion.attitude.conventions import Convention
+from trunnion.attitude.frames import Frame
+from trunnion.errors import Place, TrunnionError
+from trunnion.spec import parts
+from trunnion.spec.kinds import KINDS
+from trunnion.spec.meaning.context import Context, Steps, raise_fault
+from trunnion.spec.meaning.conventions import build_convention
+from trunnion.spec.meaning.envelopes import OpenTable, build_region
+from trunnion.spec.meaning.frames import build_frame
+from trunnion.units import shown
+
+
+def frame_from_plain(plain: Mapping[str, Any]) -> Frame:
+    """The frame a plain part describes (`{name, axes, …}`)."""
+    frame: Frame = _find("frames", dict(plain), ())
+    return frame
+
+
+def convention_from_plain(plain: Mapping[str, Any]) -> Convention:
+    """The convention a plain part describes, its frames written out."""
+    convention: Convention = _find("conventions", dict(plain), ())
+    return convention
+
+
+def mount_from_plain(plain: Mapping[str, Any]) -> Any:
+    """The `hardware.mounts.Mount` a plain part describes, its host written out."""
+    return _find("mounts", dict(plain), ())
+
+
+def region_from_plain(plain: Mapping[str, Any], *, open_table: OpenTable) -> Any:
+    """The envelope region a plain part describes.
+
+    open_table: takes a table's plain statement (the keys `trunnion.tables.statements` reads; a convention is
+    written out under `convention`) and returns something with `times` (N,) s and `quaternions` (N, 4), scalar
+    first, body to reference.
+    """
+    part = _find("envelopes", dict(plain), ())
+    return build_region(Context(_find, raise_fault), part, open_table)
+
+
+@cache
+def _adapter(section: str) -> TypeAdapter[Any]:
+    kinds: dict[str, Any] = {
+        "frames": parts.Frame,
+        "conventions": parts.Convention,
+        "mounts": parts.Mount,
+        "envelopes": parts.Envelope,
+    }
+    return TypeAdapter(kinds[section])
+
+
+def _find(section: str, reference: Any, steps: Steps) -> Any:
+    """A part that is written out where it is used; envelopes stay parts, all others become numerical
+    objects."""
+    if section == "frame pair" or not isinstance(reference, dict):
+        where = ".".join(str(step) for step in steps)
+        raise TrunnionError(
+            f"'{where or section}' is not written out", remedy="plain parts carry their frames and conventions inside"
+        )
+    try:
+        part = _adapter(section).validate_python(reference)
+    except ValidationError as error:
+        raise _misshapen(error, steps) from error
+    ctx, name = Context(_find, raise_fault, steps), part.name or section
+    if section == "frames":
+        return build_frame(ctx, name, part)
+    if section == "conventions":
+        return build_convention(ctx, name, part)
+    if section == "mounts":
+        from trunnion.spec.meaning.mounts import build_mount
+
+        return build_mount(ctx, name, part)
+    return part
+
+
+def _misshapen(error: ValidationError, steps: Steps) -> TrunnionError:
+    """The first of pydantic's errors, in words. Plain parts come from a checked spec, so one is enough."""
+    entry = error.errors(include_url=False)[0]
+    path = [str(step) for step in (*steps, *entry["loc"]) if not str(step).startswith("\0")]
+    kind, context = KINDS.get(entry["type"]), entry.get("ctx") or {}
+    cause = kind.cause.format_map(context | {"hint": ""}) if kind is not None else entry["msg"].lower()
+    return TrunnionError(shown(cause, 300), remedy="take the part from the spec again", place=Place(key=".".join(path)))

@@ -1,0 +1,60 @@
+"""The parts a spec is made of, as typed models with a plain (JSON) form."""
+
+from trunnion.spec.parts.base import NamedPart, Part
+from trunnion.spec.parts.conventions import Convention
+from trunnion.spec.parts.envelopes import (
+    Box,
+    Campaign,
+    Columns,
+    Cone,
+    Envelope,
+    Phases,
+    Poses,
+    Product,
+    Table,
+)
+from trunnion.spec.parts.frames import Frame
+from trunnion.spec.parts.mounts import AnglesAs, Mount, Tolerance
+from trunnion.spec.parts.records import (
+    Assumption,
+    Calculation,
+    Decision,
+    Deviation,
+    Document,
+    Link,
+    Person,
+    Requirement,
+    Revision,
+    Source,
+)
+from trunnion.spec.parts.rotations import Rotation
+
+__all__ = [
+    "AnglesAs",
+    "Assumption",
+    "Box",
+    "Calculation",
+    "Campaign",
+    "Columns",
+    "Cone",
+    "Convention",
+    "Decision",
+    "Deviation",
+    "Document",
+    "Envelope",
+    "Frame",
+    "Link",
+    "Mount",
+    "NamedPart",
+    "Part",
+    "Person",
+    "Phases",
+    "Poses",
+    "Product",
+    "Requirement",
+    "Revision",
+    "Rotation",
+    "Source",
+    "Table",
+    "Tolerance",
+]
