@@ -68,9 +68,7 @@ def end_words(vector: Vector, frame: Frame) -> str:
     words = axis_words(vector, frame)
     if words in _NAMES_OF_ENDS:
         return f"{_NAMES_OF_ENDS[words]} ({words})"
-    return (
-        f"the {words} axis" if " " not in words else f"the direction {words.removeprefix('the direction ')}"
-    )
+    return f"the {words} axis" if " " not in words else f"the direction {words.removeprefix('the direction ')}"
 
 
 def zero_matrix(convention: Convention) -> NDArray[np.float64]:
@@ -192,9 +190,7 @@ def singular_attitudes(convention: Convention) -> tuple[Singular, Singular]:
     parity = 1 if (axes[1] - axes[0]) % 3 == 1 else -1
     # E[a, c] is parity * sin(middle turn), or cos(middle turn) for a repeated axis (HENDERSON-1977)
     cases = (
-        ((0.0, 1, 1), (np.pi, -1, -1))
-        if repeated
-        else ((np.pi / 2, parity, parity), (-np.pi / 2, -parity, -parity))
+        ((0.0, 1, 1), (np.pi, -1, -1)) if repeated else ((np.pi / 2, parity, parity), (-np.pi / 2, -parity, -parity))
     )
     return tuple(_singular(convention, axes, *case) for case in cases)  # type: ignore[return-value]
 
@@ -312,6 +308,4 @@ def worked_vector(convention: Convention) -> WorkedVector:
         f"At {triple}, {end_words(body_vector, convention.body)} is {vector_text(reference_vector)} "
         f"in {', '.join(convention.reference.axes)}."
     )
-    return WorkedVector(
-        angles, np.asarray(convention.stated_matrix(R_rb)), body_vector, reference_vector, sentence
-    )
+    return WorkedVector(angles, np.asarray(convention.stated_matrix(R_rb)), body_vector, reference_vector, sentence)
