@@ -7,7 +7,7 @@ from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
-from trunnion.tables import columnar, delimited, ulog
+from trunnion.tables import ccsds, columnar, delimited, ulog
 from trunnion.tables.assembly import assemble
 from trunnion.tables.confine import Limits
 from trunnion.tables.files import file_error, locate, read_text_bytes
@@ -22,6 +22,8 @@ BY_SUFFIX = {
     ".parquet": "parquet",
     ".pq": "parquet",
     ".ulg": "ulog",
+    ".aem": "ccsds",
+    ".apm": "ccsds",
 }
 
 
@@ -67,6 +69,7 @@ _READERS: dict[str, Callable[[TableStatement, Path, Limits], AttitudeTable]] = {
     "csv": _read_csv,
     "parquet": columnar.read_parquet_table,
     "ulog": ulog.read_ulog_table,
+    "ccsds": ccsds.read_ccsds_table,
 }
 
 assert set(_READERS) <= set(QUESTIONS)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 import numpy as np
@@ -53,6 +53,8 @@ class AttitudeTable:
     first, Hamilton, unit, of the map R_rb (body components to reference components), signs continuous from row to row.
     `rows` (N,) are the 1-based data rows of the file they came from. `findings` are things to answer (gaps), `dropped`
     what was left out because the statement accepts damage, `notes` what was noticed and handled (sign flips, wraps).
+    `body_rates` (N, 3) rad/s is the angular velocity of the body relative to the reference in body components, where
+    the file holds it.
     """
 
     statement: TableStatement
@@ -64,7 +66,8 @@ class AttitudeTable:
     origin: float = 0.0
     notes: tuple[str, ...] = ()
     findings: tuple[Trouble, ...] = ()
-    dropped: tuple[Trouble, ...] = field(default=())
+    dropped: tuple[Trouble, ...] = ()
+    body_rates: NDArray[np.float64] | None = None
 
     def __len__(self) -> int:
         return len(self.times)
