@@ -72,6 +72,12 @@ register(
         "Public bug reports about angles at and near lock, each with repository and number",
         "text",
     ),
+    Source("RICE-1945", "S. O. Rice, Mathematical Analysis of Random Noise, Bell System Tech. J. 24 (1945)", "memory"),
+    Source(
+        "CRAIG-1991",
+        "J. W. Craig, A new, simple and exact result for calculating the probability of error, IEEE MILCOM 1991",
+        "memory",
+    ),
     Source(
         "OCE-1203",
         "Tilt readings of current profilers: dankelley/oce issues 1203 (2017) and 1800 (2021), aodn/imos-toolbox "
