@@ -76,18 +76,18 @@ def chain_spread(chain: ChainBox, u: Array, v: Array) -> Spread:
             return dot(goal, carried(chain.axes, start + t * way, vector))
 
         at = start + bisect_parameter(miss, len(pairs)) * way
-        return _matrices(chain, at), np.full(len(pairs), np.nan), _places(chain, at)
+        return chain_matrices(chain, at), np.full(len(pairs), np.nan), _places(chain, at)
 
     return connected(
-        closed_form_ends(found.least, _matrices(chain, found.least_at), _places(chain, found.least_at)),
-        closed_form_ends(found.largest, _matrices(chain, found.largest_at), _places(chain, found.largest_at)),
+        closed_form_ends(found.least, chain_matrices(chain, found.least_at), _places(chain, found.least_at)),
+        closed_form_ends(found.largest, chain_matrices(chain, found.largest_at), _places(chain, found.largest_at)),
         crossing,
         Basis.CERTIFIED,
     )
 
 
-def _matrices(chain: ChainBox, angles: Array) -> Array:
-    """R_rb (M, 3, 3) at chain angles (3, M)."""
+def chain_matrices(chain: ChainBox, angles: Array) -> Array:
+    """R_rb (M, 3, 3) at chain angles (3, M) rad."""
     p, q, r = (axis[:, None] for axis in chain.axes)
     columns = []
     for vector in chain.right.T:

@@ -10,6 +10,7 @@ side. Cells are halved until the bracket is as narrow as asked for.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 
@@ -67,7 +68,7 @@ def check_line(region: Region, u: Array, v: Array, *, tolerance: float, most_cel
 
 def check_angle(region: Region, u: Array, v: Array, *, tolerance: float, most_cells: int = 1_000_000) -> SelfCheck:
     """Bracket the least angle between u (3,) and R v (3,) over a region."""
-    again = {"tolerance": tolerance, "most_cells": most_cells}
+    again: dict[str, Any] = {"tolerance": tolerance, "most_cells": most_cells}
     match region:
         case Box():
             return _chain(box_chain(region), u, v, **again)
