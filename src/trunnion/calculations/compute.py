@@ -11,7 +11,7 @@ from pathlib import Path
 from typing import Any
 
 from trunnion import __version__
-from trunnion.calculations import judgement, sheets, store, writes
+from trunnion.calculations import judgement, keys, sheets, store, writes
 from trunnion.calculations.digest import content_digest, sha256
 from trunnion.calculations.judgement import Judgement
 from trunnion.calculations.notebooks import canonical_bytes
@@ -86,7 +86,8 @@ def compute(
         _write_state(folder, done)
         computed = _judged(workbook, folder, done, approved)
         _write_sheets(computed)
-        writes.write_if_changed(folder.path / "results.json", _results_bytes(computed.results))
+        writes.write_if_changed(folder.path / "results.json", canonical_bytes(computed.results))
+        writes.write_if_changed(folder.path / "workbook.yaml", workbook.text.encode("utf-8"))
     return computed
 
 
@@ -180,10 +181,11 @@ def _write_state(folder: RevisionFolder, done: Sequence[Done]) -> None:
                 "sha256": sha256(entry.body),
                 "digest": entry.digest,
                 "state": entry.state,
+                "inputs": {path: file.sha256 for path, file in entry.planned.inputs.items()},
             }
         elif former is not None:
             entries[entry.planned.id] = former
-    folder.write_state({**state, "calculations": entries})
+    folder.write_state({**state, "calculations": entries, "code": dict(keys.surroundings().code)})
 
 
 def _judged(workbook: Any, folder: RevisionFolder, done: tuple[Done, ...], approved: Collection[str]) -> Computed:
@@ -224,7 +226,12 @@ def results_of(computed: Computed) -> dict[str, Any]:
         "calculations": [_plain_calculation(entry) for entry in computed.done],
         "requirements": judgement.plain_requirements(computed.judgements),
         "decisions": [
-            {"id": decision.id, "chosen": decision.chosen, "over": list(decision.over)}
+            {
+                "id": decision.id,
+                "chosen": decision.chosen,
+                "over": list(decision.over),
+                "rests_on": list(decision.rests_on),
+            }
             for decision in computed.workbook.decisions
         ],
     }
@@ -249,11 +256,8 @@ def _plain_calculation(entry: Done) -> dict[str, Any]:
         "results": [result.plain() for result in found.results] if found else [],
         "checks": [dict(check) for check in found.checks] if found else [],
         "findings": [dict(finding) for finding in found.findings] if found else [],
+        "figures": [dict(figure) for figure in found.figures] if found else [],
     }
-
-
-def _results_bytes(results: Mapping[str, Any]) -> bytes:
-    return canonical_bytes(results)
 
 
 def _write_sheets(computed: Computed) -> None:

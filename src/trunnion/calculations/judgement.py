@@ -236,6 +236,7 @@ def plain_requirements(judgements: Sequence[Judgement]) -> list[dict[str, Any]]:
             {
                 "id": asked.requirement,
                 "asks": asked.text,
+                "of": asked.of,
                 "comparison": asked.comparison.value,
                 "limit": asked.limit.text,
                 "basis": asked.basis.value,

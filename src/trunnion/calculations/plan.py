@@ -59,6 +59,17 @@ class _Reader:
     copied_limit: float
     files: dict[str, InputFile] = field(default_factory=dict)
 
+    def part(self, section: str, name: Any) -> dict[str, Any]:
+        """A part of the workbook as plain JSON, everything it refers to written out."""
+        from trunnion.spec.plain import plain_part
+
+        known = self.workbook.names(section)
+        if name not in known:
+            guess = templates.nearest(str(name), dict.fromkeys(known))
+            remedy = f"did you mean '{guess}'?" if guess else f"known: {', '.join(known) or 'none'}"
+            raise TrunnionError(f"there is no '{name}' among the {section}", remedy=remedy)
+        return plain_part(self.workbook, section, str(name))
+
     def file(self, path: str) -> InputFile:
         """Read an input file of the workbook."""
         if path not in self.files:
@@ -148,7 +159,7 @@ def _part(section: str) -> Callable[[_Reader, Any], Any]:
     """A resolver of one name to its part, written out with everything it refers to."""
 
     def resolve(reader: _Reader, name: Any) -> Any:
-        return reader.workbook.plain(section, name)
+        return reader.part(section, name)
 
     return resolve
 
@@ -157,9 +168,11 @@ def _parts(section: str) -> Callable[[_Reader, Any], Any]:
     """A resolver of a list of names, or `all`, to parts by name."""
 
     def resolve(reader: _Reader, names: Any) -> Any:
-        known = getattr(reader.workbook, section)
-        wanted = list(known) if names == ALL else [names] if isinstance(names, str) else list(names)
-        return {name: reader.workbook.plain(section, name) for name in wanted}
+        known = reader.workbook.names(section)
+        wanted = known if names == ALL else [names] if isinstance(names, str) else names
+        if not isinstance(wanted, list):
+            raise TrunnionError(f"a list of {section} is needed, not {names!r}", remedy=f"write {ALL}, or their names")
+        return {str(name): reader.part(section, name) for name in wanted}
 
     return resolve
 
@@ -175,6 +188,7 @@ _RESOLVERS: dict[str, Callable[[_Reader, Any], Any]] = {
     "frames": _parts("frames"),
 }
 _FILE_KEYS = ("table", "file")
+_FILES_KEY = "files"
 
 
 def _resolved(kind: str, value: Any, reader: _Reader, inputs: dict[str, InputFile]) -> Any:
@@ -184,15 +198,20 @@ def _resolved(kind: str, value: Any, reader: _Reader, inputs: dict[str, InputFil
     return _with_inputs(_RESOLVERS.get(kind, _as_written)(reader, value), reader, inputs)
 
 
+def _held(path: str, reader: _Reader, inputs: dict[str, InputFile]) -> str:
+    inputs[path] = reader.file(path)
+    return inputs[path].held
+
+
 def _with_inputs(value: Any, reader: _Reader, inputs: dict[str, InputFile]) -> Any:
     """The plain value with every file path replaced by the name the notebook reads it by."""
     if isinstance(value, dict):
         made = {}
         for key, entry in value.items():
             if key in _FILE_KEYS and isinstance(entry, str):
-                found = reader.file(entry)
-                inputs[entry] = found
-                made[key] = found.held
+                made[key] = _held(entry, reader, inputs)
+            elif key == _FILES_KEY and isinstance(entry, list):
+                made[key] = [_held(path, reader, inputs) for path in entry]
             else:
                 made[key] = _with_inputs(entry, reader, inputs)
         return made

@@ -2,14 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, field
+from collections.abc import Iterable, Iterator, Mapping
+from dataclasses import dataclass
 from typing import Any
 
 from trunnion.attitude.basis import Basis
-from trunnion.calculations.notebooks import items
+from trunnion.calculations.digest import sha256
+from trunnion.calculations.notebooks import items, joined
 from trunnion.calculations.verdicts import Bounds
 from trunnion.errors import StoreError
+from trunnion.sheet.items import MIME
 
 
 @dataclass(frozen=True)
@@ -59,7 +61,7 @@ class Recorded:
     assumptions: tuple[Mapping[str, Any], ...] = ()
     inputs: tuple[Mapping[str, Any], ...] = ()
     statements: tuple[Mapping[str, Any], ...] = ()
-    figures: tuple[str, ...] = field(default=())
+    figures: tuple[Mapping[str, str], ...] = ()
 
     @property
     def failed_checks(self) -> list[str]:
@@ -82,7 +84,7 @@ def recorded(calculation: str, body: Mapping[str, Any]) -> Recorded:
         assumptions=tuple(_without_head(payload) for payload in kinds.get("assumption", [])),
         inputs=tuple(row for payload in kinds.get("inputs", []) for row in payload["rows"]),
         statements=tuple(_without_head(payload) for payload in kinds.get("statement", [])),
-        figures=tuple(str(payload["id"]) for payload in kinds.get("figure", [])),
+        figures=tuple(_figures(body)),
     )
 
 
@@ -112,6 +114,21 @@ def select(results: Iterable[Result], *, quantity: str, of: str, over: str | Non
     return [
         result for result in results if result.quantity == quantity and result.of == of and over in (None, result.over)
     ]
+
+
+def _figures(body: Mapping[str, Any]) -> Iterator[dict[str, str]]:
+    """Figures by id, caption and the SHA-256 of their SVG text."""
+    for cell in body["cells"]:
+        for output in cell.get("outputs", []):
+            data = output.get("data", {})
+            payload = data.get(MIME)
+            if isinstance(payload, dict) and payload.get("kind") == "figure":
+                svg = joined(data.get("image/svg+xml", ""))
+                yield {
+                    "id": str(payload["id"]),
+                    "caption": str(payload.get("caption", "")),
+                    "sha256": sha256(svg.encode("utf-8")),
+                }
 
 
 def _without_head(payload: Mapping[str, Any]) -> dict[str, Any]:

@@ -15,9 +15,7 @@ def input_path(name: str) -> Path:
     A notebook reads only what was copied for it: a name with a folder in it is refused.
     """
     if Path(name).name != name or name in ("", ".", ".."):
-        raise CalculationError(
-            f"'{name}' is not the name of an input file", remedy="inputs are plain names in inputs/"
-        )
+        raise CalculationError(f"'{name}' is not the name of an input file", remedy="inputs are plain names in inputs/")
     for folder in (Path("inputs"), Path("..") / "inputs"):
         path = folder / name
         if path.is_file():
@@ -50,7 +48,10 @@ def mount(plain: Mapping[str, Any]) -> Any:
 
 
 def open_table(plain: Mapping[str, Any]) -> Any:
-    """Read the attitude table an injected parameter describes from the copied input file it names."""
-    from trunnion.tables import read_table
+    """Read the attitude table a plain statement describes, from the copied input file it names."""
+    from trunnion.tables import read_table, statement_from_plain
 
-    return read_table(input_path(plain["table"]), plain)
+    written = plain.get("convention")
+    built = convention(written) if isinstance(written, Mapping) else None
+    stated = {**plain, "convention": built.name} if built is not None else dict(plain)
+    return read_table(statement_from_plain(stated, built), input_path(plain["table"]).parent)
