@@ -27,7 +27,7 @@ def test_measured_errors_stay_below_the_laws_and_not_far_below(
     sequence: Sequence, sense: Sense, precision: Precision, form: ExtractionForm
 ) -> None:
     margins = MARGINS[precision]
-    how = {"sequence": sequence, "sense": sense, "samples": 200}
+    how = {"sequence": sequence, "sense": sense, "samples": 1000}
     found = onboard.measure_extraction(form, precision, margins, **how)
     law = onboard.extraction_law(form, precision, margins)
     for name in ("middle", "first", "last", "combination", "rebuilt", "rebuilt_largest"):
