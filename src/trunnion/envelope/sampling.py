@@ -13,7 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from trunnion.attitude.rotations import about, matrix_from_quaternion
-from trunnion.envelope.chains import ChainBox, chain_matrices, box_chain
+from trunnion.envelope.chains import ChainBox, box_chain, chain_matrices
 from trunnion.envelope.cones import rolled_cone_box
 from trunnion.envelope.regions import (
     Between,
