@@ -118,8 +118,25 @@ def test_ranges_choose_the_triple(
     for n, (low, high) in enumerate(ranges):
         assert found[:, n].min() >= low
         assert found[:, n].max() <= high
-    assert off(ours.matrix(found), R) < 1e-8  # 24 of them on the edges of the ranges, where the end is taken
-    assert off(ours.matrix(found[:2000]), R[:2000]) < 4e-15
+    assert off(ours.matrix(found), R) < 4e-15
+
+
+@pytest.mark.parametrize("policy", list(Policy))
+def test_lock_on_the_other_branch_keeps_the_policy(policy: Policy, convention: Callable[..., Convention]) -> None:
+    """At lock both branches meet, so the zero angle is zero there too; the middle one is an end of its range."""
+    ranges = ((-np.pi, np.pi), (np.pi / 2, 1.5 * np.pi), (-np.pi, np.pi))
+    ours, free = convention(Sequence.ZYX, ranges=ranges), convention(Sequence.ZYX)
+    zero = 0 if policy is Policy.FIRST_ZERO else 2
+    for middle in (np.pi / 2, -np.pi / 2):
+        R = ours.matrix((0.3, middle, -0.7))
+        found, other = ours.angles(R, policy), free.angles(R, policy, other_branch=True)
+        assert found.singular
+        assert found.angles[zero] == other.angles[zero] == 0.0
+        assert found.angles[1] in ranges[1]
+        assert off(ours.matrix(found.angles), R) < 2e-15
+    for distance in (1e-15, 1e-12, 5e-10, 1e-8):  # just inside: no digit is given to the end of the range
+        R = ours.matrix((0.3, np.pi / 2 - distance, -0.7))
+        assert off(ours.matrix(ours.angles(R, policy).angles), R) < 4e-15
 
 
 def test_range_from_zero_holds_zero_and_a_range_about_zero_holds_its_upper_end(

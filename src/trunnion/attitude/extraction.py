@@ -94,12 +94,13 @@ def chain_angles(
         policy = Policy.FIRST_ZERO if policy is Policy.LAST_ZERO else Policy.LAST_ZERO
     angles, margin, singular = _moving_angles(chain, (i, j, k), policy, lock_within)
     if other_branch:
-        angles = second_triple(angles, repeated=sequence.repeated)
+        # At lock both branches meet: the triple with a zero outer angle serves either.
+        angles = np.where(singular[..., None], angles, second_triple(angles, repeated=sequence.repeated))
     return Extraction(angles if forward else angles[..., ::-1], margin, singular)
 
 
 def second_triple(angles: ArrayLike, *, repeated: bool) -> Array:
-    """The other triple (..., 3) of the same attitude, wrapped into (-pi, pi]."""
+    """The other triple (..., 3) of the same attitude, outer and middle angles wrapped into (-pi, pi]."""
     a, b, c = np.moveaxis(np.asarray(angles, dtype=float), -1, 0)
     middle = -b if repeated else np.pi - b
     return wrap(np.stack([_half_turn_on(a), middle, _half_turn_on(c)], axis=-1))

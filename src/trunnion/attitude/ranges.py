@@ -1,6 +1,6 @@
 """Ranges of stated angles: which triples a convention writes for an attitude that has two.
 
-Every attitude has two triples (three at a second look: lock aside). Ranges single one out when either
+Every attitude has two triples (at lock a whole line of them). Ranges single one out when either
 the outer ranges are a full turn and the middle one half a turn between two neighbouring singular values, or
 the middle range is a full turn and exactly one outer range half a turn (the other a full turn).
 Anything narrower leaves attitudes without a triple, anything wider leaves two.
@@ -76,41 +76,40 @@ def place_outer(stated: Array) -> Array:
 
 
 def choose(stated: Array, other: Array, ranges: Ranges, of: str) -> Array:
-    """Of the two triples of an attitude the one inside the ranges, placed into them."""
-    one, one_fits = _into(stated, ranges)
-    two, two_fits = _into(other, ranges)
-    lost = ~(one_fits | two_fits)
-    if np.any(lost):
-        raise AttitudeError(f"{of}: an attitude has no triple inside the stated ranges", remedy="widen the ranges")
-    return np.where(one_fits[..., None], one, two)
+    """Of the two triples (..., 3) of an attitude the one inside the ranges, placed into them.
 
-
-def _into(stated: Array, ranges: Ranges) -> tuple[Array, NDArray[np.bool_]]:
-    placed = np.empty_like(stated)
-    fits = np.ones(stated.shape[:-1], dtype=bool)
-    for n, (low, high) in enumerate(ranges):
-        placed[..., n], inside = _into_one(stated[..., n], low, high, outer=n != 1)
-        fits &= inside
-    return placed, fits
-
-
-def _into_one(angle: Array, low: float, high: float, *, outer: bool) -> tuple[Array, NDArray[np.bool_]]:
-    """Whole turns added so that the angle lies in [low, high]; a full turn is [low, high) from zero on, else
-    (low, high].
-
-    Within the slack of tolerances.RANGE outside an end of a narrower range counts as that end.
+    The first where both fit, which happens at lock and on the edges of the ranges only.
     """
-    whole = _close(high - low, _TURN)
-    if whole and low == 0.0:
-        value = np.where((angle >= low) & (angle < high), angle, angle - _TURN * np.floor((angle - low) / _TURN))
-        return np.where(value >= high, low, value), np.ones(np.shape(angle), dtype=bool)
+    one, one_off = _into(stated, ranges)
+    two, two_off = _into(other, ranges)
+    if np.any(np.minimum(one_off, two_off) > tolerances.RANGE):
+        raise AttitudeError(f"{of}: an attitude has no triple inside the stated ranges", remedy="widen the ranges")
+    return np.where((one_off <= two_off)[..., None], one, two)
+
+
+def _into(stated: Array, ranges: Ranges) -> tuple[Array, Array]:
+    """The triple with whole turns added so that it lies in the ranges, and the distance (...) by which it does not."""
+    placed = np.empty_like(stated)
+    off = np.zeros(stated.shape[:-1])
+    for n, (low, high) in enumerate(ranges):
+        value = _into_one(stated[..., n], low, high)
+        inside = np.clip(value, low, high)
+        off = np.maximum(off, np.abs(value - inside))
+        placed[..., n] = inside
+    return placed, np.where(off <= tolerances.RANGE_ROUNDING, 0.0, off)
+
+
+def _into_one(angle: Array, low: float, high: float) -> Array:
+    """Whole turns added: a full turn is [low, high) from zero on, else (low, high]; half a turn: the nearer end."""
+    if not _close(high - low, _TURN):
+        centre = 0.5 * (low + high)
+        near = np.abs(angle - centre) <= np.pi
+        return np.where(near, angle, centre + wrap(angle - centre))
+    if low == 0.0:
+        value = np.where((angle >= low) & (angle < high), angle, angle - _TURN * np.floor(angle / _TURN))
+        return np.where(value >= high, low, value)
     value = np.where((angle > low) & (angle <= high), angle, angle + _TURN * np.floor((high - angle) / _TURN))
-    if whole:
-        return np.where(value <= low, high, value), np.ones(np.shape(angle), dtype=bool)
-    # A half turn: (low, high] after the shift may sit one turn low when the angle is at the lower end.
-    value = np.where((value < low) & (value + _TURN <= high + tolerances.RANGE), value + _TURN, value)
-    inside = (value >= low - tolerances.RANGE) & (value <= high + tolerances.RANGE)
-    return np.clip(value, low, high, where=inside, out=value.copy()), inside
+    return np.where(value <= low, high, value)
 
 
 def _close(a: float, b: float) -> bool:

@@ -21,6 +21,9 @@ UNIT_QUATERNION_FAST = 9e-16
 #: range. 1e-9 rad is 5.7e-8 deg, below any printed digit.
 RANGE = 1e-9
 
+#: An angle this far outside a range is there by rounding of pi alone (rad).
+RANGE_ROUNDING = 2e-15
+
 #: Default answer of "same attitude?" (rad of rotation): 1e-9 rad is 2e-4 arcsec, above the rounding of any
 #: chain of double precision products here and below every alignment tolerance met in practice.
 SAME_ATTITUDE = 1e-9
