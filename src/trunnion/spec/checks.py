@@ -51,8 +51,15 @@ class _Check:
 
     def _whole_sections(self, spoiled: Spoiled) -> set[tuple[str, str]]:
         """All names of named sections that could not be read at all."""
-        sections = [str(s[0]) for s in spoiled if len(s) == 1 and s[0] in NAMED_SECTIONS]
-        return {(name, key) for name in sections for key in (find(self.tree, [name]).keys or {})}
+        sections = {str(s[0]): str(s[0]) for s in spoiled if len(s) == 1}
+        meant = {key: nearest(key, [*NAMED_SECTIONS]) for key in sections if key not in NAMED_SECTIONS}
+        sections |= {key: name for key, name in meant.items() if name is not None}
+        return {
+            (name, key)
+            for given, name in sections.items()
+            if name in NAMED_SECTIONS
+            for key in find(self.tree, [given]).keys
+        }
 
     # --- places ---
 
@@ -105,7 +112,7 @@ class _Check:
         of, into = ctx.part("frames", link.of, "of"), ctx.part("frames", link.in_, "in")
         given = [key for key in ("constant", "mount", "attitude") if getattr(link, key) is not None]
         if len(given) != 1:
-            ctx.note("link-form", count=len(given) or "no", forms="constant, mount and attitude")
+            ctx.note("link-form", count=len(given) or "none", forms="constant, mount and attitude")
         if of is not None and into is not None and of.name == into.name:
             ctx.note("self-link", "in", what="the link", frame=of.name)
         if link.mount is not None:
@@ -113,6 +120,10 @@ class _Check:
         if link.attitude is not None:
             ctx.part("envelopes", link.attitude, "attitude")
         if link.constant is not None and of is not None and into is not None:
+            for key, frame in (("of", of), ("in", into)):
+                if frame.left_handed:
+                    ctx.note("left-handed-use", key, frame=frame.name)
+                    return
             build_rotation(ctx.at("constant"), link.constant, Ends(of, into, ("of",), ("in",)))
 
     def _circles(self) -> None:
@@ -253,7 +264,7 @@ class _Check:
             for index, name in enumerate(decision.over):
                 self._known((*steps, "over", index), name, candidates, "convention, mount or envelope")
             if decision.chosen not in decision.over:
-                hint = suggestion(decision.chosen, decision.over, "they are")
+                hint = suggestion(decision.chosen, decision.over, "the candidates are")
                 self.note("not-a-candidate", (*steps, "chosen"), name=decision.chosen, hint=hint)
             for index, name in enumerate(decision.rests_on):
                 self._known((*steps, "rests on", index), name, self._ids("calculations"), "calculation")

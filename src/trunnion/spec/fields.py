@@ -22,6 +22,7 @@ def known_keys(loc: tuple[str | int, ...]) -> list[str]:
     keys = dict.fromkeys(key_of(attribute) for model in models for attribute in model.model_fields)
     if loc and loc[0] in NAMED_SECTIONS:
         keys.pop("name", None)
+        keys.pop("files", None)
     return list(keys)
 
 

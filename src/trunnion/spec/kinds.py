@@ -25,6 +25,8 @@ class Kind:
 
 KINDS: dict[str, Kind] = {}
 
+LONGEST_WORDS = 1000  # characters of anything filled into a message
+
 
 def _add(name: str, cause: str, remedy: str) -> None:
     KINDS[name] = Kind(name, cause, remedy)
@@ -33,15 +35,20 @@ def _add(name: str, cause: str, remedy: str) -> None:
 def fault(kind: str, place: Place, **words: object) -> Fault:
     """A fault of a registered kind at a place, its templates filled with `words`."""
     chosen = KINDS[kind]
-    safe = {key: word if isinstance(word, int) else shown(str(word), 300) for key, word in words.items()}
+    safe = {key: word if isinstance(word, int) else shown(str(word), LONGEST_WORDS) for key, word in words.items()}
     return Fault(chosen.cause.format_map(safe), chosen.remedy.format_map(safe), place)
 
 
 def nearest(word: str, known: Iterable[str]) -> str | None:
     """The known word someone probably meant, or None when nothing is near."""
-    names = {name.casefold(): name for name in known}
-    near = difflib.get_close_matches(word.casefold(), list(names), n=1, cutoff=0.6)
-    return names[near[0]] if near else None
+    best, found = 0.6, None
+    for name in known:
+        one, other = word.casefold(), name.casefold()
+        likeness = difflib.SequenceMatcher(None, one, other).ratio()
+        likeness += 0.1 * (sorted(one) == sorted(other))  # letters exchanged
+        if likeness > best:
+            best, found = likeness, name
+    return found
 
 
 def suggestion(word: str, known: Iterable[str], what: str = "known") -> str:
@@ -61,7 +68,7 @@ def suggestion(word: str, known: Iterable[str], what: str = "known") -> str:
 
 _add("file-missing", "there is no {what}", "give the path of a workbook folder or of its workbook.yaml")
 _add("file-unreadable", "the file cannot be read: {reason}", "check its permissions and that it is a plain file")
-_add("file-too-large", "the file has {size} bytes, and {limit} are the limit", "move data into tables beside it")
+_add("file-too-large", "the file has more than {limit} bytes", "move data into tables beside it")
 _add("not-utf8", "byte {offset} (hex {byte}) is not UTF-8", "save the file as UTF-8 text")
 _add("not-printable", "the character U+{code:04X} may not stand in the file", "delete it")
 _add("not-yaml", "this is not YAML: {problem}", "check indents, colons, quotes and brackets at and above this line")
@@ -118,6 +125,7 @@ _add("control-character", "the text holds the control character U+{code:04X}", "
 # --------------------------------------------------------------------------------------------------------
 
 _add("unknown-key", "'{key}' is not a key here", "{hint}")
+_add("inner-files", "'files' is found by the campaign's pattern, not listed", "delete it; narrow the pattern instead")
 _add(
     "inner-name",
     "'name' is given inside a part that already has its name as its key",
@@ -125,12 +133,13 @@ _add(
 )
 _add("missing-key", "'{name}' is missing", "add it, as in `{example}`")
 _add("wrong-type", "{what} stands here, and {expected} is expected", "write it as in `{example}`")
+_add("not-a-list", "{what} stands here, and a list of {expected} is expected", "write [{dots}]: {meaning}")
 _add("not-one-of", "'{value}' is not one of the words allowed here", "{hint}")
-_add("no-form", "nothing says what kind of {thing} this is", "give one of the keys {forms}")
+_add("no-form", "nothing says what kind of {thing} this is", "{hint}")
 _add(
     "two-forms",
-    "{given} are given together, and a {thing} is one of them",
-    "keep one, and make the other a {thing} of its own",
+    "{given} are given together, and one {thing} is one of them",
+    "keep one, and give the other a {thing} of its own",
 )
 _add("wrong-count", "{count} values are given, and {expected} are needed", "list exactly {expected}: {meaning}")
 _add(
@@ -168,7 +177,7 @@ _add("no-unit", "{number} has no unit", "write it with {units}, as in {example}"
 _add("unknown-unit", "'{symbol}' is not a known unit", "{hint}")
 _add("wrong-kind", "{text} is {found}, and {wanted} is meant here", "give it in {units}")
 _add("not-a-quantity", "'{text}' is not a quantity", "write a number and a unit, as in {example}")
-_add("negative", "{text} is negative, and {what} is not", "write {example}")
+_add("negative", "{text} is negative, and {what} is not", "write it without the minus sign, as in {example}")
 _add("not-a-range", "'{text}' is not a range", "write `[lowest, highest]` with units, one value, or `any`")
 _add("reversed-range", "the range runs from {lo} down to {hi}", "write [{hi}, {lo}]{otherwise}")
 _add("too-large", "{what} of {text} is more than {limit}", "give at most {limit}")
@@ -221,7 +230,9 @@ _add(
     "frame '{partner}' cannot be the partner: {why}",
     "name a right-handed frame that has the same axes or their opposites",
 )
-_add("left-handed-use", "frame '{frame}' is left-handed, and angles are not taken in it", "use its partner '{partner}'")
+_add(
+    "left-handed-use", "frame '{frame}' is left-handed, and angles are not taken in it", "use its right-handed partner"
+)
 _add(
     "no-north",
     "a frame with the axis '{axis}' must say which north it means",
@@ -234,7 +245,7 @@ _add(
     "frame '{frame}' is not linked to any other",
     "use it in a convention, mount, table or link, or delete it",
 )
-_add("link-form", "the link has {count} of {forms}", "give one of them")
+_add("link-form", "the link states {count} of {forms}", "give one of them")
 _add("self-link", "{what} joins frame '{frame}' to itself", "name two different frames")
 
 # --- conventions
@@ -286,7 +297,7 @@ _add(
 )
 _add(
     "incomplete-convention",
-    "the convention does not say its {what}",
+    "the convention does not say {what}",
     "add `{example}`, or `as: STANDARD` ({standards}) to take it from a standard",
 )
 _add(
@@ -323,6 +334,7 @@ _add("cone-size", "the cone needs its size once", "give `half angle` or `between
 _add("table-form", "the columns give {count} kinds of attitude", "give one of `quaternion`, `matrix` and `angles`")
 _add("table-needs", "{because}, and '{name}' is not said", "add `{example}`")
 _add("table-excess", "'{name}' is said, and {because}", "delete it")
+_add("refused", "{why}", "{remedy}")
 _add("empty-list", "no {what} are listed", "list at least one")
 _add("roll-zero", "roll zero '{word}' lies along the cone's own axis", "name another body axis")
 _add("repeated-column", "the column '{name}' is named twice", "each number has its own column")
@@ -342,7 +354,6 @@ _add(
     "add `accelerometer: specific force` (an axis that points up reads +1 g) or `gravity` "
     "(it reads -1 g); or list `instruments` without it",
 )
-_add("mount-refused", "{why}", "{remedy}")
 _add(
     "left-handed-stand-in",
     "[{words}] is left-handed, so x, y, z cannot stand in for them",

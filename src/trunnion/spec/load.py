@@ -13,7 +13,7 @@ from trunnion.spec.checks import cross_check
 from trunnion.spec.kinds import fault
 from trunnion.spec.model import EDITION, NAMED_SECTIONS, WorkbookFile
 from trunnion.spec.paths import apply_overrides
-from trunnion.spec.shape import key_place, shape_faults, spoiled_entries
+from trunnion.spec.shape import key_place, place_of, shape_faults, spoiled_entries
 from trunnion.spec.tree import LARGEST_FILE, Node, read_tree
 from trunnion.spec.workbook import Workbook
 
@@ -44,6 +44,7 @@ def load_workbook(path: Path | str, overrides: Iterable[tuple[str, str]] = (), *
     model, spoiled = _model(tree, shown, faults)
     if model is not None:
         root = file.parent if check_files else None
+        spoiled |= _entries_with_unread_values(tree)
         faults.extend(cross_check(model, tree, shown, root, spoiled))
     if faults or model is None:
         raise SpecError(_in_order(faults))
@@ -92,9 +93,19 @@ def _model(tree: Node, file: str, faults: list[Fault]) -> tuple[WorkbookFile | N
             spoiled |= spoiled_entries(error)
             continue
         if model.workbook != EDITION and ("workbook",) not in spoiled:
-            faults.append(fault("wrong-edition", key_place(tree, "workbook", [], tree, file), value=model.workbook))
+            place = place_of(tree.value["workbook"], ["workbook"], tree, file)
+            faults.append(fault("wrong-edition", place, value=model.workbook))
         return model, spoiled
     return None, spoiled
+
+
+def _entries_with_unread_values(tree: Node) -> set[tuple[str | int, ...]]:
+    """Entries that hold a value refused while reading: what else is said of them would be an echo."""
+    found: set[tuple[str | int, ...]] = set()
+    for section, node in tree.value.items():
+        inner = node.value.items() if node.is_mapping else enumerate(node.value) if node.is_list else ()
+        found |= {(section, step) for step, entry in inner if entry.holds_faulty()}
+    return found
 
 
 def _refuse_inner_names(tree: Node, plain: dict[str, Any], file: str, faults: list[Fault]) -> None:
@@ -106,6 +117,10 @@ def _refuse_inner_names(tree: Node, plain: dict[str, Any], file: str, faults: li
                 place = key_place(entry, "name", [section, name], tree, file)
                 faults.append(fault("inner-name", place, section=section))
                 del plain[section][name]["name"]
+            if entry.is_mapping and "campaign" in entry.value and "files" in entry.value:
+                place = key_place(entry, "files", [section, name], tree, file)
+                faults.append(fault("inner-files", place))
+                del plain[section][name]["files"]
 
 
 def _without(plain: dict[str, Any], spoiled: set[tuple[str | int, ...]]) -> dict[str, Any]:

@@ -82,6 +82,7 @@ def json_schema() -> dict[str, Any]:
 
 def _drop_inner_names(schema: dict[str, Any]) -> None:
     """The `name` of a named part is its key in the file, so the file may not give it inside."""
+    schema.get("$defs", {}).get("Campaign", {}).get("properties", {}).pop("files", None)
     for definition in schema.get("$defs", {}).values():
         name = definition.get("properties", {}).get("name")
         if name is not None and "name" not in definition.get("required", []):

@@ -63,13 +63,11 @@ def apply_overrides(root: Node, overrides: Iterable[tuple[str, str]], faults: li
         origin = f"--set '{path}={text}'"
         steps, rest = _follow(root, path)
         node = find(root, steps)
-        if rest and not node.is_mapping:
+        new_key = rest and node.is_mapping and steps and "." not in rest
+        if rest and not new_key:
             known = [name for name, _ in _children(node)]
-            faults.append(fault("no-such-path", Place(origin), path=path, hint=suggestion(rest, known, "here are")))
-            continue
-        if rest and ("." in rest or not steps):
-            known = [name for name, _ in _children(node)]
-            faults.append(fault("no-such-path", Place(origin), path=path, hint=suggestion(rest, known, "here are")))
+            hint = suggestion(rest.partition(".")[0], known, "here are")
+            faults.append(fault("no-such-path", Place(origin), path=path, hint=hint))
             continue
         value = read_text(text, origin, faults)
         if value is not None:

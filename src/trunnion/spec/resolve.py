@@ -6,6 +6,7 @@ from collections.abc import Callable
 from typing import Any
 
 from trunnion.attitude.frames import Frame
+from trunnion.errors import TrunnionError
 from trunnion.spec.kinds import suggestion
 from trunnion.spec.meaning.context import Context, Note, Steps
 from trunnion.spec.meaning.conventions import build_convention
@@ -58,17 +59,25 @@ class Resolver:
                 return None  # a circle; noted by its own check
             self._building.append(this)
             try:
-                part = getattr(self.model, section)[name]
-                self._built[this] = _BUILDERS[section](self.context(section, name), name, part)
+                part = getattr(self.model, section).get(name)
+                self._built[this] = None if part is None else self._made(section, name, part)
             finally:
                 self._building.pop()
         return self._built[this]
+
+    def _made(self, section: str, name: str, part: Any) -> Any:
+        """The object a builder makes; what the numerical rooms refuse is noted at the part."""
+        try:
+            return _BUILDERS[section](self.context(section, name), name, part)
+        except TrunnionError as err:
+            self.note("refused", (section, name), why=err.fault.cause, remedy=err.fault.remedy or "correct it")
+            return None
 
     def _pair(self, wanted: tuple[Any, ...], steps: Steps) -> tuple[Frame, Frame] | None:
         *stated, word = wanted
         names = self.pair_names(*stated)
         if names is None:
-            if not any(section == "conventions" for section, _ in self.spoiled):
+            if all(self.build("conventions", name) for name in self.names("conventions")):
                 self.note("frames-open", steps, word=word)
             return None
         reference, body = (self.build("frames", name) for name in names)
@@ -85,7 +94,9 @@ class Resolver:
         pairs = {
             (convention.reference, convention.body)
             for convention in self.model.conventions.values()
-            if isinstance(convention.reference, str) and isinstance(convention.body, str)
+            if isinstance(convention.reference, str)
+            and isinstance(convention.body, str)
+            and convention.reference != convention.body
         }
         fits = [
             pair

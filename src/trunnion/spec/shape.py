@@ -9,7 +9,7 @@ from pydantic import ValidationError
 
 from trunnion.errors import Fault, Place
 from trunnion.spec.fields import known_keys
-from trunnion.spec.kinds import KINDS, fault, suggestion
+from trunnion.spec.kinds import KINDS, fault, nearest, suggestion
 from trunnion.spec.parts.envelopes import ENVELOPE_FORMS
 from trunnion.spec.parts.mounts import MOUNT_FORMS
 from trunnion.spec.tree import Node
@@ -18,10 +18,10 @@ from trunnion.spec.values import what_it_is
 #: What a value of a built-in type is called, with an example, by pydantic's error type.
 _EXPECTED = {
     "list_type": ("a list", "[one, two]"),
-    "dict_type": ("keys with values", "{key: value}"),
-    "model_type": ("keys with values", "{key: value}"),
-    "model_attributes_type": ("keys with values", "{key: value}"),
-    "dataclass_type": ("keys with values", "{key: value}"),
+    "dict_type": ("a mapping of keys to values", "{key: value}"),
+    "model_type": ("a mapping of keys to values", "{key: value}"),
+    "model_attributes_type": ("a mapping of keys to values", "{key: value}"),
+    "dataclass_type": ("a mapping of keys to values", "{key: value}"),
 }
 
 #: An example for each key that may be missing; anything else shows `key: …`.
@@ -45,12 +45,14 @@ _EXAMPLES = {
 
 def shape_faults(error: ValidationError, root: Node, file: str) -> list[Fault]:
     """A fault for each of pydantic's errors that is not the echo of an earlier one."""
-    found = []
-    for entry in error.errors(include_url=False):
-        made = _fault(entry, root, file)
-        if made is not None:
-            found.append(made)
-    return found
+    entries = error.errors(include_url=False)
+    misspelt = {
+        (*entry["loc"][:-1], nearest(str(entry["loc"][-1]), known_keys(entry["loc"][:-1])))
+        for entry in entries
+        if entry["type"] == "extra_forbidden"
+    }
+    told = [entry for entry in entries if entry["type"] != "missing" or entry["loc"] not in misspelt]
+    return [made for entry in told if (made := _fault(entry, root, file)) is not None]
 
 
 def spoiled_entries(error: ValidationError) -> set[tuple[str | int, ...]]:
@@ -108,10 +110,10 @@ def words_of(root: Node, steps: list[str | int]) -> str:
 def _fault(entry: Any, root: Node, file: str) -> Fault | None:
     kind, loc, context = entry["type"], entry["loc"], dict(entry.get("ctx") or {})
     node, taken, lost = walk(root, loc)
-    if node.faulty and kind != "missing":
-        return None
     if kind == "extra_forbidden":
         return _unknown_key(loc, root, file)
+    if kind != "missing" and node.holds_faulty():
+        return None
     if kind == "missing":
         return _missing_key(node, str(loc[-1]), taken, root, file)
     if lost and lost[-1] == "[key]":
@@ -136,7 +138,8 @@ def _unknown_key(entry_loc: tuple[str | int, ...], root: Node, file: str) -> Fau
     owner, taken, _ = walk(root, entry_loc[:-1])
     key = str(entry_loc[-1])
     place = key_place(owner, key, taken, root, file)
-    hint = suggestion(key, known_keys(entry_loc[:-1]), "the keys here are")
+    free = [known for known in known_keys(entry_loc[:-1]) if known not in owner.keys]
+    hint = suggestion(key, free, "the keys here are")
     return fault("unknown-key", place, key=key, hint=hint)
 
 
@@ -154,12 +157,14 @@ def _missing_key(node: Node, key: str, taken: list[str | int], root: Node, file:
 
 def _form(node: Node, taken: list[str | int], place: Place) -> Fault | None:
     if not node.is_mapping:
-        words = {"what": what_it_is(node.plain()), "expected": "keys with values", "example": "{key: value}"}
+        words = {"what": what_it_is(node.plain()), "expected": "a mapping of keys to values", "example": "{key: value}"}
         return fault("wrong-type", place, **words)
     thing, forms = _forms_at(taken)
     given = [form for form in forms if form in node.value]
     if len(given) < 2:
-        return fault("no-form", place, thing=thing, forms=", ".join(forms))
+        meant = [(key, near) for key in node.value if (near := nearest(key, forms)) is not None]
+        hint = f"write `{meant[0][1]}` for `{meant[0][0]}`" if meant else f"give one of the keys {', '.join(forms)}"
+        return fault("no-form", place, thing=thing, hint=hint)
     return fault("two-forms", place, given=" and ".join(f"`{form}`" for form in given), thing=thing)
 
 

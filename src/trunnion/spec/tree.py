@@ -57,6 +57,11 @@ class Node:
             return self.value[step]
         return None
 
+    def holds_faulty(self) -> bool:
+        """Whether this value, or one inside it, could not be read (that is noted already)."""
+        inner = self.value.values() if isinstance(self.value, dict) else self.value if self.is_list else ()
+        return self.faulty or any(node.holds_faulty() for node in inner)
+
     def plain(self) -> Any:
         """The bare values, without places. A faulty value becomes None."""
         if isinstance(self.value, dict):
@@ -94,8 +99,7 @@ def read_text(text: str, file: str, faults: list[Fault]) -> Node | None:
 
 def _decode(data: bytes, file: str, faults: list[Fault]) -> str:
     if len(data) > LARGEST_FILE:
-        words = {"size": f"{len(data):,}", "limit": f"{LARGEST_FILE:,}"}
-        faults.append(fault("file-too-large", Place(file), **words))
+        faults.append(fault("file-too-large", Place(file), limit=f"{LARGEST_FILE:,}"))
         raise _Stop
     try:
         text = data.decode("utf-8-sig")

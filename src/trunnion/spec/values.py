@@ -55,7 +55,7 @@ def _text(value: Any) -> str:
     if isinstance(value, WholeNumber | Number):
         return value.raw
     if not isinstance(value, str):
-        raise wrong_type(value, "text", "some words, in quotes if need be")
+        raise wrong_type(value, "text", '"some words"')
     return value
 
 
@@ -282,7 +282,8 @@ def counted(values: Any, count: int, meaning: str) -> list[Any]:
     """A list of exactly `count` values, or a refusal that says what they mean."""
     numerals = {2: "two", 3: "three", 4: "four", 9: "nine"}
     if not isinstance(values, list):
-        raise wrong_type(values, f"a list of {numerals[count]}", f"[{meaning}]")
+        dots = ", ".join("…" for _ in range(count))
+        raise refuse("not-a-list", what=what_it_is(values), expected=numerals[count], dots=dots, meaning=meaning)
     if len(values) != count:
         raise refuse("wrong-count", count=len(values), expected=numerals[count], meaning=meaning)
     return values

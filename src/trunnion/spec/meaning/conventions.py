@@ -84,6 +84,10 @@ def _frames(ctx: Context, part: parts.Convention) -> tuple[numeric.Frame, numeri
     body = ctx.part("frames", part.body, "body")
     if reference is None or body is None:
         return None
+    for key, frame in (("reference", reference), ("body", body)):
+        if frame.left_handed:
+            ctx.note("left-handed-use", key, frame=frame.name)
+            return None
     if reference.name == body.name:
         ctx.note("self-link", "body", what="the convention", frame=body.name)
         return None
@@ -117,16 +121,16 @@ def _standard_axes(ctx: Context, standard: Standard, reference: numeric.Frame, b
 def _turns(ctx: Context, part: parts.Convention, standard: Standard | None) -> Turns | None:
     chosen: dict[str, Any] = {}
     examples = {
-        "sequence": "sequence: 3-2-1",
-        "about": "about: moving axes",
-        "angles": "angles: [heading, elevation, bank]",
+        "sequence": ("its sequence", "sequence: 3-2-1"),
+        "about": ("whether its axes move or stay", "about: moving axes"),
+        "angles": ("the names of its angles", "angles: [heading, elevation, bank]"),
     }
-    for key, example in examples.items():
+    for key, (what, example) in examples.items():
         given = getattr(part, key)
         fixed = getattr(standard, key) if standard is not None else None
         if given is None and fixed is None:
             if part.as_ is None:
-                ctx.note("incomplete-convention", what=key, example=example, standards=", ".join(STANDARDS))
+                ctx.note("incomplete-convention", what=what, example=example, standards=", ".join(STANDARDS))
             return None
         chosen[key] = given if given is not None else fixed
     sequence = build_sequence(ctx, chosen["sequence"], "sequence")
@@ -330,7 +334,7 @@ def _with_ranges(
             return None
         ranges.append(ends)
     try:
-        return replace(base, ranges=tuple(ranges))
+        return replace(base, ranges=tuple(ranges))  # type: ignore[arg-type]
     except AttitudeError as err:
         cause = err.fault.cause.partition(": ")[2] or err.fault.cause
         ctx.note("range-impossible", "ranges", why=cause, remedy=err.fault.remedy)

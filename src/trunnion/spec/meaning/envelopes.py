@@ -114,10 +114,24 @@ def frame_pair(ctx: Context, part: Any, word: str) -> tuple[numeric.Frame, numer
     if part.reference is not None and part.body is not None:
         reference = ctx.part("frames", part.reference, "reference")
         body = ctx.part("frames", part.body, "body")
-        return None if reference is None or body is None else (reference, body)
+        return _right_handed(ctx, reference, body)
     pair: tuple[numeric.Frame, numeric.Frame] | None
     pair = ctx.part("frame pair", (part.reference, part.body, None, word))
     return pair
+
+
+def _right_handed(ctx: Context, reference: Any, body: Any) -> tuple[numeric.Frame, numeric.Frame] | None:
+    """The pair when both frames are there, differ and are right-handed; what keeps it from being is noted."""
+    for key, frame in (("reference", reference), ("body", body)):
+        if frame is None:
+            return None
+        if frame.left_handed:
+            ctx.note("left-handed-use", key, frame=frame.name)
+            return None
+    if reference.name == body.name:
+        ctx.note("self-link", "body", what="the envelope", frame=body.name)
+        return None
+    return reference, body
 
 
 def cone_numbers(ctx: Context, part: Cone) -> dict[str, Any] | None:
@@ -271,7 +285,7 @@ def table_frames(ctx: Context, part: Any) -> tuple[numeric.Frame, numeric.Frame]
     if part.reference is not None and part.body is not None:
         reference = ctx.part("frames", part.reference, "reference")
         body = ctx.part("frames", part.body, "body")
-        return None if reference is None or body is None else (reference, body)
+        return _right_handed(ctx, reference, body)
     pair: tuple[numeric.Frame, numeric.Frame] | None
     pair = ctx.part("frame pair", (part.reference, part.body, part.maps, part.maps), "maps")
     return pair

@@ -34,10 +34,11 @@ SYNONYMS: dict[str, tuple[str, ...]] = {
 
 
 def build_frame(ctx: Context, name: str, part: Frame) -> numeric.Frame | None:
-    """The frame, or None when something about it is noted."""
+    """The frame, or None when it cannot be one; what it leaves unsaid is noted and does not keep it from being one."""
     axes: tuple[str, str, str] = tuple(part.axes)
     left = part.handed == "left"
-    if not _axes_stand(ctx, axes, left) or not _level_said(ctx, part, axes):
+    _check_level(ctx, part, axes)
+    if not _axes_stand(ctx, axes, left):
         return None
     if left and part.paired_with is None:
         ctx.note("no-partner", "handed")
@@ -70,20 +71,20 @@ def _same_line(one: str, two: str) -> bool:
     return any(pair == {one, two} or pair == {one, numeric.opposite(two)} for pair in pairs)
 
 
-def _level_said(ctx: Context, part: Frame, axes: tuple[str, str, str]) -> bool:
+def _check_level(ctx: Context, part: Frame, axes: tuple[str, str, str]) -> None:
+    """A level frame says which north it means and whether it travels."""
     level = next((index for index, axis in enumerate(axes) if axis in LEVEL_WORDS), None)
     if level is None:
-        return True
+        return
     if part.north is None:
         ctx.note("no-north", "axes", level, axis=axes[level])
     if part.carried is None:
         ctx.note("not-carried", "axes")
-    return part.north is not None and part.carried is not None
 
 
 def check_partner(ctx: Context, part: Frame, partner: Frame | None) -> None:
     """A left-handed frame and its right-handed partner name the same lines."""
-    if part.paired_with is None or partner is None:
+    if part.paired_with is None or partner is None or part.handed != "left":
         return
     why = None
     if partner.handed == "left":

@@ -38,7 +38,10 @@ def build_mount(ctx: Context, name: str, part: Any) -> hardware.Mount | None:
     if host is None or sensor is None:
         return None
     if host.left_handed:
-        ctx.note("left-handed-use", "host", frame=host.name, partner="a right-handed frame")
+        ctx.note("left-handed-use", "host", frame=host.name)
+        return None
+    if sensor.left_handed:
+        ctx.note("left-handed-use", "frame", frame=sensor.name)
         return None
     details = _details(ctx, part, sensor)
     if details is None:
@@ -51,7 +54,7 @@ def build_mount(ctx: Context, name: str, part: Any) -> hardware.Mount | None:
     try:
         return _BUILDERS[type(part)](ctx, part, host, sensor, details)
     except HardwareError as err:
-        ctx.note("mount-refused", form_of(part), why=err.fault.cause, remedy=err.fault.remedy or "correct it")
+        ctx.note("refused", form_of(part), why=err.fault.cause, remedy=err.fault.remedy or "correct it")
         return None
 
 
@@ -93,11 +96,16 @@ def _details(ctx: Context, part: Any, sensor: numeric.Frame) -> dict[str, Any] |
     if "clinometer" in instruments and part.clinometer is None:
         ctx.note("clinometer-silent", "instruments")
         good = False
+    try:
+        tolerance = _tolerance(part)
+    except HardwareError as err:
+        ctx.note("refused", "tolerance", why=err.fault.cause, remedy=err.fault.remedy)
+        return None
     if not good:
         return None
     return {
         "boresight": part.boresight,
-        "tolerance": _tolerance(part),
+        "tolerance": tolerance,
         "instruments": tuple(hardware.Instrument(word) for word in instruments),
         "accelerometer": None if part.accelerometer is None else hardware.Reports(part.accelerometer),
         "clinometer": None if part.clinometer is None else hardware.TiltType[part.clinometer.upper()],

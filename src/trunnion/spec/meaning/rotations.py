@@ -74,7 +74,13 @@ def from_axes(ctx: Context, axes: dict[str, str], ends: Ends) -> Array | None:
     if len(columns) > 2 and columns[2][1] @ R_qp @ columns[2][0] < 0.5:
         third = list(axes)[2]
         lies = ends.q.nearest_word(R_qp @ columns[2][0])[0]
-        ctx.note("mirror", third, what="the axis map", det="-1", hint=f"with the first two, {third} lies along {lies}")
+        ctx.note(
+            "mirror",
+            third,
+            what="the axis map",
+            det="-1",
+            hint=f"write `{third}: {lies}`, which follows from the first two",
+        )
         return None
     return R_qp
 
