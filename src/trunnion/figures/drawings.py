@@ -167,7 +167,7 @@ def sphere_drawing(
     if worst is not None:
         point = view @ worst
         axes.plot(point[0], point[1], label="least margin", **WORST)
-    axes.legend(loc="center left", bbox_to_anchor=(1.0, 0.5))
+    axes.legend(loc="upper center", bbox_to_anchor=(0.5, 0.02), ncols=3, markerscale=1.2)
     _frame_panel(axes, "", size=1.15)
     return to_svg(figure)
 

@@ -19,6 +19,7 @@ from trunnion.sheet import display, parameters, region_checks
 from trunnion.sheet.describe import angles_text, convention_rows, region_rows
 from trunnion.sheet.maps import angle_map, body_track, histogram
 from trunnion.sheet.rounding import interval_text
+from trunnion.units import parse_quantity
 
 Array = NDArray[np.float64]
 
@@ -173,7 +174,7 @@ class EnvelopeSweep:
             for over, plain in self._plain["envelopes"].items():
                 rate = plain.get("max body rate")
                 if rate is not None:
-                    rows.append(self._rate_row(name, over, parameters.rate(rate)))
+                    rows.append(self._rate_row(name, over, parse_quantity(rate, kind="angular rate").value))
         if not rows:
             display.statement("rates", "No region states a body rate, so no angle rates are worked out.")
             return
