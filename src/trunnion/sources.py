@@ -72,6 +72,7 @@ register(
         "Public bug reports about angles at and near lock, each with repository and number",
         "text",
     ),
+    Source("REP-103", "REP-103, Standard Units of Measure and Coordinate Conventions, ROS, 2010 and later", "text"),
     Source("RICE-1945", "S. O. Rice, Mathematical Analysis of Random Noise, Bell System Tech. J. 24 (1945)", "memory"),
     Source(
         "CRAIG-1991",

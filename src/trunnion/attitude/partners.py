@@ -41,8 +41,9 @@ def axis_map(target: Frame, source: Frame) -> Array:
 def matrix_through_partners(M: ArrayLike, reference_map: ArrayLike, body_map: ArrayLike) -> Array:
     """R (..., 3, 3) between the right-handed partners, of M (..., 3, 3) between the left-handed frames.
 
-    M takes body to reference components in the left-handed frames; the maps take components of a frame to its partner's.
-    Raises AttitudeError when the result is no rotation: a matrix between a left- and a right-handed frame was given, say.
+    M takes body to reference components in the left-handed frames; the maps take components of a frame to its
+    partner's. Raises AttitudeError when the result is no rotation, as for a matrix between a left- and a right-handed
+    frame.
     """
     R = np.asarray(reference_map) @ np.asarray(M, dtype=float) @ np.asarray(body_map).T
     return require_rotation(R, "matrix carried over to the right-handed partners")

@@ -9,6 +9,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 import spiceypy
+from spiceypy.utils.exceptions import SpiceBADAXISNUMBERS, SpiceNOTAROTATION
 
 from trunnion.attitude.extraction import Policy, chain_angles, chain_matrix
 from trunnion.attitude.rates import RateAxes, quaternion_rate
@@ -22,6 +23,7 @@ from trunnion.attitude.rotations import (
     scalar_first,
 )
 from trunnion.attitude.sequences import Sense, Sequence
+from trunnion.errors import AttitudeError
 
 HERE = Path(__file__).parent
 TWO_ROUNDINGS = 1e-15
@@ -122,7 +124,7 @@ def test_q2m_header_quarter_turn() -> None:
 def test_q2m_header_quaternion_not_of_unit_length_is_refused_and_its_direction_agrees() -> None:
     case = CALLS["q2m((0.5,0.4,0.3,0.1))"]
     q = np.array(case["arguments"][0])
-    with pytest.raises(Exception, match="has length 0\\.714142843"):
+    with pytest.raises(AttitudeError, match="has length 0\\.714142843"):
         matrix_from_quaternion(q)
     R = matrix_from_quaternion(q / np.linalg.norm(q))
     np.testing.assert_allclose(R, case["value"], rtol=0, atol=TWO_ROUNDINGS)
@@ -180,3 +182,16 @@ def test_one_matrix_three_quaternions() -> None:
     np.testing.assert_allclose(quaternion_from_matrix(C.T), ccsds, rtol=0, atol=TWO_ROUNDINGS)
     scipy_order = scalar_first(case["scipy_from_matrix_xyzw"])
     np.testing.assert_allclose(quaternion_from_matrix(C), scipy_order, rtol=0, atol=TWO_ROUNDINGS)
+
+
+def test_what_the_toolkit_refuses_is_refused_here() -> None:
+    """m2eul header: SPICE(BADAXISNUMBERS) for a middle axis equal to a neighbour, SPICE(NOTAROTATION)."""
+    mirrored = np.diag([1.0, 1.0, -1.0])
+    with pytest.raises(SpiceBADAXISNUMBERS):
+        spiceypy.m2eul(np.eye(3), 3, 3, 1)
+    with pytest.raises(AttitudeError, match="twice in a row"):
+        Sequence.from_text("3-3-1")
+    with pytest.raises(SpiceNOTAROTATION):
+        spiceypy.m2q(mirrored)
+    with pytest.raises(AttitudeError, match="is a reflection"):
+        quaternion_from_matrix(mirrored)
