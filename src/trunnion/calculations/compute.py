@@ -12,6 +12,7 @@ from typing import Any
 
 from trunnion import __version__
 from trunnion.calculations import judgement, keys, sheets, store, writes
+from trunnion.calculations.baselines import issued_baseline
 from trunnion.calculations.digest import content_digest, sha256
 from trunnion.calculations.judgement import Judgement
 from trunnion.calculations.notebooks import canonical_bytes
@@ -19,7 +20,7 @@ from trunnion.calculations.plan import Planned, plan
 from trunnion.calculations.results import Recorded, recorded
 from trunnion.calculations.run import Job, Outcome, Progress, run
 from trunnion.calculations.store import RevisionFolder
-from trunnion.errors import Fault, SpecError, TrunnionError
+from trunnion.errors import Fault, SpecError, StoreError, TrunnionError
 
 COMPUTED, FAILED, MISSING = "computed", "failed", "missing"
 
@@ -67,17 +68,23 @@ def compute(
     workers: int | None = None,
     allow_local: bool = False,
     approved: Collection[str] = (),
+    scratch: str | None = None,
     tell: Callable[[Progress], None] | None = None,
+    then: Callable[[Computed], None] | None = None,
 ) -> Computed:
     """Compute a loaded workbook into its revision folder.
 
-    Runs only what is out of date (of `only`, if given); every other body is kept byte for byte. A failed calculation
-    does not stop the others. `approved` are ids of deviations an approver has signed. Raises SpecError,
-    TemplateError or StoreError before anything is run; what a calculation raises is in `Computed.failed`.
+    Runs only what is out of date (of `only`, if given); every other body is kept byte for byte. A failed
+    calculation does not stop the others. `approved` are ids of deviations an approver has signed. `scratch`
+    names a folder beside the revisions for a trial. `then` is called at the end, while the folder is still
+    held: the package is bound there. Raises SpecError, TemplateError or StoreError before anything is run;
+    what a calculation raises is in `Computed.failed`.
     """
     _require_known(workbook, only)
     planned = plan(workbook, allow_local=allow_local, only=frozenset(only))
-    folder = store.revision_folder(workbook.root, workbook.document.revision, output)
+    folder = store.revision_folder(workbook.root, scratch or workbook.document.revision, output)
+    if scratch is None:
+        _require_open(workbook, folder, planned)
     with folder.locked():
         _copy_inputs(folder, planned)
         kept, due = _sort(folder, planned, only)
@@ -88,7 +95,30 @@ def compute(
         _write_sheets(computed)
         writes.write_if_changed(folder.path / "results.json", canonical_bytes(computed.results))
         writes.write_if_changed(folder.path / "workbook.yaml", workbook.text.encode("utf-8"))
+        if then is not None:
+            then(computed)
     return computed
+
+
+def _require_open(workbook: Any, folder: RevisionFolder, planned: Sequence[Planned]) -> None:
+    """An issued revision is not computed into: only an output that is gone is rebuilt, from the spec as issued."""
+    revision = workbook.document.revision
+    issued = issued_baseline(workbook.root, revision)
+    if workbook.overrides:
+        raise TrunnionError("trial values are never computed into a revision", remedy="add --trial")
+    if issued is None:
+        return
+    if issued.spec.read_bytes() != workbook.text.encode("utf-8"):
+        raise StoreError(
+            f"revision {revision} is issued, and the spec says something else now",
+            remedy="open the next revision: trunnion revise WORKBOOK --reason …",
+        )
+    stale = [entry.id for entry in planned if issued.key(entry.id) != entry.key]
+    if stale and (folder.path / "results.json").exists():
+        raise StoreError(
+            f"revision {revision} is issued, and program or data differ now for {', '.join(stale)}; it stays as issued",
+            remedy="compute it elsewhere with --output DIR, or open the next revision: trunnion revise",
+        )
 
 
 def _require_known(workbook: Any, only: Collection[str]) -> None:

@@ -1,8 +1,9 @@
-"""`trunnion compute`: run what is out of date, judge, bind."""
+"""`trunnion compute`: run what is out of date, judge, bind; or try other values without touching a revision."""
 
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Any
 
 import click
 
@@ -19,6 +20,15 @@ from trunnion.cli.exits import ExitCode
 @arguments.quiet
 @arguments.no_pdf
 @click.option("--allow-local-templates", is_flag=True, help="Run the workbook's own templates; they are programs.")
+@click.option("--trial", is_flag=True, help="Compute into a scratch folder, never into a revision.")
+@click.option(
+    "--set",
+    "values",
+    multiple=True,
+    metavar="PATH=VALUE",
+    help="A trial value, as in 'requirements.R1.at least=25 deg'.",
+)
+@click.option("--vary", metavar="PATH=VALUES", help="Sweep a value in trial runs: '10 deg .. 30 deg in 5', or a list.")
 def command(
     workbook: Path,
     jobs: int | None,
@@ -28,21 +38,19 @@ def command(
     quiet: bool,
     no_pdf: bool,
     allow_local_templates: bool,
+    trial: bool,
+    values: tuple[str, ...],
+    vary: str | None,
 ) -> ExitCode:
     """Compute WORKBOOK: run every calculation that is out of date, judge the requirements, bind the package.
 
     Exit code 0 when every requirement that counts is met or has an approved deviation, 1 when one is not met or not
     shown, 2 when the spec is wrong or a calculation failed.
     """
-    from trunnion.calculations.compute import compute
-    from trunnion.cli import packaging, screen
-    from trunnion.spec import load_workbook
+    from trunnion.cli import computing
 
-    loaded = load_workbook(workbook)
-    with screen.progress(shown=not (quiet or as_json)) as tell:
-        computed = compute(loaded, output=output, only=only, workers=jobs, allow_local=allow_local_templates, tell=tell)
-    report = packaging.bind_package(computed, pdf=not no_pdf)
-    screen.show_computed(computed, report, as_json=as_json, quiet=quiet)
-    if computed.failed:
-        return ExitCode.FAILED
-    return ExitCode.OK if computed.satisfied else ExitCode.NOT_MET
+    options: dict[str, Any] = {"output": output, "workers": jobs, "allow_local": allow_local_templates}
+    look = computing.Look(as_json=as_json, quiet=quiet)
+    if vary is not None:
+        return computing.sweep(workbook, vary, values, look, options)
+    return computing.once(workbook, values, look, {**options, "only": only}, trial=trial, pdf=not no_pdf)

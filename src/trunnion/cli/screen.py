@@ -6,7 +6,7 @@ import json
 import sys
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
-from typing import Any
+from pathlib import Path
 
 from rich.console import Console
 from rich.table import Table
@@ -15,6 +15,7 @@ from rich.text import Text
 from trunnion.calculations.compute import Computed, Done
 from trunnion.calculations.judgement import Judgement
 from trunnion.calculations.run import Progress
+from trunnion.calculations.trial import Sweep
 from trunnion.calculations.verdicts import Verdict
 
 STYLES = {Verdict.MEETS: "green", Verdict.DOES_NOT_MEET: "bold red", Verdict.NOT_SHOWN: "yellow"}
@@ -44,7 +45,7 @@ def progress(*, shown: bool) -> Iterator[Tell | None]:
         yield tell
 
 
-def show_computed(computed: Computed, report: Any, *, as_json: bool, quiet: bool) -> None:
+def show_computed(computed: Computed, page: Path, *, as_json: bool, quiet: bool) -> None:
     """The end of `compute`: failures on stderr; the verdict table, or JSON; the page to open."""
     for entry in computed.failed:
         print(failure_text(entry), file=sys.stderr)
@@ -56,8 +57,28 @@ def show_computed(computed: Computed, report: Any, *, as_json: bool, quiet: bool
     console = wide_console()
     console.print(_summary(computed))
     console.print(verdict_table(computed.judgements))
-    if report is not None:
-        console.print(f"Open {report.html}", soft_wrap=True, highlight=False, markup=False)
+    console.print(f"Open {page}", soft_wrap=True, highlight=False, markup=False)
+
+
+def show_sweep(found: Sweep, files: list[Path]) -> None:
+    """The table of a sweep, its flips, and the files that keep it."""
+    console = wide_console()
+    counting = [judged for judged in found.steps[0].judgements if judged.counts]
+    table = Table(box=None, pad_edge=False, header_style="bold")
+    table.add_column(found.path)
+    for judged in counting:
+        table.add_column(f"{judged.asked.requirement} ({judged.candidate})")
+    for step in found.steps:
+        cells = [Text(f"{entry.value_text} {entry.verdict.value}", style=STYLES[entry.verdict])
+                 for entry in step.judgements if entry.counts]  # fmt: skip
+        table.add_row(Text(step.text), *cells)
+    console.print(table)
+    for flip in found.flips:
+        console.print(flip.text, highlight=False, markup=False)
+    if not found.flips:
+        console.print("No verdict flips between these values.")
+    for path in files:
+        console.print(str(path), soft_wrap=True, highlight=False, markup=False)
 
 
 def wide_console() -> Console:
