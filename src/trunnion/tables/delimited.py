@@ -264,7 +264,7 @@ def _parse_row(
         report.add("endless line", row, number, f"{len(line)} bytes")
         return None
     try:
-        cells = next(csv.reader([line.decode("utf-8").rstrip("\r\n")], delimiter=separator), [])
+        cells = split_line(line.decode("utf-8"), separator)
     except (UnicodeDecodeError, csv.Error):
         report.add("not text", row, number, "bytes that are no text")
         return None
@@ -281,6 +281,11 @@ def _parse_row(
             report.add("no number", row, number, f"'{shown}' in column '{names[place]}'")
             return None
     return numbers
+
+
+def split_line(text: str, separator: str) -> list[str]:
+    """The cells of one line; an empty separator stands for any run of blanks."""
+    return next(csv.reader([text.rstrip("\r\n")], delimiter=separator), []) if separator else text.split()
 
 
 def _number(cell: str) -> float:

@@ -43,7 +43,9 @@ class Seal:
 
     @classmethod
     def of(cls, path: Path) -> Seal:
-        """Read the file once, in blocks, for its SHA-256."""
+        """Read the file once, in blocks, for its SHA-256; of a folder, the digest of its files' digests and names."""
+        if path.is_dir():
+            return _seal_of_folder(path)
         try:
             digest = hashlib.sha256()
             with path.open("rb") as handle:
@@ -56,9 +58,22 @@ class Seal:
 
     def require_unchanged(self, path: Path) -> None:
         """Raise TableError when the file changed while it was being read."""
+        if path.is_dir():
+            return
         state = path.stat()
         if (state.st_size, state.st_mtime_ns) != (self.size, self.changed):
             raise file_error(path, "the file changed while it was being read", "read it again when it is complete")
+
+
+def _seal_of_folder(path: Path) -> Seal:
+    digest, size, changed = hashlib.sha256(), 0, 0
+    for part in sorted(part for part in path.rglob("*") if part.is_file()):
+        if not part.resolve().is_relative_to(path):
+            raise file_error(part, "the file is a link that leaves its folder", "copy it into the folder")
+        seal = Seal.of(part)
+        digest.update(f"{seal.sha256}  {part.relative_to(path).as_posix()}\n".encode())
+        size, changed = size + seal.size, max(changed, seal.changed)
+    return Seal(digest.hexdigest(), size, changed)
 
 
 def read_text_bytes(path: Path, limit: int = MAX_WHOLE_BYTES) -> memoryview:

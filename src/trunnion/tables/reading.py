@@ -7,7 +7,18 @@ from collections.abc import Callable
 from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
-from trunnion.tables import ccsds, columnar, delimited, ulog
+from trunnion.tables import (
+    bags,
+    ccsds,
+    columnar,
+    dataflash,
+    delimited,
+    matlab,
+    mavlink,
+    photos,
+    trajectories,
+    ulog,
+)
 from trunnion.tables.assembly import assemble
 from trunnion.tables.confine import Limits
 from trunnion.tables.files import file_error, locate, read_text_bytes
@@ -24,6 +35,11 @@ BY_SUFFIX = {
     ".ulg": "ulog",
     ".aem": "ccsds",
     ".apm": "ccsds",
+    ".tlog": "mavlink",
+    ".mcap": "bag",
+    ".mat": "mat",
+    ".jpg": "photo",
+    ".jpeg": "photo",
 }
 
 
@@ -48,6 +64,8 @@ def read_table(statement: TableStatement, root: Path | str, limits: Limits | Non
 def format_of(statement: TableStatement, path: Path) -> str:
     """The format's name: as stated, else by the file's suffix. Raises TableError for one that is not known."""
     name = statement.format or BY_SUFFIX.get(path.suffix.lower())
+    if statement.format is None and path.is_dir() and (path / "metadata.yaml").is_file():
+        return "bag"
     if name in _READERS:
         return str(name)
     if statement.format is None:
@@ -70,6 +88,13 @@ _READERS: dict[str, Callable[[TableStatement, Path, Limits], AttitudeTable]] = {
     "parquet": columnar.read_parquet_table,
     "ulog": ulog.read_ulog_table,
     "ccsds": ccsds.read_ccsds_table,
+    "tum": trajectories.read_tum_table,
+    "kitti": trajectories.read_kitti_table,
+    "mavlink": mavlink.read_mavlink_table,
+    "dataflash": dataflash.read_dataflash_table,
+    "bag": bags.read_bag_table,
+    "mat": matlab.read_mat_table,
+    "photo": photos.read_photo_table,
 }
 
 assert set(_READERS) <= set(QUESTIONS)
