@@ -170,6 +170,13 @@ class Convention:
         u, v = self.lock_axes
         return line_angle(u, np.asarray(R_rb, dtype=float) @ v)
 
+    def carried_direction(self, R_rb: ArrayLike) -> Array:
+        """Unit vector (..., 3) in reference components of the body axis whose line with the reference axis means lock.
+
+        What can be said in place of the angles at lock: where that axis points. Well defined at every attitude.
+        """
+        return np.asarray(R_rb, dtype=float) @ self.lock_axes[1]
+
     def locked_attitude_near(self, R_rb: ArrayLike) -> Array:
         """The locked attitude (..., 3, 3) nearest to R_rb: R_rb tilted straight until the carried axis lies
         on the line.
