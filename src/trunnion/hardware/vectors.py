@@ -73,3 +73,11 @@ def perpendicular(n: Array) -> Array:
     """A unit vector square to the unit vector `n` (3,)."""
     helper = np.eye(3)[int(np.argmin(np.abs(n)))]
     return unit(np.cross(n, helper))
+
+
+def about_all(centre: Array, radius: float, count: int) -> Array:
+    """`count` directions (count, 3) evenly round the circle at the angle `radius` (rad) from `centre` (3,)."""
+    one = perpendicular(centre)
+    other = np.cross(centre, one)
+    t = np.linspace(0.0, 2.0 * np.pi, count, endpoint=False)[:, None]
+    return np.cos(radius) * centre + np.sin(radius) * (np.cos(t) * one + np.sin(t) * other)
