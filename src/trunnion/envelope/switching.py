@@ -261,8 +261,8 @@ class SwitchRule:
     """When to change convention, and what that guarantees.
 
     Stay with the convention in use while its margin is at least `threshold`; when it falls below, change to the one
-    with the largest margin. `hysteresis` (rad) is the least turn of the body between two changes, `dwell` the least time;
-    `in_use` (rad) is the margin the convention in use always has.
+    with the largest margin. `hysteresis` (rad) is the least turn of the body between two changes, `dwell` the least
+    time; `in_use` (rad) is the margin the convention in use always has.
     """
 
     guaranteed: float
