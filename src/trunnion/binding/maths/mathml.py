@@ -6,6 +6,7 @@ space of its own and the writer puts the spaces (TeXbook, chapter 18, table of s
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from html import escape
 
 from trunnion.binding.maths import tree as t
@@ -271,7 +272,7 @@ def _boxed(node: t.Boxed, script: bool) -> str:
     return f'<mrow class="m-box">{_node(node.body, script)}</mrow>'
 
 
-_WRITERS = {
+_WRITERS: dict[type, Callable[..., str]] = {
     t.Row: _row,
     t.Letter: _letter,
     t.Number: _number,

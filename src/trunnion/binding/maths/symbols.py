@@ -41,9 +41,8 @@ BIG = _table(
     "int ∫ iint ∬ iiint ∭ oint ∮ oiint ∯"
 )
 INTEGRALS = set("∫∬∭∮∯")
-FUNCTIONS = set(
-    "sin cos tan cot sec csc arcsin arccos arctan sinh cosh tanh coth ln log lg exp det dim ker deg arg hom".split()
-)
+_NAMES = "sin cos tan cot sec csc arcsin arccos arctan sinh cosh tanh coth ln log lg exp det dim ker deg arg hom"
+FUNCTIONS = set(_NAMES.split())
 LIMIT_FUNCTIONS = {"lim": "lim", "max": "max", "min": "min", "sup": "sup", "inf": "inf"} | {
     "limsup": "lim sup",
     "liminf": "lim inf",
@@ -74,12 +73,9 @@ SPACES = {
     "nobreakspace": 0.25,
     "space": 0.25,
 }
-ACCENTS = {name: False for name in "hat tilde dot ddot dddot vec bar check breve acute grave mathring".split()} | {
-    name: True
-    for name in (
-        "widehat widetilde overline underline overrightarrow overleftarrow overbrace underbrace overleftrightarrow"
-    ).split()
-}
+_NARROW = "hat tilde dot ddot dddot vec bar check breve acute grave mathring"
+_WIDE = "widehat widetilde overline underline overrightarrow overleftarrow overbrace underbrace overleftrightarrow"
+ACCENTS = dict.fromkeys(_NARROW.split(), False) | dict.fromkeys(_WIDE.split(), True)
 ALPHABETS = {
     "mathbf": "bf",
     "mathrm": "rm",

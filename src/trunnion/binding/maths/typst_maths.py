@@ -7,6 +7,7 @@ quoted strings, and letters are written as characters of the mathematical alphab
 from __future__ import annotations
 
 import re
+from collections.abc import Callable
 
 from trunnion.binding.maths import tree as t
 from trunnion.binding.maths.mathml import align_of
@@ -243,7 +244,7 @@ def _boxed(node: t.Boxed) -> str:
     return f"tboxed({_group(node.body)})"
 
 
-_WRITERS = {
+_WRITERS: dict[type, Callable[..., str]] = {
     t.Row: _row,
     t.Letter: _letter,
     t.Number: _number,
