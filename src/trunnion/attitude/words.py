@@ -106,14 +106,20 @@ def _settings(convention: Convention) -> str:
     return listed([f"{name} {degrees_text(offset)}" for name, offset in pairs])
 
 
+def lying_words(direction: Vector, frame: Frame) -> str:
+    """How something lies in a frame: `along north`, `40° from north towards down`, `along the direction (…) …`."""
+    words = axis_words(direction, frame)
+    return words if words[0].isdigit() else f"along {words}"
+
+
 def zero_sentence(convention: Convention) -> str:
     """Where the body axes lie before anything is turned."""
     zero = zero_matrix(convention)
-    places = [
-        f"{axis} {'lies' if index == 0 else ''} along {axis_words(zero[:, index], convention.reference)}"
-        for index, axis in enumerate(convention.body.axes)
-    ]
-    text = listed([" ".join(place.split()) for place in places])
+    places = [lying_words(zero[:, index], convention.reference) for index in range(3)]
+    verbs = ("lies ", "", "")
+    text = listed(
+        [f"{axis} {verb}{place}" for axis, verb, place in zip(convention.body.axes, verbs, places, strict=True)]
+    )
     return f"At {_settings(convention)}, {text}."
 
 
@@ -128,10 +134,10 @@ def _moving_turn(convention: Convention, place: int) -> str:
     mover, towards = swing(axis)
     where = ("", ", where the first turn has left it", ", where the first two turns have left it")[place]
     words = axis_words(axis, body)
-    words = f"own {words} axis" if " " not in words else f"axis fixed in it {words.removeprefix('the ')}"
+    line = f"its own {words} axis" if " " not in words else f"the axis fixed in it that lies {lying_words(axis, body)}"
     name = convention.angle_names[place]
     return (
-        f"turn the {body.name} by {_amount(name, convention.offsets[place])} about its {words}{where}: "
+        f"turn the {body.name} by {_amount(name, convention.offsets[place])} about {line}{where}: "
         f"growing {name} swings {axis_words(mover, body)} towards {axis_words(towards, body)}."
     )
 
@@ -140,11 +146,13 @@ def _fixed_turn(convention: Convention, place: int) -> str:
     axis, reference = turn_axes(convention)[place], convention.reference
     mover, towards = swing(axis)
     words = axis_words(axis, reference)
-    words = f"fixed {words} axis" if " " not in words else f"fixed axis {words.removeprefix('the ')}"
+    line = f"the fixed {words} axis of {reference.name}"
+    if " " in words:
+        line = f"the axis fixed in {reference.name} that lies {lying_words(axis, reference)}"
     name = convention.angle_names[place]
     return (
-        f"turn the {convention.body.name} by {_amount(name, convention.offsets[place])} about the {words} of "
-        f"{reference.name}: growing {name} swings whatever points {axis_words(mover, reference)} towards "
+        f"turn the {convention.body.name} by {_amount(name, convention.offsets[place])} about {line}: "
+        f"growing {name} swings whatever points {axis_words(mover, reference)} towards "
         f"{axis_words(towards, reference)}."
     )
 
@@ -216,7 +224,7 @@ def _along(direction: Vector, frame: Frame) -> str:
     words = axis_words(direction, frame)
     if words in ("up", "down"):
         return f"points straight {words}"
-    return f"points {words}" if " " not in words else f"lies along {words}"
+    return f"points {words}" if " " not in words else f"lies {lying_words(direction, frame)}"
 
 
 def singular_words(convention: Convention) -> list[str]:

@@ -229,7 +229,9 @@ def _lock(d: Derivation, number: int) -> list[CheckRow]:
     against = np.array([_SLIDE, 0.0, case.relation * _SLIDE])
     same = (here.inv() * rotation(convention, angles + slide)).magnitude()
     other = (here.inv() * rotation(convention, angles + against)).magnitude()
-    delta = angles[0] + case.relation * angles[2]
+    first, _, last = d.setting.turns
+    y1, y3 = (angles[turn.place] - (convention.offsets[turn.place] if turn.shifted else 0.0) for turn in (first, last))
+    delta = y1 + case.relation * y3
     found = d.combination(number, _stated(convention, angles))
     pointing = here.as_matrix() @ case.words.body_direction
     return [

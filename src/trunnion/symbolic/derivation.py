@@ -91,11 +91,12 @@ class Derivation:
         return np.array([first + np.pi, constant - (middle - offset) + offset, last + np.pi])
 
     def combination(self, number: int, matrix: ArrayLike) -> float:
-        """First stated angle plus r times the last, rad modulo a turn, from a stated matrix at singular value 0, 1."""
+        """δ rad, modulo a turn, at singular value 0 or 1 from a stated matrix there: y1 + r·y3 of the formulas' angles.
+
+        y is the stated angle, less its offset where that is no multiple of 90° (`setting.turns[n].shifted`).
+        """
         sine, cosine = _evaluate(self.expressions[f"combination {number}"], self._matrix_numbers(matrix))[0]
-        first, _, last = self.setting.turns
-        shifts = [float(turn.offset) if turn.shifted else 0.0 for turn in (first, last)]
-        return float(np.arctan2(sine, cosine)) + shifts[0] + self.locked[number].relation * shifts[1]
+        return float(np.arctan2(sine, cosine))
 
     def _numbers(self, angles: ArrayLike) -> dict[str, float]:
         values = {"w": float(np.sqrt(2.0))} | self._constants()

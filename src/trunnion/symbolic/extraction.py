@@ -39,7 +39,7 @@ def formulas(setting: Setting, form: Shape) -> Formulas:
     outer_sine, outer_cosine = sign * form.outer_sine.of(X), sign * form.outer_cosine.of(X)
     rho = sign * sympy.sqrt(outer_sine**2 + outer_cosine**2)
     sine, cosine = middle_sides(setting, form, rho, form.along.of(X))
-    residual_sine, residual_cosine = _residual(setting, form)
+    residual_sine, residual_cosine = residual_of(setting, form, X)
     return Formulas(
         outer=sympy.atan2(outer_sine, outer_cosine, evaluate=False),
         middle=sympy.atan2(sine, cosine, evaluate=False),
@@ -51,11 +51,10 @@ def formulas(setting: Setting, form: Shape) -> Formulas:
     )
 
 
-def _residual(setting: Setting, form: Shape) -> tuple[sympy.Expr, sympy.Expr]:
+def residual_of(setting: Setting, form: Shape, X: sympy.MatrixBase) -> tuple[sympy.Expr, sympy.Expr]:
     """sin y and cos y of the innermost angle from row b of T(outer)ᵀ E = T(middle) T(inner), free of the middle."""
     outer, _, inner = setting.order
-    X, factor = setting.entries, outer.matrix
-    found = {}
+    factor, found = outer.matrix, {}
     for column in (index for index in range(3) if index != form.c):
         carried = inner.matrix[form.b, column]
         row = sum(factor[k, form.b] * X[k, column] for k in range(3))
