@@ -18,23 +18,25 @@ from trunnion.tables.statements import Form, Order, Scalar, TableStatement
 from trunnion.tables.table import AttitudeTable
 from trunnion.units import parse_quantity
 
-_TUM = ("t", "tx", "ty", "tz", "qx", "qy", "qz", "qw")
-_KITTI = tuple(f"m{row}{column}" for row in (1, 2, 3) for column in (1, 2, 3, 4))
+TUM_NAMES: tuple[str, ...] = ("t", "tx", "ty", "tz", "qx", "qy", "qz", "qw")
+KITTI_NAMES: tuple[str, ...] = tuple(f"m{row}{column}" for row in (1, 2, 3) for column in (1, 2, 3, 4))
 
 
 def read_tum_table(statement: TableStatement, path: Path, limits: Limits) -> AttitudeTable:
     """TUM text: the layout fixes columns, seconds and scalar last; direction and axes are asked."""
     require_answers("tum", statement, {}, path)
-    own = replace(statement, form=Form.QUATERNION, scalar=Scalar.LAST, time_column="t", time_unit="s", columns=_TUM[4:])
-    return _read(own, path, _TUM, [_TUM[0], *_TUM[4:]])
+    own = replace(
+        statement, form=Form.QUATERNION, scalar=Scalar.LAST, time_column="t", time_unit="s", columns=TUM_NAMES[4:]
+    )
+    return _read(own, path, TUM_NAMES, [TUM_NAMES[0], *TUM_NAMES[4:]])
 
 
 def read_kitti_table(statement: TableStatement, path: Path, limits: Limits) -> AttitudeTable:
     """KITTI text: the layout fixes the matrix by rows; there is no time in it, so the step between rows is asked."""
     require_answers("kitti", statement, {}, path)
-    names = [name for name in _KITTI if not name.endswith("4")]
+    names = [name for name in KITTI_NAMES if not name.endswith("4")]
     own = replace(statement, form=Form.MATRIX, order=Order.ROWS, columns=tuple(names), time_unit="s")
-    return _read(own, path, _KITTI, names, step=_step(statement, path))
+    return _read(own, path, KITTI_NAMES, names, step=_step(statement, path))
 
 
 def _step(statement: TableStatement, path: Path) -> float:

@@ -25,13 +25,16 @@ def read_columns(path: str, options: dict[str, Any]) -> tuple[dict[str, np.ndarr
 
 
 def list_arrays(path: str, options: dict[str, Any]) -> tuple[dict[str, np.ndarray], dict[str, Any]]:
-    """Names, shapes and ranges of all numeric arrays."""
-    listed = []
+    """The first rows of every numeric vector, and of every column of a matrix that is longer than wide."""
+    columns: dict[str, np.ndarray] = {}
     for name, values in _arrays(path).items():
-        finite = values[np.isfinite(values)] if values.size else values
-        span = [float(finite.min()), float(finite.max())] if finite.size else None
-        listed.append({"name": name, "shape": list(values.shape), "span": span})
-    return {}, {"arrays": listed}
+        flat = values.squeeze()
+        if flat.ndim == 1:
+            columns[name] = flat[: options["rows"]]
+        elif values.ndim == 2 and values.shape[1] <= 16:
+            for place in range(values.shape[1]):
+                columns[f"{name}(:,{place + 1})"] = values[: options["rows"], place]
+    return columns, {}
 
 
 def _column(held: dict[str, np.ndarray], text: str) -> np.ndarray:

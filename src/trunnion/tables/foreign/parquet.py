@@ -67,10 +67,21 @@ def _numbers(table: Any, name: str) -> np.ndarray:
     return values
 
 
-def describe(path: str, options: dict[str, Any]) -> tuple[dict[str, np.ndarray], dict[str, Any]]:
-    """Names and types of all columns, and the least and largest value of each numeric one."""
+def sample(path: str, options: dict[str, Any]) -> tuple[dict[str, np.ndarray], dict[str, Any]]:
+    """The first rows of every numeric column, the number of rows, and the statements in the schema's metadata."""
+    import pyarrow as pa
     import pyarrow.parquet as pq
 
-    file = pq.ParquetFile(path)
-    columns = [[field.name, str(field.type)] for field in file.schema_arrow]
-    return {}, {"rows": file.metadata.num_rows, "columns": columns}
+    with pa.OSFile(path, "rb") as handle:
+        file = pq.ParquetFile(handle, pre_buffer=False)
+        numeric = [
+            part.name
+            for part in file.schema_arrow
+            if pa.types.is_integer(part.type) or pa.types.is_floating(part.type) or pa.types.is_timestamp(part.type)
+        ]
+        batch = next(file.iter_batches(options["rows"], columns=numeric, use_threads=False), None)
+        table = pa.Table.from_batches([batch]) if batch is not None else file.schema_arrow.empty_table()
+        arrays = {name: _numbers(table, name) for name in numeric}
+        metadata = file.schema_arrow.metadata or {}
+        statements = [value.decode("utf-8", "replace") for key, value in metadata.items() if b"statement" in key]
+        return arrays, {"rows": file.metadata.num_rows, "statements": statements}
