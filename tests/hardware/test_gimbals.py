@@ -303,6 +303,31 @@ def test_travel_left_at_the_stops_and_after_stopping():
     np.testing.assert_allclose(plan.travel_left - room, 0.5**2 / (2 * 0.25), atol=1e-12)
 
 
+def test_travel_over_a_region_is_certified_when_the_samples_cover_it(rng):
+    """Every deck within 12 deg of level at any heading, held by three right-angled axes: random decks by scipy."""
+    joints = tuple(
+        Joint(name, axis, (-lim, lim))
+        for name, axis, lim in zip("abc", np.eye(3)[[0, 1, 2]], np.radians([40, 30, 200]), strict=True)
+    )
+    chain = GimbalChain("deck", joints)
+    tilt = np.radians(12)
+
+    def decks(number):
+        axis = rng.normal(size=(number, 3)) * [1, 1, 0]
+        axis /= np.linalg.norm(axis, axis=1, keepdims=True)
+        return Rotation.from_rotvec(axis * tilt * np.sqrt(rng.random((number, 1)))).as_matrix()
+
+    few, many = (platforms.holding_solutions(chain, decks(n), np.eye(3)) for n in (200, 4000))
+    certified = travel.travel_over(chain, few, covering_radius=np.radians(4))
+    sampled = travel.travel_over(chain, many)
+    assert certified.basis.value == "certified bound"
+    assert np.all(certified.left <= sampled.left)
+    assert np.degrees(sampled.left[1]) == pytest.approx([18, 18], abs=0.5)  # 30 deg of travel less 12 of tilt
+    skew = chain_of([[1, 0, 0], [0.1, 1, 0], [0, 0, 1]])
+    with pytest.raises(HardwareError, match="not right-angled"):
+        travel.travel_over(skew, joint_solutions.attitude_solutions(skew, np.eye(3)[None]), covering_radius=0.1)
+
+
 def test_middle_axis_keep_out_is_reaction_and_stopping():
     """Common practice, no source; plain kinematics."""
     keep = joint_rates.middle_axis_keep_out(np.radians(10), 1.5, acceleration=np.radians(20), hard_margin=np.radians(1))

@@ -173,7 +173,7 @@ class BaseTilt:
     clearance: tuple[float, float]
 
 
-def best_base_tilt(chain: GimbalChain, tracks: Sequence[Pass], *, largest: float, rings: int = 24) -> BaseTilt:
+def best_base_tilt(chain: GimbalChain, tracks: Sequence[Pass], *, largest: float, rings: int = 16) -> BaseTilt:
     """The tilt of up to `largest` (rad) with the least time beyond the outer rate limit, then the largest clearance.
 
     For right-angled mounts. Tilts are searched on `rings` rings of directions about the outer axis and refined once
@@ -186,23 +186,34 @@ def best_base_tilt(chain: GimbalChain, tracks: Sequence[Pass], *, largest: float
     weight = np.concatenate([np.gradient(track.times) for track in tracks])
     limit = float(chain.limits("rate")[0])
     axis = chain.joints[0].axis
-    start = _score(axis[None], b, moment, weight, limit)
+    near = _within_reach(axis, b, moment, limit, largest)
+    fits = (b[near], moment[near], weight[near], limit)
     candidates = _cap(axis, axis, largest, rings)
-    best = candidates[_best(_score(candidates, b, moment, weight, limit))]
-    fine = _cap(axis, best, largest / rings, 10)
+    best = candidates[_best(_score(candidates, *fits))]
+    fine = _cap(axis, best, largest / rings, 8)
     fine = np.concatenate([best[None], fine[fine @ axis >= np.cos(largest) - 1e-12]])
-    score = _score(fine, b, moment, weight, limit)
-    k = _best(score)
-    chosen = fine[k]
+    chosen = fine[_best(_score(fine, *fits))]
+    seconds, clearance = _score(np.array([axis, chosen]), b, moment, weight, limit)
     tilt = float(np.arctan2(np.linalg.norm(np.cross(axis, chosen)), axis @ chosen))
     up = -chosen if axis[2] > 0 else chosen
     return BaseTilt(
         chosen,
         tilt,
         float(np.arctan2(up[1], up[0]) % (2.0 * np.pi)),
-        (float(start[0][0]), float(score[0][k])),
-        (float(start[1][0]), float(score[1][k])),
+        (float(seconds[0]), float(seconds[1])),
+        (float(clearance[0]), float(clearance[1])),
     )
+
+
+def _within_reach(axis: Array, b: Array, moment: Array, limit: float, largest: float) -> NDArray[np.bool_]:
+    """The samples that can enter the keyhole of some allowed tilt; when there are none, the nearest one alone.
+
+    The outer rate is at most the line's own rate over the sine of its angle to the axis.
+    """
+    away = np.arcsin(np.clip(np.linalg.norm(np.cross(b, axis), axis=1), 0.0, 1.0))
+    needed = np.arcsin(np.clip(np.linalg.norm(moment, axis=1) / limit, 0.0, 1.0))
+    near = away <= largest + needed
+    return near if near.any() else away == np.min(away)
 
 
 def _cap(axis: Array, centre: Array, radius: float, rings: int) -> Array:

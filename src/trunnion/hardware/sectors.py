@@ -17,9 +17,10 @@ from numpy.typing import ArrayLike, NDArray
 from trunnion.errors import HardwareError
 from trunnion.hardware.gimbals import GimbalChain
 from trunnion.hardware.passes import Pass, azimuth_elevation, directions
+from trunnion.hardware.travel import TravelPlan
 from trunnion.hardware.vectors import Array, angle_between, unit
 
-_STEP = np.radians(0.05)  # rad; spacing of the points an edge is followed by
+_STEP = np.radians(0.1)  # rad; spacing of the points an edge is followed by
 _NEAREST = 2e-8  # rad; the nearest outline point is found by its cosine, which cannot tell angles this small apart
 
 
@@ -351,3 +352,19 @@ def _straightened(
         keep.append(path[there])
         here = there
     return np.array(keep)
+
+
+def unwinding_routes(
+    chain: GimbalChain,
+    plan: TravelPlan,
+    sectors: Sequence[Sector],
+    *,
+    mode: str | None = None,
+    clearance: float = 0.0,
+    boresight_p: ArrayLike = (1.0, 0.0, 0.0),
+) -> list[Route]:
+    """A free way for every unwinding or flip of a travel plan, in order (see `route`)."""
+    return [
+        route(chain, one.angles[-1], other.angles[0], sectors, mode=mode, clearance=clearance, boresight_p=boresight_p)
+        for one, other in pairwise(plan.segments)
+    ]

@@ -14,6 +14,7 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from trunnion.attitude.basis import Basis
 from trunnion.errors import HardwareError
 from trunnion.hardware.gimbals import GimbalChain
 from trunnion.hardware.joint_solutions import Solutions
@@ -223,3 +224,62 @@ def stopping_room(chain: GimbalChain, travel_left: ArrayLike) -> Array:
     known = np.isfinite(rate) & np.isfinite(acceleration)
     need = np.where(known, np.where(known, rate, 0.0) ** 2 / (2.0 * np.where(known, acceleration, 1.0)), 0.0)
     return np.asarray(travel_left, dtype=float) - need[:, None]
+
+
+@dataclass(frozen=True, eq=False)
+class TravelOver:
+    """Travel left over a set of attitudes or directions on one branch.
+
+    left (k, 2) rad: least distance to the lower and upper stop, negative beyond it; worst (k, 2): the sample where;
+    branch: the solution family judged (the better of the two); basis: sampled, or certified when the samples cover
+    their region within a stated radius.
+    """
+
+    left: Array
+    worst: NDArray[np.intp]
+    branch: int
+    basis: Basis
+
+
+def travel_over(chain: GimbalChain, solutions: Solutions, *, covering_radius: float | None = None) -> TravelOver:
+    """Travel left at the stops over N samples of a region of attitudes (three axes) or directions (two).
+
+    covering_radius (rad): every attitude or direction of the region lies within this rotation of a sample. Then, for
+    right-angled chains, the middle joint may move by r and the outer ones by asin(sin r / sin clearance) between
+    samples: taken off, the result is certified. A sample that is out of reach is an error.
+    """
+    flat = solutions.angles.reshape(-1, *solutions.angles.shape[-2:])
+    clearance = np.ravel(solutions.clearance)
+    if np.any(clearance < -SINGULAR):
+        raise HardwareError(
+            f"{int(np.sum(clearance < -SINGULAR))} of {len(clearance)} samples are out of reach of '{chain.name}'",
+            remedy="see `require_reachable` for how far and what would reach them",
+        )
+    growth = np.zeros((len(flat), len(chain.joints)))
+    if covering_radius is not None:
+        growth = _growth(chain, clearance, covering_radius)
+    lower, upper = chain.travel.T
+    centre = np.where(np.isfinite(upper - lower), (lower + upper) / 2.0, 0.0)
+    centre = np.where(np.isfinite(centre), centre, 0.0)
+    best: TravelOver | None = None
+    for branch in range(2):
+        angles = centre + wrapped(flat[:, branch] - centre)
+        room = np.stack([angles - growth - lower, upper - angles - growth], axis=-1)
+        basis = Basis.SAMPLED if covering_radius is None else Basis.CERTIFIED
+        found = TravelOver(np.min(room, axis=0), np.argmin(room, axis=0), branch, basis)
+        if best is None or np.min(found.left) > np.min(best.left):
+            best = found
+    assert best is not None
+    return best
+
+
+def _growth(chain: GimbalChain, clearance: Array, radius: float) -> Array:
+    if not np.allclose(chain.neighbour_angles, np.pi / 2, rtol=0.0, atol=1e-12):
+        raise HardwareError(
+            f"chain '{chain.name}' is not right-angled, so the joints between samples are not bounded here",
+            remedy="leave the covering radius out: the result is then sampled",
+        )
+    reaches = clearance <= radius
+    sine = np.where(reaches, 1.0, np.sin(np.where(reaches, 1.0, clearance)))
+    outer = np.where(reaches, np.inf, np.arcsin(np.clip(np.sin(radius) / sine, 0.0, 1.0)))
+    return np.stack([outer, np.full_like(outer, radius), outer], axis=-1)[:, : len(chain.joints)]
