@@ -13,7 +13,7 @@ from trunnion.attitude.sequences import Sense
 from trunnion.envelope.box import box_angle_range, carried
 from trunnion.envelope.regions import Box
 from trunnion.envelope.results import Spread, closed_form_ends, connected
-from trunnion.envelope.search import bisect_parameter
+from trunnion.envelope.search import sign_change
 from trunnion.envelope.vectors import Array, dot, turned
 
 
@@ -73,9 +73,10 @@ def chain_spread(chain: ChainBox, u: Array, v: Array) -> Spread:
         goal, vector = left[:, pairs], right[:, pairs]
 
         def miss(t: Array) -> Array:
-            return dot(goal, carried(chain.axes, start + t * way, vector))
+            angles = start[:, None] + t * way[:, None]
+            return dot(goal[:, None], carried(chain.axes, angles, vector[:, None]))
 
-        at = start + bisect_parameter(miss, len(pairs)) * way
+        at = start + sign_change(miss, len(pairs)) * way
         return chain_matrices(chain, at), np.full(len(pairs), np.nan), _places(chain, at)
 
     return connected(

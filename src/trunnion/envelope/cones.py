@@ -17,7 +17,7 @@ from trunnion.attitude.basis import Basis
 from trunnion.envelope.chains import ChainBox
 from trunnion.envelope.regions import Cone
 from trunnion.envelope.results import Spread, closed_form_ends, connected
-from trunnion.envelope.search import bisect_parameter
+from trunnion.envelope.search import sign_change
 from trunnion.envelope.vectors import Array, angle_between, cross, dot, triangle_angle, turned
 
 
@@ -43,11 +43,11 @@ def free_cone_spread(cone: Cone, u: Array, v: Array) -> Spread:
 
         def miss(t: Array) -> Array:
             polar, azimuth = start + t * (stop - start), np.pi * t
-            axis = d[:, pairs]
-            goal = np.cos(polar) * axis + np.sin(polar) * turned(axis, azimuth, side[:, pairs])
-            return dot(u[:, pairs], goal)
+            axis = d[:, None, pairs]
+            goal = np.cos(polar) * axis + np.sin(polar) * turned(axis, azimuth, side[:, None, pairs])
+            return dot(u[:, None, pairs], goal)
 
-        t = bisect_parameter(miss, len(pairs))
+        t = sign_change(miss, len(pairs))
         found = poses(pairs, start + t * (stop - start), np.pi * t)
         return found, np.full(len(pairs), np.nan), [_place(cone, R) for R in found]
 

@@ -59,15 +59,15 @@ def flat_normal(points: Array) -> Array | None:
     return normal if np.abs(points @ normal).max() <= _FLAT else None
 
 
-def facets(points: Array, within: float = EQUAL) -> tuple[Array, float, NDArray[np.intp]]:
+def facets(points: Array, within: float = EQUAL, apart: float = 1e-6) -> tuple[Array, float, NDArray[np.intp]]:
     """Normals (E, 3) of the hull facets of ±points nearest to the origin, within `within` of the nearest one's
-    distance; that distance; and which points are corners of the hull."""
+    distance, as lines more than about `apart` rad from each other; that distance; which points are hull corners."""
     hull = _hull(np.concatenate([points, -points]))
     distance = -hull.equations[:, 3]
     near = distance <= distance.min() + within
     normals = hull.equations[near, :3]
     normals = normals[np.argsort(distance[near], kind="stable")]
-    return _distinct_lines(normals), float(distance.min()), np.unique(hull.vertices % len(points))
+    return _distinct_lines(normals, apart), float(distance.min()), np.unique(hull.vertices % len(points))
 
 
 def _hull(points: Array):  # type: ignore[no-untyped-def]
@@ -82,14 +82,13 @@ def _hull(points: Array):  # type: ignore[no-untyped-def]
     raise RegionError("the directions are so nearly flat that their hull cannot be formed", remedy="state fewer digits")
 
 
-def _distinct_lines(normals: Array) -> Array:
-    """One of each pair ±n, first come first kept."""
+def _distinct_lines(normals: Array, apart: float, most: int = 64) -> Array:
+    """Up to `most` lines, first come first kept, each more than about `apart` from those kept before."""
+    near = np.cos(apart)
     kept: list[Array] = []
-    for normal in normals:
-        if all(abs(normal @ other) < 1.0 - 1e-12 for other in kept):
-            kept.append(normal / np.linalg.norm(normal))
-        if len(kept) >= 64:
-            break
+    while len(normals) and len(kept) < most:
+        kept.append(normals[0] / np.linalg.norm(normals[0]))
+        normals = normals[np.abs(normals @ kept[-1]) < near]
     return np.array(kept)
 
 

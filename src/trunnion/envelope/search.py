@@ -8,28 +8,24 @@ import numpy as np
 
 from trunnion.envelope.vectors import Array
 
-_SMALL = 1e-15  # of a function of size one
+_PARTS = 32  # cuts of the interval a round: few rounds, since a call costs more than its arithmetic
+_ROUNDS = 11  # 32^11 = 2^55: down to the last place of the parameter
 
 
-def bisect_parameter(function: Callable[[Array], Array], count: int, low: float = 0.0, high: float = 1.0) -> Array:
-    """A sign change of `function` between low and high for `count` problems at once: (count,) parameters.
+def sign_change(function: Callable[[Array], Array], count: int) -> Array:
+    """A sign change of `function` between 0 and 1 for `count` problems at once: (count,) parameters.
 
-    `function` takes and returns (count,) arrays of size about one, with opposite signs at the two ends of each problem.
-    False position with halved end values (the Illinois rule) two times out of three, bisection the third.
+    `function` takes parameters (K, count) to values (K, count) and has opposite signs at 0 and 1 in each problem.
     """
-    start, stop = np.full(count, low), np.full(count, high)
-    at_start, at_stop = function(start), function(stop)
-    guess = start
-    for step in range(150):
-        spread = at_stop - at_start
-        secant = start - at_start * (stop - start) / np.where(spread == 0.0, 1.0, spread)
-        inside = (secant > start) & (secant < stop) & (step % 3 != 2)
-        guess = np.where(inside, secant, 0.5 * (start + stop))
-        value = function(guess)
-        if np.all((np.abs(value) <= _SMALL) | (stop - start <= 1e-16)):
-            break
-        same = np.sign(value) == np.sign(at_start)
-        start, stop = np.where(same, guess, start), np.where(same, stop, guess)
-        at_start = np.where(same, value, 0.5 * at_start)
-        at_stop = np.where(same, 0.5 * at_stop, value)
-    return guess
+    start, width = np.zeros(count), np.ones(count)
+    sign = np.sign(function(start[None]))[0]
+    steps = np.arange(1, _PARTS + 1)[:, None] / _PARTS
+    every = np.arange(count)
+    for _ in range(_ROUNDS):
+        points = start + steps * width
+        changed = np.sign(function(points)) != sign
+        changed[-1] = True
+        first = np.argmax(changed, axis=0)
+        start = np.where(first > 0, points[np.maximum(first - 1, 0), every], start)
+        width = width / _PARTS
+    return start

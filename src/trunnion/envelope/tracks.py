@@ -14,7 +14,7 @@ from trunnion.envelope.balls import listed_spread, widened
 from trunnion.envelope.floors import rate_limited_spread
 from trunnion.envelope.regions import Between, Track, step_angles
 from trunnion.envelope.results import Spread, closed_form_ends, connected, joined
-from trunnion.envelope.search import bisect_parameter
+from trunnion.envelope.search import sign_change
 from trunnion.envelope.trajectories import end_angles, matrices_at, rows_of
 from trunnion.envelope.vectors import Array, dot
 
@@ -71,10 +71,11 @@ def _slerp_spread(times: Array, quaternions: Array, offset: int, u: Array, v: Ar
             return row, position - row
 
         def miss(t: Array) -> Array:
-            R = matrices_at(quaternions, *at(t))
-            return dot(u[:, pairs], np.einsum("mij,jm->im", R, v[:, pairs]))
+            row, fraction = at(t)
+            R = matrices_at(quaternions, row.ravel(), fraction.ravel()).reshape(*t.shape, 3, 3)
+            return dot(u[:, None, pairs], np.einsum("kmij,jm->ikm", R, v[:, pairs]))
 
-        row, fraction = at(bisect_parameter(miss, len(pairs)))
+        row, fraction = at(sign_change(miss, len(pairs)))
         where = [_place(r + offset, f) for r, f in zip(row, fraction, strict=True)]
         return matrices_at(quaternions, row, fraction), _stamps(times, row, fraction), where
 

@@ -28,6 +28,8 @@ from trunnion.envelope.sampling import sample_region
 from trunnion.envelope.vectors import Array
 from trunnion.errors import RegionError
 
+_HARDLY_FARTHER = np.radians(1.0)
+
 
 class Side(enum.Enum):
     """On which side the constant is put."""
@@ -146,10 +148,11 @@ class _Problem:
         points, upper, rounds = self._start(), np.pi / 2, 0
         axes = self.present.T if self.side is Side.REFERENCE else self.present
         while not _enough(upper - found.best, gap, time.monotonic() - start, seconds):
-            normals, upper_now = _optimal_lines(points)
+            left_over = upper - max(found.best, 0.0)
+            normals, upper_now, points = _optimal_lines(points, left_over)
             upper = min(upper, upper_now)
             around = _around(normals[0], max(upper - max(found.best, 0.0), 1e-7))
-            candidates = np.concatenate([normals[:8], around, *([] if rounds else [axes])])
+            candidates = np.concatenate([normals[:24], around, *([] if rounds else [axes])])
             spread = self.spread(candidates)
             found.add(candidates, spread.lo[LEAST_LINE])
             points = np.concatenate([points, self._cuts(spread, upper)])
@@ -186,7 +189,7 @@ class _Problem:
 
     def choice(self, equals: Array, upper: float, rounds: int, gap: float) -> ZeroChoice:
         """The nearest to the present zero among equally good lines."""
-        direction = equals[int(np.argmax(np.round(np.abs(equals @ self.now), 12)))]
+        direction = self._nearest(equals)
         turn = _shortest_turn(self.now, direction)
         constant = turn @ self.present if self.side is Side.REFERENCE else self.present @ turn.T
         made = self.with_constant(constant)
@@ -194,6 +197,16 @@ class _Problem:
         return replace(
             made, upper=upper, gap=left_over, finished=left_over <= gap + 1e-12, rounds=rounds, equals=len(equals)
         )
+
+    def _nearest(self, equals: Array) -> Array:
+        """The line nearest to the present one; a chain axis if one is hardly farther, since it is easier to say."""
+        closeness = np.round(np.abs(equals @ self.now), 12)
+        nearest = equals[int(np.argmax(closeness))]
+        axes = self.present.T if self.side is Side.REFERENCE else self.present
+        along_axis = np.abs(equals @ axes.T).max(axis=1) > 1.0 - 1e-14
+        turns = np.arccos(np.clip(closeness, 0.0, 1.0))
+        easy = along_axis & (turns <= turns.min() + _HARDLY_FARTHER)
+        return equals[int(np.argmax(np.where(easy, closeness, -1.0)))] if easy.any() else nearest
 
     def with_constant(self, constant: Array) -> ZeroChoice:
         """The choice of one constant: its margin over the region and how it falls off around it."""
@@ -257,13 +270,16 @@ def _around(direction: Array, turn: float, count: int = 6) -> Array:
     return about(direction, 2.0 * np.pi * np.arange(count) / count) @ tilted
 
 
-def _optimal_lines(points: Array) -> tuple[Array, float]:
-    """Best lines for the points so far and the margin they allow."""
+def _optimal_lines(points: Array, left_over: float) -> tuple[Array, float, Array]:
+    """Best lines for the points so far, the first one optimal; the margin they allow; the points that matter.
+
+    Lines within the gap left over are listed too: where the optimum is a whole family, cuts are wanted all along it.
+    """
     flat = flat_normal(points)
     if flat is not None:
-        return flat[None], np.pi / 2
-    normals, _, _ = facets(points)
-    return normals, line_margin(points, normals[0])
+        return flat[None], np.pi / 2, points
+    normals, _, corners = facets(points, within=min(left_over, 0.1), apart=0.5 * np.sqrt(left_over))
+    return normals, line_margin(points, normals[0]), points[corners]
 
 
 def _shortest_turn(now: Array, goal: Array) -> Array:
