@@ -36,9 +36,7 @@ def sedgewing_workbook() -> Any:
 
 
 @pytest.fixture
-def plain(
-    sedgewing_workbook: Any, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
-) -> Callable[..., dict[str, Any]]:
+def plain(sedgewing_workbook: Any, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Callable[..., dict[str, Any]]:
     """`plain("envelope", "hover", …)`: injected parameters by name, tables copied to inputs/ of the working folder."""
     monkeypatch.chdir(tmp_path)
     (tmp_path / "inputs").mkdir()

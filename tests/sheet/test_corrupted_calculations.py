@@ -14,7 +14,6 @@ from trunnion.sheet import derivation as derivation_sheet
 from trunnion.sheet import mount as mount_sheet
 from trunnion.sheet import sweep as sweep_sheet
 from trunnion.sheet.crosswalk import ConventionCrosswalk
-from trunnion.sheet.derivation_checks import show_checks
 from trunnion.symbolic.derivation import derive
 
 Plain = Callable[..., dict[str, Any]]
@@ -90,9 +89,8 @@ def test_a_wrong_convention_in_the_sweep_is_reported(
 def test_a_wrong_formula_of_the_derivation_is_reported(
     name: str, spoil: str, plain: Plain, disagreeing: Disagreeing
 ) -> None:
-    from trunnion.sheet import parameters
-
-    sound = derive(parameters.convention(plain("convention", "wing-last")["wing-last"]))
+    work = derivation_sheet.ConventionDerivation(convention=plain("convention", "wing-last")["wing-last"])
+    sound = derive(work.convention)
     entry = sound.expressions[name]
     if spoil == "sign":
         wrong = entry.copy().as_mutable()
@@ -102,7 +100,8 @@ def test_a_wrong_formula_of_the_derivation_is_reported(
         wrong = entry.T
     else:
         wrong = entry[:, ::-1]
-    show_checks(replace(sound, expressions={**sound.expressions, name: wrong}))
+    work.__dict__["derivation"] = replace(sound, expressions={**sound.expressions, name: wrong})
+    work.show_checks()
     assert disagreeing() != []
 
 

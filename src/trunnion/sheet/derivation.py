@@ -12,8 +12,8 @@ from trunnion.attitude.conventions import Convention
 from trunnion.attitude.words import degrees_text, number_text, singular_attitudes
 from trunnion.figures import charts, drawings
 from trunnion.sheet import display, parameters
-from trunnion.sheet.derivation_checks import show_checks
 from trunnion.sheet.describe import convention_rows
+from trunnion.symbolic.checking import confirmation, independent_check
 from trunnion.symbolic.derivation import Derivation, derive
 from trunnion.symbolic.statement import ConventionStatement, statement
 from trunnion.symbolic.steps import Step
@@ -146,36 +146,31 @@ class ConventionDerivation:
         self._show(_OTHER)
 
     def show_numbers(self) -> None:
-        """One worked triple through the derived formulas: matrix, quaternion, and back to the angles."""
-        angles = (
-            np.radians([10.0, -35.0, 50.0]) if not self.convention.sequence.repeated else np.radians([10.0, 35.0, 50.0])
-        )
-        stated = self.convention.stated_from_chain(angles)
-        matrix = self.derivation.value("matrix", stated)
-        quaternion = self.derivation.value("quaternion", stated).ravel()
-        back = self.derivation.angles(matrix)
-        names = self.convention.angle_names
+        """One worked attitude through the derived formulas, number beside scipy's number."""
         display.table(
             "tbl:worked",
-            ["quantity", "value"],
+            ["quantity", "derived", "scipy", "difference"],
             [
-                [
-                    "angles",
-                    ", ".join(f"{name} {degrees_text(float(a))}" for name, a in zip(names, stated, strict=True)),
-                ],
-                *([f"matrix, row {row + 1}", "  ".join(number_text(v, 6) for v in matrix[row])] for row in range(3)),
-                ["quaternion, scalar first", "  ".join(number_text(v, 6) for v in quaternion)],
-                [
-                    "angles read back",
-                    ", ".join(f"{name} {degrees_text(float(a))}" for name, a in zip(names, back, strict=True)),
-                ],
+                [name, number_text(ours, 9), number_text(theirs, 9), f"{difference:.1e}"]
+                for name, ours, theirs, difference in confirmation(self.derivation)
             ],
-            caption="A worked attitude",
+            caption="A worked attitude: matrix, quaternion (scalar first), and the angles read back from the matrix",
+            align="lrrr",
         )
 
     def show_checks(self) -> None:
         """The derived formulas against scipy, at ordinary attitudes and at both singular ones."""
-        show_checks(self.derivation)
+        for number, row in enumerate(independent_check(self.derivation), start=1):
+            display.check(
+                f"check:{number}",
+                row.what,
+                ours=row.ours,
+                theirs=row.theirs,
+                difference=row.difference,
+                tolerance=row.tolerance,
+                unit=row.unit,
+                library=row.library,
+            )
 
     def show_results(self) -> None:
         """What was proven, and where the convention is singular."""
