@@ -33,7 +33,12 @@ COMMANDS = (
     Entry("compute", "Run what is out of date, judge it, bind the package.", WORK),
     Entry("templates", "List the templates: what each takes and records.", WORK),
     Entry("schema", "Print the JSON Schema of workbook.yaml.", WORK),
+    Entry("impact", "Say what a change touches and why; nothing is run.", CHANGE),
+    Entry("compare", "Compare two revisions or folders, verdict flips first.", CHANGE),
+    Entry("revise", "Open the next revision.", CHANGE),
+    Entry("handover", "Hand a convention over with reference attitudes and source code.", HAND_OVER),
     Entry("bind", "Bind the package again from stored results.", HAND_OVER),
+    Entry("issue", "Freeze the revision.", RECORD),
 )
 
 
