@@ -72,7 +72,7 @@ def _quaternions(series: Series, names: Many[str]) -> list[Found]:
     for run in _runs(names, 4):
         values = np.stack([series.columns[name] for name in run], axis=-1)
         length = np.linalg.norm(values, axis=-1)
-        if len(values) == 0 or np.mean(np.abs(length - 1.0) < _UNIT) < _SHARE or np.ptp(values) < 0.1:
+        if len(values) == 0 or np.mean(np.abs(length - 1.0) < _UNIT) < _SHARE or not _varies(values):
             continue
         if found and set(found[-1].columns) & set(run):
             continue
@@ -82,6 +82,11 @@ def _quaternions(series: Series, names: Many[str]) -> list[Found]:
         ground = f"length 1 within {worst:.2g}; '{largest}' is the largest on average ({np.max(means):.3f}), which for "
         found.append(Found("quaternion", run, ground + "small motions is the scalar part"))
     return found
+
+
+def _varies(values: Array) -> bool:
+    """At least two of the columns change along the series (one row alone may be anything)."""
+    return len(values) == 1 or int(np.count_nonzero(np.ptp(values, axis=0) > 1e-6)) >= 2
 
 
 def _matrices(series: Series, names: Many[str]) -> list[Found]:

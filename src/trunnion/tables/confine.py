@@ -130,7 +130,7 @@ def _cause_of_death(code: int | None, limits: Limits) -> str:
 def _with_tail(limits: Limits, tail: str) -> str:
     last = tail.splitlines()[-1][:200] if tail else ""
     words = f"; its last words: {last}" if last else ""
-    return f"the file is damaged, hostile or too large for the limits ({limits}){words}"
+    return f"the file is damaged, hostile or too large for the limits ({limits}), which the statement may raise{words}"
 
 
 def _raise_refusal(refusal: Mapping[str, str], path: Path, limits: Limits) -> None:
@@ -140,7 +140,7 @@ def _raise_refusal(refusal: Mapping[str, str], path: Path, limits: Limits) -> No
         raise _fault(
             path,
             f"the reader was stopped: it asked for more than {space:.0f} MiB of address space",
-            "the file is a compression bomb, or larger than the limits set for its reader",
+            "the file is a compression bomb, or needs more: reader memory: 4 GB raises the limit",
         )
     if kind == "missing":
         raise _fault(path, f"reading this file needs the library '{words}'", refusal["remedy"])

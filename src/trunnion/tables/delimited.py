@@ -53,7 +53,12 @@ def read_layout(head: bytes, path: Path, separator: str) -> Layout:
         if line.startswith("#"):
             comments.append(line)
         elif line.strip():
-            names = next(csv.reader([line], delimiter=separator))
+            try:
+                names = next(csv.reader([line], delimiter=separator))
+            except csv.Error as err:
+                raise file_error(
+                    path, "the header line is no line of a table", "end each line with a line feed", number
+                ) from err
             return Layout(tuple(comments), number, tuple(name.strip() for name in names), offset)
     raise file_error(path, "there is no header line with column names", "the first line must name the columns")
 

@@ -66,10 +66,16 @@ def inspect_file(path: Path | str, limits: Limits | None = None) -> Inspection:
     _INSPECTORS[name](report, limits or Limits())
     for series in report.series:
         search(series)
-    report.series.sort(key=lambda series: (not any(found.what != "time" for found in series.found), series.name))
+    report.series.sort(key=_rank)
     if not report.spec_lines:
         report.spec_lines = _suggest(report)
     return report
+
+
+def _rank(series: Series) -> tuple[bool, bool, str]:
+    """Series with an attitude first, those that say so in their name before others."""
+    has_attitude = any(found.what != "time" for found in series.found)
+    return not has_attitude, "att" not in series.name.lower(), series.name
 
 
 def detect_format(path: Path) -> str:

@@ -49,16 +49,23 @@ def read_table(statement: TableStatement, root: Path | str, limits: Limits | Non
     Every question of the format must be answered by the statement or the file. Returns times (s) and unit quaternions,
     scalar first, body to reference, with notes, findings and the digest of the file. Raises TableError with all faults
     (row numbers and counts) for a file that can't be read as stated; rows are left out only under `accept_damaged`.
-    `limits` bound the child process that reads binary formats.
+    `limits` bound the child process that reads binary formats; without them the statement's own, else the default.
     """
     path = locate(statement.path, root)
     name = format_of(statement, path)
-    table = _READERS[name](statement, path, limits or Limits())
+    table = _READERS[name](statement, path, limits or limits_of(statement))
     if statement.sha256 not in (None, table.sha256):
         raise file_error(
             path, f"the file's SHA-256 is {table.sha256}", f"stated is {statement.sha256}: find the right file"
         )
     return table
+
+
+def limits_of(statement: TableStatement) -> Limits:
+    """The default limits of the reading process, raised or lowered as the statement says."""
+    default = Limits()
+    seconds = statement.reader_time or default.wall_seconds
+    return Limits(int(statement.reader_memory or default.address_space), seconds, seconds)
 
 
 def format_of(statement: TableStatement, path: Path) -> str:

@@ -64,7 +64,8 @@ class TableStatement:
     `body_to_reference` tells which way a quaternion or matrix maps (None: not stated); angles carry their meaning in
     `convention`. `topic` and `instance` choose one series in a log, `segment` (1, 2, …) one in a CCSDS message.
     `sha256`, where stated, is the
-    digest the file must have. `answers` holds the answers to the questions a format asks that no other field answers.
+    digest the file must have; `reader_memory` (bytes) and `reader_time` (s) raise the limits of the process that
+    reads a binary format. `answers` holds the answers to the questions a format asks that no other field answers.
     """
 
     path: str
@@ -91,6 +92,8 @@ class TableStatement:
     separator: str = ","
     norm_tolerance: float = 1e-3
     sha256: str | None = None
+    reader_memory: float | None = None
+    reader_time: float | None = None
     answers: Mapping[str, str] = field(default_factory=dict)
 
 
@@ -116,6 +119,8 @@ _KEYS = (
     "separator",
     "norm tolerance",
     "sha256",
+    "reader memory",
+    "reader time",
     "answers",
     "source",
 )
@@ -178,6 +183,8 @@ class _Reader:
             separator=self._text("separator") or ",",
             norm_tolerance=self._tolerance(),
             sha256=self._digest(),
+            reader_memory=self._quantity("reader memory", "data size"),
+            reader_time=self._quantity("reader time", "time"),
             answers=self._answers(),
         )
 

@@ -16,7 +16,7 @@ from trunnion.tables.columns import Columns, raw_origin
 from trunnion.tables.confine import Limits, read_confined
 from trunnion.tables.files import Seal, file_error, first_bytes, locate
 from trunnion.tables.questions import require_answers
-from trunnion.tables.reading import format_of
+from trunnion.tables.reading import format_of, limits_of
 from trunnion.tables.statements import TableStatement
 from trunnion.tables.table import AttitudeTable
 from trunnion.tables.ulog import open_log
@@ -43,7 +43,7 @@ def iter_chunks(
         raise file_error(path, f"format '{name}' is not read in parts", "use read_table")
     seal = Seal.of(path)
     before = Before()
-    for columns in _STREAMS[name](statement, path, rows, limits or Limits()):
+    for columns in _STREAMS[name](statement, path, rows, limits or limits_of(statement)):
         if before.origin is None:
             before = replace(before, origin=raw_origin(columns.time, statement.time_unit or "s"))
         part = assemble(columns, statement, path, seal.sha256, before)
