@@ -64,7 +64,7 @@ def compute(
     workbook: Any,
     *,
     output: Path | None = None,
-    only: Collection[str] = (),
+    only: Collection[str] | None = (),
     workers: int | None = None,
     allow_local: bool = False,
     approved: Collection[str] = (),
@@ -74,14 +74,14 @@ def compute(
 ) -> Computed:
     """Compute a loaded workbook into its revision folder.
 
-    Runs only what is out of date (of `only`, if given); every other body is kept byte for byte. A failed
-    calculation does not stop the others. `approved` are ids of deviations an approver has signed. `scratch`
-    names a folder beside the revisions for a trial. `then` is called at the end, while the folder is still
-    held: the package is bound there. Raises SpecError, TemplateError or StoreError before anything is run;
-    what a calculation raises is in `Computed.failed`.
+    Runs only what is out of date (of `only`, if given; nothing at all if it is None); every other body is
+    kept byte for byte. A failed calculation does not stop the others. `approved` are ids of deviations an
+    approver has signed. `scratch` names a folder beside the revisions for a trial. `then` is called at the
+    end, while the folder is still held: the package is bound there. Raises SpecError, TemplateError or
+    StoreError before anything is run; what a calculation raises is in `Computed.failed`.
     """
-    _require_known(workbook, only)
-    planned = plan(workbook, allow_local=allow_local, only=frozenset(only))
+    _require_known(workbook, only or ())
+    planned = plan(workbook, allow_local=allow_local, only=frozenset(only or ()))
     folder = store.revision_folder(workbook.root, scratch or workbook.document.revision, output)
     if scratch is None:
         _require_open(workbook, folder, planned)
@@ -135,9 +135,9 @@ def _copy_inputs(folder: RevisionFolder, planned: Sequence[Planned]) -> None:
 
 
 def _sort(
-    folder: RevisionFolder, planned: Sequence[Planned], only: Collection[str]
+    folder: RevisionFolder, planned: Sequence[Planned], only: Collection[str] | None
 ) -> tuple[dict[str, bytes], list[Planned]]:
-    """Bodies that stand, by calculation id, and the calculations to run."""
+    """Bodies that stand, by calculation id, and the calculations to run (none if `only` is None)."""
     checksums = {
         entry["key"]: entry.get("sha256") for entry in folder.read_state()["calculations"].values() if "key" in entry
     }
@@ -147,7 +147,7 @@ def _sort(
         content = folder.sound_body(entry.key, checksums.get(entry.key)) or _elsewhere(folder, entry.key)
         if content is not None:
             kept[entry.id] = content
-        elif not only or entry.id in only:
+        elif only is not None and (not only or entry.id in only):
             folder.set_aside(entry.key)
             due.append(entry)
     return kept, due

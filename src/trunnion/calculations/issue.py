@@ -54,8 +54,8 @@ def freeze(computed: Computed, *, date: str) -> Path:
     """
     workbook, folder = computed.workbook, computed.folder.path
     revision = workbook.document.revision
-    _require_date(date)
-    _require_issuable(computed)
+    require_issuable(workbook, date=date)
+    _require_complete(computed)
     target = writes.make_folder(issued_folder(workbook.root) / revision)
     results = canonical_bytes(computed.results)
     spec = workbook.text.encode("utf-8")
@@ -141,8 +141,9 @@ def _require_date(date: str) -> None:
         raise RecordError(f"'{date}' is no day", remedy="write it as 2031-05-28") from err
 
 
-def _require_issuable(computed: Computed) -> None:
-    workbook = computed.workbook
+def require_issuable(workbook: Any, *, date: str) -> None:
+    """RecordError if a workbook's revision can't be issued, whatever was computed."""
+    _require_date(date)
     revision = workbook.document.revision
     if is_issued(workbook.root, revision):
         raise RecordError(
@@ -150,6 +151,11 @@ def _require_issuable(computed: Computed) -> None:
         )
     if workbook.overrides:
         raise RecordError("a trial is never issued", remedy="put the values into the spec")
+
+
+def _require_complete(computed: Computed) -> None:
+    workbook = computed.workbook
+    revision = workbook.document.revision
     lacking = [
         f"{entry.planned.id} ({entry.error or entry.state})" for entry in computed.done if entry.state != COMPUTED
     ]

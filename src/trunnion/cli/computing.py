@@ -48,8 +48,8 @@ def once(
     with screen.progress(shown=look.chatty) as tell:
         run: Callable[..., Computed] = trials.trial if trial else compute
         computed = run(loaded, tell=tell, then=bind, **options)
-    screen.show_computed(computed, bound[0].html, as_json=look.as_json, quiet=look.quiet)
-    if computed.failed:
+    screen.show_computed(computed, bound[0], as_json=look.as_json, quiet=look.quiet)
+    if computed.failed or bound[0].error:
         return ExitCode.FAILED
     return ExitCode.OK if computed.satisfied else ExitCode.NOT_MET
 

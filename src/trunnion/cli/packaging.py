@@ -15,6 +15,7 @@ from trunnion.calculations.compute import FAILED, MISSING, Computed, Done
 from trunnion.calculations.digest import sha256, sha256_json
 from trunnion.calculations.impact import without_source
 from trunnion.calculations.judgement import Judgement
+from trunnion.errors import BindingError
 
 RECORD = "bound.json"
 _STATES = {FAILED: p.SheetState.FAILED, MISSING: p.SheetState.MISSING}
@@ -22,11 +23,12 @@ _STATES = {FAILED: p.SheetState.FAILED, MISSING: p.SheetState.MISSING}
 
 @dataclass(frozen=True)
 class Bound:
-    """The page to open, whether it was made just now, and what a careful reader should know of it."""
+    """The page to open, whether it was made just now, what a careful reader should know, or why it could not be."""
 
-    html: Path
+    html: Path | None
     fresh: bool
     warnings: tuple[str, ...] = ()
+    error: str = ""
 
 
 def package_input(computed: Computed, *, status: str = "draft", date: str = "") -> p.PackageInput:
@@ -75,7 +77,10 @@ def bind_package(computed: Computed, *, pdf: bool, status: str = "draft", date: 
 
     writes.remove(record)
     house = load_house(house_file) if house_file is not None else None
-    report = bind(package_input(computed, status=status, date=date), folder, pdf=pdf, house=house)
+    try:
+        report = bind(package_input(computed, status=status, date=date), folder, pdf=pdf, house=house)
+    except BindingError as err:  # results and verdicts stand without their package, and are shown first
+        return Bound(None, False, error=str(err))
     if not pdf:
         writes.remove(folder / "package.pdf")
     writes.write_json(record, {"key": key, "files": dict(report.digests)})

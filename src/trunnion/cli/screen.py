@@ -12,11 +12,13 @@ from rich.console import Console
 from rich.table import Table
 from rich.text import Text
 
+from trunnion.calculations.compare import Comparison, change_rows
 from trunnion.calculations.compute import Computed, Done
 from trunnion.calculations.judgement import Judgement
 from trunnion.calculations.run import Progress
 from trunnion.calculations.trial import Sweep
 from trunnion.calculations.verdicts import Verdict
+from trunnion.cli.packaging import Bound
 
 STYLES = {Verdict.MEETS: "green", Verdict.DOES_NOT_MEET: "bold red", Verdict.NOT_SHOWN: "yellow"}
 
@@ -45,10 +47,12 @@ def progress(*, shown: bool) -> Iterator[Tell | None]:
         yield tell
 
 
-def show_computed(computed: Computed, page: Path, *, as_json: bool, quiet: bool) -> None:
+def show_computed(computed: Computed, bound: Bound, *, as_json: bool, quiet: bool) -> None:
     """The end of `compute`: failures on stderr; the verdict table, or JSON; the page to open."""
     for entry in computed.failed:
         print(failure_text(entry), file=sys.stderr)
+    if bound.error:
+        print(f"The package could not be bound.\n{bound.error}", file=sys.stderr)
     if as_json:
         print(json.dumps(computed.results, indent=1, ensure_ascii=False))
         return
@@ -57,7 +61,10 @@ def show_computed(computed: Computed, page: Path, *, as_json: bool, quiet: bool)
     console = wide_console()
     console.print(_summary(computed))
     console.print(verdict_table(computed.judgements))
-    console.print(f"Open {page}", soft_wrap=True, highlight=False, markup=False)
+    for warning in bound.warnings:
+        console.print(f"note: {warning}", highlight=False, markup=False)
+    if bound.html is not None:
+        console.print(f"Open {bound.html}", soft_wrap=True, highlight=False, markup=False)
 
 
 def show_sweep(found: Sweep, files: list[Path]) -> None:
@@ -79,6 +86,24 @@ def show_sweep(found: Sweep, files: list[Path]) -> None:
         console.print("No verdict flips between these values.")
     for path in files:
         console.print(str(path), soft_wrap=True, highlight=False, markup=False)
+
+
+def show_comparison(found: Comparison, html: Path | None) -> None:
+    """The rows of a comparison, verdict flips first."""
+    console = wide_console()
+    console.print(f"{found.old} → {found.new}", highlight=False, markup=False)
+    rows = change_rows(found)
+    if not rows:
+        console.print("Nothing differs.")
+    table = Table(box=None, pad_edge=False, header_style="bold")
+    for heading in ("what", "before", "after", "effect"):
+        table.add_column(heading, overflow="fold")
+    for row in rows:
+        table.add_row(*(Text(cell) for cell in row))
+    if rows:
+        console.print(table)
+    if html is not None:
+        console.print(f"Open {html}", soft_wrap=True, highlight=False, markup=False)
 
 
 def wide_console() -> Console:
