@@ -187,6 +187,7 @@ class Track(Region):
             _require_rate(self.times, self.quaternions, self.max_rate, self.longest_gap)
 
 
+_CHUNK = 16384  # rows worked at once, so that they stay in cache
 _QUATERNION_TOLERANCE = 1e-5  # on |q|^2; single precision logs stay below 1e-6
 
 
@@ -242,11 +243,14 @@ def _require_rate(times: Array, quaternions: Array, rate: float | None, gap: flo
 
 def step_angles(quaternions: Array) -> Array:
     """Rotation angle (N-1,) rad between neighbouring unit quaternions (N, 4); q and -q are the same attitude."""
-    apart = quaternions[1:] - quaternions[:-1]
-    together = quaternions[1:] + quaternions[:-1]
-    far = np.einsum("ij,ij->i", apart, apart)
-    near = np.einsum("ij,ij->i", together, together)
-    return 4.0 * np.arctan2(np.sqrt(np.minimum(far, near)), np.sqrt(np.maximum(far, near)))
+    steps = np.empty(max(len(quaternions) - 1, 0))
+    for start in range(0, len(steps), _CHUNK):
+        part = np.ascontiguousarray(quaternions[start : start + _CHUNK + 1].T)
+        apart, together = part[:, 1:] - part[:, :-1], part[:, 1:] + part[:, :-1]
+        far, near = (apart * apart).sum(axis=0), (together * together).sum(axis=0)
+        ratio = np.minimum(far, near) / np.maximum(far, near)
+        steps[start : start + _CHUNK] = 4.0 * np.arctan(np.sqrt(ratio))
+    return steps
 
 
 def _row(bad: NDArray[np.bool_]) -> str:

@@ -138,8 +138,7 @@ def _search(rows: Rows, form: Array, lower: Array, blocks: NDArray[np.intp], pai
 
 def _middle_bounds(rows: Rows, u: Array, v: Array) -> Array:
     """Lower bounds (2 M, B) rad from the middle row of each block."""
-    cosines = _cosines(rows.quaternions[rows.middles].T, u, v)
-    angle = np.arccos(np.clip(cosines, -1.0, 1.0))
+    angle = np.arccos(np.clip(cosines(rows.quaternions[rows.middles].T, u, v), -1.0, 1.0))
     return np.concatenate([angle, np.pi - angle]) - rows.way
 
 
@@ -153,11 +152,11 @@ def _dense_bounds(rows: Rows, u: Array, v: Array) -> Array:
         if len(part) < (stop - start) * BLOCK:
             part = rows.quaternions[np.minimum(np.arange(start * BLOCK, stop * BLOCK), count - 1)]
         # row in block before block, so that maxima run along whole arrays instead of short rows
-        cosines = _cosines(part.reshape(-1, BLOCK, 4).transpose(2, 1, 0), u, v)
-        np.max(cosines, axis=1, out=highest[:, start:stop])
-        np.min(cosines, axis=1, out=lowest[:, start:stop])
-        first[:, start:stop] = cosines[:, 0]
-    after = np.concatenate([first[:, 1:], _cosines(rows.quaternions[-1:].T, u, v)], axis=1)
+        found = cosines(part.reshape(-1, BLOCK, 4).transpose(2, 1, 0), u, v)
+        np.max(found, axis=1, out=highest[:, start:stop])
+        np.min(found, axis=1, out=lowest[:, start:stop])
+        first[:, start:stop] = found[:, 0]
+    after = np.concatenate([first[:, 1:], cosines(rows.quaternions[-1:].T, u, v)], axis=1)
     near = np.arccos(np.clip(np.maximum(highest, after), -1.0, 1.0))
     far = np.arccos(np.clip(np.maximum(-lowest, -after), -1.0, 1.0))
     return np.concatenate([near, far]) - 0.5 * rows.widest
@@ -166,7 +165,7 @@ def _dense_bounds(rows: Rows, u: Array, v: Array) -> Array:
 _AXES_U, _AXES_V = np.repeat(np.eye(3), 3, axis=1), np.tile(np.eye(3), (1, 3))
 
 
-def _cosines(components: Array, u: Array, v: Array) -> Array:
+def cosines(components: Array, u: Array, v: Array) -> Array:
     """u . R v (M, ...) for quaternion components (4, ...): the nine matrix entries once, then one small product."""
     w, x, y, z = np.ascontiguousarray(components)
     ww, xx, yy, zz = w * w, x * x, y * y, z * z
