@@ -201,6 +201,78 @@ def test_clinometer_types_differ_off_level_and_agree_on_one_axis(body):
     np.testing.assert_allclose(tangent, [np.arctan2(np.tan(pitch), np.cos(roll)), -roll], atol=1e-14)
 
 
+@pytest.mark.parametrize(
+    ("plant", "said"),
+    [
+        (lambda v: v * [-1, 1], "tilt x inverted"),
+        (lambda v: v[:, ::-1], "tilts x and y exchanged"),
+        (np.degrees, "degrees taken for radians"),
+        (lambda v: v + np.radians(5), "a constant"),
+        (lambda v: np.stack([0.7 * np.cos(9 * v[:, 0]), v[:, 1]], axis=1), None),
+    ],
+)
+def test_clinometer_mistakes_are_named(body, plant, said):
+    mount = mounts.mount_from_axes(
+        {"x": "forward", "y": "starboard", "z": "down"},
+        body,
+        clinometer=mounts.TiltType.SINE,
+        tilt_axes=("x", "y"),
+        instruments=(mounts.Instrument.CLINOMETER,),
+    )
+    angles = [(0, 30, 0), (0, -20, 10), (0, 10, 40), (0, 15, -35)]
+    poses = [
+        bench.pose_from_attitude(f"pose {k}", Rotation.from_euler("ZYX", a, degrees=True).as_matrix())
+        for k, a in enumerate(angles)
+    ]
+    table = bench.bench_table(mount, poses=poses)
+    found = diagnosis.diagnose(table, bench.Channels(clinometer=plant(table.expected.clinometer)))
+    if said is None:
+        assert found.mistake is None
+    else:  # two tilts cannot tell an inverted channel from the sensor turned over: both are said
+        assert any(said in words for words in [found.mistake.words, *found.equally_good])
+
+
+def test_a_clinometer_of_the_other_type_is_named(body):
+    def table(kind):
+        mount = mounts.mount_from_axes(
+            {"x": "forward", "y": "starboard", "z": "down"},
+            body,
+            clinometer=kind,
+            tilt_axes=("x", "y"),
+            instruments=(mounts.Instrument.CLINOMETER,),
+        )
+        attitudes = Rotation.from_euler("ZYX", [[0, 30, 35], [0, -25, 40]], degrees=True).as_matrix()
+        return bench.bench_table(mount, poses=[bench.pose_from_attitude(str(k), R) for k, R in enumerate(attitudes)])
+
+    sine, tangent = table(mounts.TiltType.SINE), table(mounts.TiltType.TANGENT)
+    assert diagnosis.diagnose(sine, tangent.expected).mistake.kind == "tilt type"
+
+
+def test_a_star_trackers_azimuth_and_elevation_are_taken_back(body):
+    mount = mounts.mount_from_axes(
+        {"x": "forward", "y": "starboard", "z": "down"},
+        body,
+        boresight="-z",
+        instruments=(mounts.Instrument.STAR_TRACKER,),
+    )
+    table = bench.bench_table(mount)
+    entered = [
+        {
+            "row": pose.key,
+            "instrument": "star_tracker",
+            "values": np.nan_to_num(instruments.boresight_azimuth_elevation(mount, pose.R_lb)),
+        }
+        for pose in table.poses
+    ]
+    assert diagnosis.diagnose(table, bench.readings_from_rows(table, entered)).passed
+
+
+def test_every_row_reveals_some_mistakes_and_none_reveals_all(unit_on_end):
+    powers = diagnosis.row_powers(bench.bench_table(unit_on_end))
+    assert len(powers) == 9
+    assert all(0 < power.revealed < power.considered for power in powers)
+
+
 def test_magnetometer_and_star_tracker_columns(body):
     mount = mounts.mount_from_axes(
         {"x": "forward", "y": "starboard", "z": "down"},

@@ -135,21 +135,21 @@ def test_joint_rates_follow_a_turning_payload(rng):
 
 
 def test_rate_bounds_are_reached_and_never_passed(rng):
-    for axes in skewed(rng, 6):
+    for axes in skewed(rng, 4):
         chain = chain_of(axes)
         reach = joint_solutions.reachable_set(chain)
         lo = reach.nearest + 0.2 * (reach.farthest - reach.nearest)
         hi = reach.nearest + 0.9 * (reach.farthest - reach.nearest)
         bound = joint_rates.largest_joint_rates(chain, 1.0, lo, hi).rate
         best = np.zeros(3)
-        for _ in range(1500):
+        for _ in range(800):
             t = np.array([0.0, rng.uniform(-np.pi, np.pi), 0.0])
             A = chain.axes_at(t)
             d = np.arccos(np.clip(A[:, 0] @ A[:, 2], -1, 1))
             if lo <= d <= hi:
                 best = np.maximum(best, np.linalg.norm(np.linalg.inv(A), axis=1))  # worst payload rate of size 1
         assert np.all(best <= bound * (1 + 1e-12))
-        assert np.all(best > 0.9 * bound)
+        assert np.all(best > 0.85 * bound)
 
 
 def test_right_angled_rate_bound_is_one_over_the_sine_of_the_margin():

@@ -98,3 +98,13 @@ def test_growth_table_grows_as_one_over_sine():
     np.testing.assert_allclose([r.gain for r in rows], 1 / np.sin(np.radians([60, 30, 10, 1, 0.4])))
     assert all(row.certified >= row.linear for row in rows)
     assert rows[-1].certified == np.pi
+
+
+def test_turn_with_probability_holds_for_random_draws(rng):
+    C = np.diag([1.0, 1.0, 1.0]) * 1e-6
+    turn = misalignment.turn_with_probability(C, 0.95)
+    drawn = np.linalg.norm(rng.multivariate_normal(np.zeros(3), C, 20_000), axis=1)
+    assert np.mean(drawn <= turn) == pytest.approx(0.95, abs=0.006)
+    uneven = np.diag([1.0, 0.1, 0.1]) * 1e-6
+    drawn = np.linalg.norm(rng.multivariate_normal(np.zeros(3), uneven, 5000), axis=1)
+    assert np.mean(drawn <= misalignment.turn_with_probability(uneven, 0.95)) > 0.95

@@ -174,6 +174,28 @@ def test_time_in_a_sector_along_a_pass_that_crosses_it():
     assert 19 * DEG < passing.clearance < 20 * DEG
 
 
+def test_keeping_away_from_the_sun_along_a_pass():
+    """A line that moves at 1 deg/s straight through the Sun's cone of 5.1 deg is inside for 10.2 s."""
+    t = np.arange(0.0, 61.0)
+    track = passes.pass_from_table("level", t, t * DEG, np.zeros_like(t))
+    through = sectors.keep_away("Sun", track, passes.directions(30 * DEG, 0.0), 5.1 * DEG)
+    assert through.seconds == pytest.approx(10.2, abs=1.0)
+    assert through.clearance == 0.0
+    beside = sectors.keep_away("Sun", track, passes.directions(30 * DEG, 25 * DEG), 5 * DEG)
+    assert 19 * DEG < beside.clearance <= 20 * DEG
+    assert beside.seconds == 0.0
+
+
+def test_a_rolling_host_turns_the_demand_on_the_mount():
+    """A fixed target to the east at 0.3 rad seen from a rolling deck: its line moves at the roll rate."""
+    t = np.linspace(0, 10, 401)
+    roll = np.radians(10) * np.sin(t)
+    R_rg = Rotation.from_euler("X", roll[:, None]).as_matrix()
+    fixed = passes.pass_from_directions("star", t, np.tile(passes.directions(np.pi / 2, 0.3), (len(t), 1)))
+    seen = passes.pass_on_host(fixed, R_rg)
+    np.testing.assert_allclose(seen.line_of_sight_rate, np.abs(np.radians(10) * np.cos(t)), atol=2e-4)
+
+
 def test_sectors_hold_in_their_modes_only():
     transmit = sectors.Sector("crew", MAST.corners, modes=("transmit",))
     track = passes.circular_pass(780e3, 40 * DEG)

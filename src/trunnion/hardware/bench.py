@@ -235,9 +235,9 @@ def _tolerances(mount: Mount, expected: Channels, turns: Rows[Turn], accuracy: B
 def readings_from_rows(table: BenchTable, rows: Rows[dict[str, Any]]) -> Channels:
     """Filled-in readings put back into the table's order; what was not filled in stays nan.
 
-    Each row: {"row": pose or turn key, "instrument": name, "values": numbers in g or rad or rad/s}. A star
-    tracker gives its boresight direction on the bench. Unknown rows and instruments are errors naming those
-    that exist.
+    Each row: {"row": pose or turn key, "instrument": name, "values": numbers in g or rad or rad/s}. A star tracker
+    gives its boresight's azimuth and elevation (rad), or its direction (3,). Unknown rows and instruments are errors
+    naming those that exist.
     """
     blank = {name: np.full(values.shape, np.nan) for name, values in table.expected.items()}
     for entry in rows:
@@ -248,6 +248,8 @@ def readings_from_rows(table: BenchTable, rows: Rows[dict[str, Any]]) -> Channel
         if key not in keys:
             raise HardwareError(f"no row '{key}' for the {name}", remedy=f"its rows are {', '.join(keys)}")
         values: Array = np.asarray(entry.get("values"), dtype=float)
+        if name == "star_tracker" and values.shape == (2,):
+            values = instruments.direction_from_azimuth_elevation(values)
         if values.shape != blank[name].shape[1:]:
             raise HardwareError(f"row '{key}' of the {name} has {values.size} readings, expected {blank[name][0].size}")
         blank[name][keys.index(key)] = unit(values) if name == "star_tracker" else values

@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from trunnion.errors import HardwareError
+from trunnion.hardware.mounts import MountTolerance
 from trunnion.hardware.vectors import Array
 
 
@@ -85,6 +86,27 @@ class Term:
     spreads: tuple[Spread, ...]
     correlated: str | None = None
     counts_in: tuple[str, ...] = ("APE",)
+
+
+def mount_term(name: str, tolerance: MountTolerance, source: str, *, counts_in: tuple[str, ...] = ("APE",)) -> Term:
+    """The three-axis term (sensor axes) of a mount's tolerance: its covariance, else its per-axis or total bounds."""
+    if tolerance.covariance is not None:
+        spreads = tuple(gaussian(0.0, float(np.sqrt(v))) for v in np.diag(tolerance.covariance))
+    elif tolerance.per_axis is not None:
+        spreads = tuple(bounded(b) for b in tolerance.per_axis)
+    elif tolerance.total is not None:
+        spreads = (bounded(tolerance.total),) * 3
+    else:
+        raise HardwareError(f"budget term '{name}': the mount states no tolerance")
+    return Term(name, "mount", source, spreads, counts_in=counts_in)
+
+
+def timing_term(
+    name: str, relative_rate: Sequence[float], time_error: float, source: str, *, counts_in: tuple[str, ...] = ("APE",)
+) -> Term:
+    """The term of a time error (s) at the relative rates (rad/s) about each axis: bounds rate x time."""
+    spreads = tuple(bounded(timing_error(rate, time_error)) for rate in relative_rate)
+    return Term(name, "timing", source, spreads, counts_in=counts_in)
 
 
 @dataclass(frozen=True, eq=False)

@@ -47,6 +47,31 @@ def evidence(table: BenchTable, observed: Channels | None = None) -> Evidence:
     return Evidence(not unseen, unseen, tuple(_marks(table, read)))
 
 
+@dataclass(frozen=True)
+class RowPower:
+    """How many of the mistakes considered one row of one instrument reveals by itself."""
+
+    instrument: str
+    row: str
+    revealed: int
+    considered: int
+
+
+def row_powers(table: BenchTable) -> list[RowPower]:
+    """The revealing power of each row alone: low for a level pose, which is why it proves little."""
+    considered = list(mistakes(table))
+    found = []
+    for name, values in table.expected.items():
+        keys = [row.key for row in table.rows_of(name)]
+        for k, key in enumerate(keys):
+            alone = np.full(values.shape, np.nan)
+            alone[k] = values[k]
+            read = Channels(**{name: alone})
+            seen = sum(misfit(read, m.predicted, table.tolerance) > SEPARATION for m in considered)
+            found.append(RowPower(name, key, seen, len(considered)))
+    return found
+
+
 def _marks(table: BenchTable, read: Channels) -> Iterator[str]:
     ups = [p.up_b for k, p in enumerate(table.poses) if _row_read(read, k)]
     turns = [] if read.gyro is None else [k for k in range(len(table.turns)) if np.any(np.isfinite(read.gyro[k]))]

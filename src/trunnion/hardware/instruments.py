@@ -89,6 +89,12 @@ def boresight_azimuth_elevation(mount: Mount, R_lb: ArrayLike) -> Array:
     return np.stack([azimuth, np.arctan2(-line[..., 2], level)], axis=-1)
 
 
+def direction_from_azimuth_elevation(azimuth_elevation: ArrayLike) -> Array:
+    """Direction (..., 3) in north, east, down from azimuth (from north through east) and elevation (..., 2) rad."""
+    a, e = np.moveaxis(np.asarray(azimuth_elevation, dtype=float), -1, 0)
+    return np.stack([np.cos(e) * np.cos(a), np.cos(e) * np.sin(a), -np.sin(e)], axis=-1)
+
+
 def star_tracker(mount: Mount, R_lb: ArrayLike) -> Array:
     """The tracker's own attitude R_ls (..., 3, 3): its axes in the bench frame."""
     return np.asarray(R_lb, dtype=float) @ mount.R_bs

@@ -31,6 +31,20 @@ def vehicle_attitude_error(tolerance: MountTolerance) -> float | None:
     return tolerance.largest_turn
 
 
+def turn_with_probability(covariance: ArrayLike, probability: float) -> float:
+    """Turn (rad) a normal misalignment of this covariance (3, 3) rad^2 does not exceed with at least `probability`.
+
+    Square root of the largest variance times the chi-square point with three degrees of freedom: exact when the three
+    variances are equal, on the safe side otherwise.
+    """
+    from scipy.stats import chi2
+
+    if not 0.0 < probability < 1.0:
+        raise HardwareError(f"probability {probability:g} is not between 0 and 1")
+    largest = float(np.max(np.linalg.eigvalsh(np.asarray(covariance, dtype=float))))
+    return float(np.sqrt(largest * chi2.ppf(probability, 3)))
+
+
 def worst_angle_errors(turn: ArrayLike, margin: ArrayLike) -> Array:
     """Certified largest error (..., 3) rad of (first, middle, third) angle for a whole turn at distance `margin`.
 

@@ -16,6 +16,7 @@ import numpy as np
 
 from trunnion.attitude.rotations import rotation_angle
 from trunnion.hardware.bench import BenchTable, Channels, expected_channels
+from trunnion.hardware.mounts import TiltType
 from trunnion.hardware.properness import channels_in_words
 from trunnion.hardware.right_angles import (
     axes_in_words,
@@ -60,6 +61,7 @@ def mistakes(table: BenchTable) -> Iterator[Mistake]:
     yield from _typed_in_the_other_unit(table)
     yield from _transposed(table)
     yield from _other_seats(table)
+    yield from _tilts(table)
     yield from _exchanged_channels(table)
 
 
@@ -131,6 +133,29 @@ def _other_seats(table: BenchTable) -> Iterator[Mistake]:
             reseated(table, mount.R_bs @ P),
             3,
         )
+
+
+def _tilts(table: BenchTable) -> Iterator[Mistake]:
+    """A clinometer's two tilts exchanged, inverted, or formed the other way."""
+    mount, tilts = table.mount, table.expected.clinometer
+    if tilts is None or mount.tilt_axes is None or mount.clinometer is None:
+        return
+    one, other = mount.tilt_axes
+    for words, change in (
+        (f"tilt {one} inverted", np.diag([-1.0, 1.0])),
+        (f"tilt {other} inverted", np.diag([1.0, -1.0])),
+        ("both tilts inverted", -np.eye(2)),
+        (f"tilts {one} and {other} exchanged", np.array([[0.0, 1.0], [1.0, 0.0]])),
+    ):
+        kind = "swapped axes" if "exchanged" in words else "flipped sign"
+        yield Mistake(kind, words, map_channels(table.expected, _relabelled(("clinometer",), change)), 4)
+    turned = TiltType.TANGENT if mount.clinometer is TiltType.SINE else TiltType.SINE
+    yield Mistake(
+        "tilt type",
+        f"the clinometer forms its tilts the {turned.value} way, not the {mount.clinometer.value} way as declared",
+        expected_channels(replace(mount, clinometer=turned), table.poses, table.turns, table.field_l),
+        1,
+    )
 
 
 def _exchanged_channels(table: BenchTable) -> Iterator[Mistake]:

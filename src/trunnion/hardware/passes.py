@@ -12,6 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from trunnion.attitude.rotations import require_rotation
 from trunnion.errors import HardwareError
 from trunnion.hardware.gimbals import GimbalChain
 from trunnion.hardware.joint_rates import pointing_rates
@@ -82,6 +83,18 @@ def pass_from_directions(name: str, times: ArrayLike, direction_g: ArrayLike) ->
     if len(t) != len(v) or len(t) < 3 or np.any(np.diff(t) <= 0.0):
         return Pass(name, t, v, np.zeros_like(v))  # refused there with the reason
     return Pass(name, t, v, _differentiated(t, v))
+
+
+def pass_on_host(track: Pass, R_rg: ArrayLike) -> Pass:
+    """The same pass seen from a mount whose base turns with its host: R_rg (N, 3, 3) at the pass's times.
+
+    `track` holds directions in the reference frame (north, east, down); the result holds them in base components, and
+    its rates include the host's own turning.
+    """
+    R = require_rotation(np.asarray(R_rg, dtype=float), "the attitude of the base")
+    if R.shape != (len(track.times), 3, 3):
+        raise HardwareError(f"pass '{track.name}' has {len(track.times)} samples, the base attitude {R.shape}")
+    return pass_from_directions(track.name, track.times, np.einsum("nji,nj->ni", R, track.direction_g))
 
 
 def circular_pass(

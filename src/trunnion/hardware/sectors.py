@@ -173,6 +173,21 @@ def sectors_along_pass(
     return results
 
 
+def keep_away(name: str, track: Pass, other_g: ArrayLike, half_angle: float, *, error: float = 0.0) -> SectorResult:
+    """A moving forbidden cone, such as the Sun's: other_g (3,) or (N, 3) at the pass's times, half angle in rad.
+
+    Clearance is certified when the other direction, too, moves on great circles between the samples: both may come
+    nearer by half a step. Time inside is counted on samples joined linearly (sampled).
+    """
+    other = np.broadcast_to(unit(other_g, f"the direction of {name}"), track.direction_g.shape)
+    away = angle_between(track.direction_g, other)
+    step = angle_between(track.direction_g[1:], track.direction_g[:-1]) + angle_between(other[1:], other[:-1])
+    least = float(np.min(np.minimum(away[1:], away[:-1]) - step / 2.0)) - half_angle - error
+    inside = away < half_angle
+    share = 0.5 * (inside[1:].astype(float) + inside[:-1])
+    return SectorResult(name, max(least, 0.0), float(np.sum(share * np.diff(track.times))))
+
+
 def sectors_against_cone(
     sectors: Sequence[Sector], centre_g: ArrayLike, half_angle: float, *, mode: str | None = None
 ) -> list[SectorResult]:

@@ -72,6 +72,16 @@ class Survey:
     warnings: tuple[str, ...]
     difference: DrawingDifference | None
 
+    @property
+    def sigma(self) -> Array:
+        """Standard deviations (3,) rad of the turn along the principal axes of the covariance, smallest first."""
+        return np.sqrt(np.linalg.eigvalsh(self.covariance))
+
+    @property
+    def matrix_decimals(self) -> int:
+        """Decimals of the nine entries that the survey supports: an entry is off by about the turn itself."""
+        return supported_decimals(float(self.sigma[-1]))
+
 
 def survey_directions(
     in_host: ArrayLike, in_sensor: ArrayLike, sigma: ArrayLike, *, drawing: Mount | None = None

@@ -11,6 +11,7 @@ from scipy import stats
 
 from trunnion.errors import HardwareError
 from trunnion.hardware import budgets
+from trunnion.hardware.mounts import MountTolerance
 
 UNIT_OF_LAST_DIGIT = 0.0101  # arcsec; rows and totals print two decimals
 ARCSEC = np.radians(1 / 3600)
@@ -89,3 +90,15 @@ def test_a_limit_of_zero_is_an_error(budget, limit):
 def test_a_term_without_source_is_an_error():
     with pytest.raises(HardwareError, match="no source"):
         budgets.Budget(("x",), (budgets.Term("a", "mount", "", (budgets.bounded(1.0),)),))
+
+
+def test_mount_and_timing_terms_enter_as_bounds():
+    """A bound counts as a uniform spread in squares (annex C treats misalignment so) and fully in the arithmetic
+    sum.
+    """
+    mount = budgets.mount_term("plate", MountTolerance(total=5 * ARCSEC), "drawing")
+    timing = budgets.timing_term("clock", (0.01, 0.0, 0.02), 1e-3, "test report")
+    both = budgets.Budget(("x", "y", "z"), (mount, timing)).total()
+    np.testing.assert_allclose(both.sigma[1] / ARCSEC, 2.89, atol=0.005)
+    generous = budgets.Budget(("x", "y", "z"), (mount, timing)).total(n_sigma=3)
+    np.testing.assert_allclose(generous.arithmetic, 5 * ARCSEC + np.array([1e-5, 0, 2e-5]), rtol=1e-12)
