@@ -91,7 +91,8 @@ def derivation(rows: int = 12) -> dict[str, Any]:
     return notebook(
         markdown("| | |\n|---|---|\n| number | SW |", p.SHEET_TAG),
         markdown(
-            "# Margins of the wing-last convention\n\n## Purpose\n\nTo state how near lock comes: $m(R) \\ge 20^\\circ$."
+            "# Margins of the wing-last convention\n\n## Purpose\n\n"
+            "To state how near lock comes: $m(R) \\ge 20^\\circ$."
         ),
         code("from trunnion import sheet\nlimit = '20 deg'", injected_parameters=True),
         markdown("## Inputs"),
@@ -119,7 +120,8 @@ def derivation(rows: int = 12) -> dict[str, Any]:
             item(
                 "equation",
                 "eq:angles",
-                latex="\\begin{aligned}\\phi &= \\arcsin R_{32}\\\\ \\psi &= \\operatorname{atan2}(-R_{12}, R_{22})\\end{aligned}",
+                latex="\\begin{aligned}\\phi &= \\arcsin R_{32}\\\\ "
+                "\\psi &= \\operatorname{atan2}(-R_{12}, R_{22})\\end{aligned}",
                 caption="angles from the matrix",
             ),
             {"output_type": "stream", "name": "stdout", "text": "12 of 12 sequences\n"},

@@ -238,8 +238,8 @@ class Part:
     number: str = ""  # printed before the title ("C02" or "A")
     calculation: str = ""
     state: str = ""  # signature state printed on its pages
-    listed: bool = True
-    look: str = ""  # "cover" for the first page
+    look: str = ""  # "cover" for the first page, "contents" for lists, "paper" for what HTML shows elsewhere
+    flows: bool = False  # on paper, follows the part before on the same page
 
 
 @dataclass(frozen=True)

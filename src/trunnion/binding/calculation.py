@@ -68,7 +68,7 @@ def calculation_part(sheet: Sheet, package: PackageInput, words: Words, registry
         head.append(b.Callout("failed", title, (b.Paragraph(b.line(sheet.reason or "–")),)))
     addressed = [row for row in package.requirements if any(e.calculation == sheet.id for e in row.evidence)]
     if addressed:
-        head += [b.Heading(3, b.line(words("Requirements addressed"))), _addressed(addressed, words)]
+        head += [b.Heading(2, b.line(words("Requirements addressed"))), _addressed(addressed, words)]
     body: list[b.Block] = []
     if sheet.notebook is not None:
         reader = NotebookReader(name, strict)
@@ -77,7 +77,7 @@ def calculation_part(sheet: Sheet, package: PackageInput, words: Words, registry
         registry.warnings += reader.warnings
         registry.code += [(sheet.id, cell, source) for cell, source in reader.code]
     numbered = _Numbering(sheet, package, words, registry, name).number(_shifted(_gathered(body, words), sheet))
-    foot = [b.Heading(3, b.line(words("Sign-off"))), sign_off(sheet.signatures, words)]
+    foot = [b.Heading(2, b.line(words("Sign-off"))), sign_off(sheet.signatures, words)]
     return b.Part(
         anchor=sheet.id,
         title=sheet.title,
@@ -207,7 +207,7 @@ def _shifted(found: list[b.Block], sheet: Sheet) -> list[b.Block]:
         if isinstance(block, b.Heading):
             if index < 3 and block.level == 1 and plain(block.parts).strip().lower() == sheet.title.strip().lower():
                 continue
-            block = replace(block, level=min(block.level + (1 if block.level > 1 else 2), _DEEPEST))
+            block = replace(block, level=min(max(block.level, 2), _DEEPEST))
         out.append(block)
     return out
 
@@ -274,7 +274,7 @@ class _Numbering:
             headers=(*table.headers, b.line(self.words("Requirement"))),
             rows=tuple(rows),
             align=table.align + "l",
-            widths=(*table.widths, 1.7) if table.widths else (),
+            widths=(*table.widths, 2) if table.widths else (),
         )
 
 

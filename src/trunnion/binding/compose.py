@@ -60,7 +60,7 @@ class _Composer:
         parts = [part for part in (*front, *middle, *calculations, *back) if part is not None]
         state = self.state()
         parts = [replace(part, state=part.state or state) for part in parts]
-        parts = [resolve(part, self.registry) for part in parts]
+        parts = [_stepped(resolve(part, self.registry)) for part in parts]
         return b.NeutralDocument(
             title=doc.title,
             number=doc.number,
@@ -145,11 +145,11 @@ class _Composer:
         rows += [(label, b.line(doc.extra.get(key, "–"))) for key, label in self.house.fields]
         blocks: list[b.Block] = [b.Grid(tuple(rows), columns=2), self.overall()]
         blocks += self.without_result()
-        blocks += [b.Heading(3, b.line(w("Sign-off"))), sign_off(self.package.signatures, w)]
+        blocks += [b.Heading(2, b.line(w("Sign-off"))), sign_off(self.package.signatures, w)]
         cautions = (w.caution(self.package.comparison_slack), *self.package.cautions)
         body = tuple(b.Paragraph(self.prose(text, "cautions")) for text in cautions)
         blocks.append(b.Callout("caution", w("Caution"), body))
-        return b.Part("cover", doc.title, tuple(blocks), listed=False, look="cover")
+        return b.Part("cover", doc.title, tuple(blocks), look="cover")
 
     def overall(self) -> b.Block:
         """The verdict of the package in one line: how many of the requirements that count are what."""
@@ -183,15 +183,15 @@ class _Composer:
         return b.Part("history", self.words("Revision history"), (table,))
 
     def contents(self) -> b.Part:
-        return b.Part("contents", self.words("Contents"), (b.Contents("sections"),), listed=False, look="contents")
+        return b.Part("contents", self.words("Contents"), (b.Contents("sections"),), look="contents", flows=True)
 
     def lists(self) -> b.Part:
         return b.Part(
             "lists",
             self.words("Figures and tables"),
             (b.Contents("figures"), b.Contents("tables")),
-            listed=False,
             look="contents",
+            flows=True,
         )
 
     def summary(self, calculations: list[b.Part]) -> b.Part:
@@ -199,13 +199,13 @@ class _Composer:
         blocks: list[b.Block] = []
         for label, text in (("Question", summary.question), ("Answer", summary.answer)):
             if text:
-                blocks += [b.Heading(3, b.line(w(label))), b.Paragraph(self.prose(text, f"summary, {label.lower()}"))]
+                blocks += [b.Heading(2, b.line(w(label))), b.Paragraph(self.prose(text, f"summary, {label.lower()}"))]
         if self.package.requirements:
-            blocks += [b.Heading(3, b.line(w("Verdicts"))), self.verdicts()]
+            blocks += [b.Heading(2, b.line(w("Verdicts"))), self.verdicts()]
         if summary.margins:
             rows = tuple(tuple(b.line(cell) for cell in row) for row in summary.margins)
             table = b.Table(self.heads("What", "Value", "Where"), rows, "lrl", widths=(4, 2, 4))
-            blocks += [b.Heading(3, b.line(w("Worst margins"))), table]
+            blocks += [b.Heading(2, b.line(w("Worst margins"))), table]
         picture = self.picture(calculations)
         return b.Part("summary", w("Summary"), (*blocks, *picture), number=self.numbered())
 
@@ -253,7 +253,7 @@ class _Composer:
             caption=b.line(self.words("Requirement matrix")),
             anchor="tbl/matrix",
             number="1",
-            widths=(3.6, 2.7, 2.1, 2.0, 1.2, 1.3),
+            widths=(3.1, 2.4, 2.0, 2.3, 1.9, 1.2),
             row_anchors=tuple(anchors),
             row_classes=tuple(classes),
             look="matrix",
@@ -295,7 +295,7 @@ class _Composer:
             blocks.append(b.Grid(tuple(rows)))
             if decision.alternatives:
                 blocks.append(self.alternatives(decision.alternatives))
-        return b.Part("decisions", w("Decisions"), tuple(blocks), number=self.numbered())
+        return b.Part("decisions", w("Decisions"), tuple(blocks), number=self.numbered(), flows=True)
 
     def alternatives(self, found: tuple) -> b.Table:
         rows = []
@@ -335,7 +335,7 @@ class _Composer:
             table = b.Table(self.heads(*heads), cells, "l" * len(heads), widths=widths)
             blocks.append(table if rows else b.Paragraph(b.line(w("None."))))
         title = w("Assumptions, findings and deviations")
-        return b.Part("standing", title, tuple(blocks), number=self.numbered())
+        return b.Part("standing", title, tuple(blocks), number=self.numbered(), flows=True)
 
     # -- back --------------------------------------------------------------------------------------------
     def statements(self) -> b.Part | None:
@@ -355,7 +355,7 @@ class _Composer:
         rows = tuple(tuple(b.line(x) for x in (c.what, c.before, c.after, c.effect)) for c in self.package.changes)
         table = b.Table(self.heads("What", "Before", "After", "Effect"), rows, "llll", widths=(2.4, 2.4, 2.4, 3))
         title = f"{self.words('Changes against revision')} {self.package.document.supersedes or '–'}"
-        return b.Part("changes", title, (table,), number=self.numbered())
+        return b.Part("changes", title, (table,), number=self.numbered(), flows=bool(self.package.statements))
 
     def appendices(self) -> list[b.Part]:
         makers: tuple[Callable[[], b.Part | None], ...] = (
@@ -422,7 +422,7 @@ class _Composer:
         rows = (*terms(self.words.language), *self.package.glossary)
         body = tuple(((b.Marked("strong", b.line(term)),), b.line(meaning)) for term, meaning in rows)
         table = b.Table(self.heads("Term", "Meaning"), body, "ll", widths=(2.4, 7.6))
-        return b.Part("glossary", self.words("Glossary and notation"), (table,), number=self.lettered())
+        return b.Part("glossary", self.words("Glossary and notation"), (table,), number=self.lettered(), flows=True)
 
     def map(self) -> b.Part:
         language = self.words.language
@@ -430,7 +430,21 @@ class _Composer:
         table = b.Table(self.heads("Usual content", "Stands in"), rows, "ll", widths=(4, 6))
         title = self.words("Where the usual contents of a controlled calculation stand")
         note = b.Paragraph(b.line(CONTENTS_NOTE[language]), "note")
-        return b.Part("map", title, (table, note), number=self.lettered())
+        return b.Part("map", title, (table, note), number=self.lettered(), flows=True)
+
+
+def _stepped(part: b.Part) -> b.Part:
+    """Headings that never skip a level (a part opens level 1), as readers of structure expect."""
+    before = 1
+
+    def step(block: b.Block) -> b.Block:
+        nonlocal before
+        if not isinstance(block, b.Heading):
+            return block
+        before = min(block.level, before + 1)
+        return replace(block, level=before)
+
+    return replace(part, blocks=tuple(b.mapped(block, step) for block in part.blocks))
 
 
 def _attachment(sheet: Sheet) -> b.Attachment:

@@ -14,11 +14,12 @@ from trunnion.binding import blocks as b
 from trunnion.binding.calculation import unlinked
 from trunnion.binding.faces import face_rules, subset_woff
 from trunnion.binding.house import House
+from trunnion.binding.maths import Formula
 from trunnion.binding.maths.mathml import mathml
 from trunnion.binding.maths.symbols import styled
 from trunnion.binding.package import Verdict
 from trunnion.binding.words import Words
-from trunnion.glyphs import FALLBACK_FACE, visible_text
+from trunnion.glyphs import FALLBACK_FACE, can_show, visible_text
 
 POLICY = (
     "default-src 'none'; style-src 'unsafe-inline'; img-src data:; font-src data:; base-uri 'none'; form-action 'none'"
@@ -36,7 +37,9 @@ def write_html(document: b.NeutralDocument, house: House, missing: Counter[str])
     """The whole page as text; `missing` counts characters shown by their code points."""
     writer = _Writer(document, house, Words(document.language), missing)
     body = writer.page()
-    style = face_rules(_printing(_text_characters(body)), _printing(_maths_characters(body)))
+    maths = _printing(_maths_characters(body))
+    text = _printing(_text_characters(body)) | {char for char in maths if not can_show(char, maths=True)}
+    style = face_rules(text, maths)
     css = (Path(__file__).with_name("data") / "page.css").read_text("utf-8")
     title = writer.text(f"{document.number} {document.revision}: {document.title}")
     page = "@page{size:" + ("A4" if house.paper == "A4" else "letter") + "}"
@@ -133,9 +136,9 @@ class _Writer:
             title = f'<h2 id="h-lists">{self.text(part.title)}</h2>'
             return f'<section id="lists" aria-labelledby="h-lists">{title}{_LISTS}</section>'
         level = 1 if part.look == "cover" else 2
-        word = f"{self.words('Appendix')} " if part.number.isalpha() else ""
-        number = f'<span class="n">{word}{self.text(part.number)}</span> ' if part.number else ""
+        number = f'<span class="n">{self.text(part.number)}</span> ' if part.number else ""
         kind = f"<p class='kind'>{self.words('Calculation package')}</p>" if part.look == "cover" else ""
+        kind = f"<p class='kind'>{self.words('Appendix')}</p>" if part.number.isalpha() else kind
         kind = self.logo() + kind if part.look == "cover" else kind
         anchor = self.id(part.anchor)
         head = f'{kind}<h{level} id="h-{anchor}">{number}{self.text(part.title)}</h{level}>'
@@ -150,6 +153,10 @@ class _Writer:
         words = self.text(self.house.organization or "logo")
         return f'<img class="logo" alt="{words}" src="{_data_uri(media, data)}">'
 
+    def maths(self, formula: Formula, *, display: bool) -> str:
+        self.missing.update(formula.missing)
+        return mathml(formula, display=display)
+
     # -- lines -------------------------------------------------------------------------------------------
     def line(self, parts: b.Line) -> str:
         return "".join(self.inline(part) for part in parts)
@@ -158,7 +165,7 @@ class _Writer:
         if isinstance(part, b.Text):
             return self.text(part.text)
         if isinstance(part, b.InlineMath):
-            return mathml(part.formula, display=False)
+            return self.maths(part.formula, display=False)
         if isinstance(part, b.Break):
             return "<br>"
         if isinstance(part, b.Badge):
@@ -212,7 +219,7 @@ class _Writer:
         shown = block.formula.tag or block.number
         number = f'<span class="eqn">({self.text(shown)})</span>' if shown else ""
         caption = f'<p class="eqc">{self.line(block.caption)}</p>' if block.caption else ""
-        body = mathml(block.formula, display=True)
+        body = self.maths(block.formula, display=True)
         return f'<div class="equation"{anchor}><div class="eqb" tabindex="0">{body}</div>{number}</div>{caption}'
 
     def table(self, block: b.Table) -> str:

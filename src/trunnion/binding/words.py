@@ -152,7 +152,7 @@ _GERMAN = {
     "Table": "Tabelle",
     "Eq.": "Gl.",
     "repeated from": "wiederholt aus",
-    "page": "Seite",
+    "p.": "S.",
     "open": "offen",
     "open findings": "offene Befunde",
     "open assumptions": "offene Annahmen",

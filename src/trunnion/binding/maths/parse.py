@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import re
+from collections import Counter
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 from trunnion.binding.maths import symbols as s
 from trunnion.binding.maths import tree as t
+from trunnion.glyphs import can_show, visible_text
 
 _TOKEN = re.compile(r"\\[A-Za-z]+\*?|\\.|[0-9]+(?:\.[0-9]+)?|\.[0-9]+|%[^\n]*\n?|\s+|.", re.DOTALL)
 _DISPLAY = {"equation", "equation*", "displaymath", "math"}
@@ -42,14 +44,16 @@ class Formula:
     tag: str = ""
     label: str = ""
     numbered: bool = True
+    missing: tuple[str, ...] = ()  # characters of its words shown by their code points
 
 
 def read_formula(latex: str) -> Formula:
     """Read one formula (with or without its `$`, `$$`, `\\[` marks); raises `FormulaError`."""
     source = _without_marks(latex)
-    parser = _Parser(source)
+    missing: Counter[str] = Counter()
+    parser = _Parser(source, missing)
     body = parser.whole()
-    return Formula(body, source, parser.tag, parser.label, parser.numbered)
+    return Formula(body, source, parser.tag, parser.label, parser.numbered, tuple(sorted(missing.elements())))
 
 
 def _without_marks(latex: str) -> str:
@@ -69,7 +73,8 @@ def _without_marks(latex: str) -> str:
 class _Parser:
     """Recursive descent over the tokens of one formula."""
 
-    def __init__(self, source: str) -> None:
+    def __init__(self, source: str, missing: Counter[str]) -> None:
+        self.missing = missing
         self.tokens: list[str] = _TOKEN.findall(source)
         self.at = 0
         self.depth = 0
@@ -233,7 +238,7 @@ class _Parser:
         for table, kind in ((s.BINARY, "bin"), (s.RELATION, "rel"), (s.ORDINARY, "ord"), (s.INNER, "inner")):
             if char in table.values():
                 return t.Symbol(char, kind)
-        if char.isalpha():
+        if char.isalpha() and can_show(char, maths=True):
             return t.Letter(char, "rm")
         raise FormulaError(f"the character {char!r} (U+{ord(char):04X}) in a formula", "use its command")
 
@@ -298,9 +303,9 @@ class _Parser:
         parts: list[t.Node] = []
         for index, piece in enumerate(re.split(r"(?<!\\)\$", raw)):
             if index % 2:
-                parts.append(_Parser(piece).whole())
+                parts.append(_Parser(piece, self.missing).whole())
             elif piece:
-                parts.append(t.Words(_plain_text(piece), variant))
+                parts.append(t.Words(visible_text(_plain_text(piece), self.missing), variant))
         return parts[0] if len(parts) == 1 else t.Row(tuple(parts))
 
     def delimiter(self) -> str:
