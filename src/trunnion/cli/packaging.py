@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime
 import json
 from dataclasses import dataclass
 from pathlib import Path
@@ -122,13 +123,23 @@ def _stands(folder: Path, record: Path, key: str) -> bool:
         return False
 
 
+def stated_date(workbook: Any) -> str:
+    """The date the spec gives its revision, in title block or revision table; "" where it gives none.
+
+    Without one a draft bears the day on which this content was first bound; it is not bound again for another day.
+    """
+    document = workbook.document
+    rows = [row.date for row in workbook.revisions if row.revision == document.revision]
+    return document.date or next((date for date in rows if date), "") or ""
+
+
 def _document(computed: Computed, status: str, date: str) -> p.Document:
     document = computed.workbook.document
     return p.Document(
         number=document.number,
         title=document.title,
         revision=document.revision,
-        date=date or document.date or "not dated",
+        date=date or stated_date(computed.workbook) or datetime.date.today().isoformat(),
         status=status,
         supersedes=document.supersedes or "",
         extra=dict(document.fields or {}),
