@@ -216,6 +216,28 @@ def test_the_host_is_read_back_from_a_stabilised_platform(rng, random_rotations)
         np.testing.assert_allclose(back, R_rb, atol=5e-15, rtol=0)
 
 
+def test_certified_clearance_comes_from_two_directions_only(random_rotations):
+    chain = chain_of(np.eye(3)[[2, 0, 1]], R_gp0=random_rotations(1)[0])
+    R_rb, R_rp, R_bg = random_rotations(40), random_rotations(1)[0], random_rotations(1)[0]
+    found = platforms.holding_solutions(chain, R_rb, R_rp, R_bg=R_bg)
+    in_host, in_reference = platforms.clearance_directions(chain, R_rp, R_bg=R_bg)
+    angle = np.arccos(np.clip((R_rb @ in_host) @ in_reference, -1, 1))
+    np.testing.assert_allclose(found.outer_axes_angle, angle, atol=1e-7)
+    over = joint_solutions.clearance_over(chain, float(angle.min()), float(angle.max()))
+    assert over.least == pytest.approx(float(found.clearance.min()), abs=1e-7)
+    assert over.largest >= float(found.clearance.max()) - 1e-7
+
+
+def test_two_axes_hold_a_level_platform_but_not_its_heading():
+    """A deck at heading 40, pitch 7, roll -12 deg: pitch inside roll keeps the deck's own heading exactly."""
+    deck = Rotation.from_euler("ZYX", np.radians([40, 7, -12])).as_matrix()
+    chain = chain_of([[1, 0, 0], [0, 1, 0]])
+    level = Rotation.from_euler("Z", np.radians(40)).as_matrix()
+    assert platforms.held_heading_error(chain, np.radians([12, -7]), deck, level) < 1e-14
+    north = platforms.held_heading_error(chain, np.radians([12, -7]), deck, np.eye(3))
+    assert np.degrees(north) == pytest.approx(40, abs=1e-12)
+
+
 def test_encoder_steps_and_crooked_axes_bound_the_platforms_error(rng):
     step = np.radians(0.1)
     joints = tuple(Joint(f"a{k}", a, encoder_step=step) for k, a in enumerate(np.eye(3)[[2, 1, 0]]))

@@ -160,3 +160,9 @@ def test_rep_103_optical_frame_as_axis_words():
     mount = mounts.mount_from_axes({"z": "forward", "x": "right", "y": "down"}, flu)
     np.testing.assert_array_equal(mount.R_bs, [[0, 0, 1], [-1, 0, 0], [0, -1, 0]])
     np.testing.assert_allclose(np.abs(mounts.mount_quaternion(mount)), [0.5, 0.5, 0.5, 0.5], atol=1e-15, rtol=0)
+
+
+def test_a_mount_on_a_left_handed_host_is_refused():
+    chart = Frame("chart", ("starboard", "forward", "down"), left_handed=True)
+    with pytest.raises(HardwareError, match="left-handed frame 'chart'"):
+        mounts.mount_from_axes({"x": "forward", "y": "starboard"}, chart)

@@ -14,7 +14,7 @@ from numpy.typing import ArrayLike
 
 from trunnion.errors import HardwareError
 from trunnion.hardware.gimbals import GimbalChain
-from trunnion.hardware.joint_solutions import _triangle_angles, clearance_over
+from trunnion.hardware.joint_solutions import clearance_over, triangle_angles
 from trunnion.hardware.vectors import Array, dot, unit
 
 
@@ -101,7 +101,7 @@ def largest_joint_rates(
 
 def _largest_gains(chain: GimbalChain, nearest: float, farthest: float, boresight_p: ArrayLike) -> tuple[Array, float]:
     """Largest joint rate per unit of payload rate (3,), and the largest sin d, over the range of d."""
-    l12, l23 = _triangle_angles(chain, boresight_p)
+    l12, l23 = triangle_angles(chain, boresight_p)
     if clearance_over(chain, nearest, farthest, boresight_p=boresight_p).least <= 0.0:
         return np.full(3, np.inf), 1.0
     c, s = np.cos(l12) * np.cos(l23), np.sin(l12) * np.sin(l23)
@@ -129,7 +129,7 @@ def clearance_needed(chain: GimbalChain, rate: float, *, boresight_p: ArrayLike 
 
     Right neighbour angles: asin(rate / limit). Otherwise from sin V. pi/2 or more means the limit never suffices.
     """
-    l12, l23 = _triangle_angles(chain, boresight_p)
+    l12, l23 = triangle_angles(chain, boresight_p)
     limits = chain.limits("rate")
     sines = [rate / (limits[0] * np.sin(l12))]
     if len(chain.joints) == 3:

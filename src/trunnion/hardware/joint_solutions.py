@@ -197,12 +197,15 @@ class ReachableSet:
 
 def reachable_set(chain: GimbalChain, *, boresight_p: ArrayLike = (1.0, 0.0, 0.0)) -> ReachableSet:
     """Reachable range of d, the unreachable cones, and the share of attitudes reached (axes only, no travel limits)."""
-    l12, l23 = _triangle_angles(chain, boresight_p)
+    l12, l23 = triangle_angles(chain, boresight_p)
     nearest, farthest = abs(l12 - l23), np.pi - abs(np.pi - l12 - l23)
     return ReachableSet(nearest, farthest, nearest, np.pi - farthest, float(np.sin(l12) * np.sin(l23)))
 
 
-def _triangle_angles(chain: GimbalChain, boresight_p: ArrayLike) -> tuple[float, float]:
+def triangle_angles(chain: GimbalChain, boresight_p: ArrayLike) -> tuple[float, float]:
+    """The two sides l12 and l23 (rad) the chain fixes: outer to middle axis, middle axis to the inner one or the
+    line.
+    """
     axes = chain.axes
     third = axes[2] if len(axes) >= 3 else chain.R_gp0 @ unit(boresight_p)
     return float(angle_between(axes[0], axes[1])), float(angle_between(axes[1], third))
@@ -230,7 +233,7 @@ def clearance_over(
             f"the angle to the outer axis cannot range from {np.degrees(nearest):g} to {np.degrees(farthest):g} deg",
             remedy="0 <= nearest <= farthest <= 180 deg",
         )
-    l12, l23 = _triangle_angles(chain, boresight_p)
+    l12, l23 = triangle_angles(chain, boresight_p)
     low, high = abs(l12 - l23), np.pi - abs(np.pi - l12 - l23)
     ends = [min(d - low, high - d) for d in (nearest, farthest)]
     best = min(max((low + high) / 2.0, nearest), farthest)

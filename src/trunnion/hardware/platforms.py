@@ -13,6 +13,7 @@ from itertools import product
 import numpy as np
 from numpy.typing import ArrayLike
 
+from trunnion.attitude.rotations import rotation_angle
 from trunnion.errors import HardwareError
 from trunnion.hardware.gimbals import GimbalChain
 from trunnion.hardware.joint_solutions import Solutions, attitude_solutions, pointing_solutions
@@ -86,20 +87,24 @@ def axis_misalignment(chain: GimbalChain, angles: ArrayLike, crookedness: ArrayL
     return AxisMisalignment(np.sum(parts, axis=-1), parts)
 
 
-@dataclass(frozen=True, eq=False)
-class Clocking:
-    """What a two-axis chain does to the platform's heading while it levels: angle (...) rad from the wanted
-    attitude.
-    """
-
-    angle: Array
-
-
 def held_heading_error(
     chain: GimbalChain, angles: ArrayLike, R_rb: ArrayLike, R_rp: ArrayLike, *, R_bg: ArrayLike | None = None
-) -> Clocking:
-    """Rotation angle between the platform a two-axis chain gives and the one wanted, R_rp (..., 3, 3)."""
-    from trunnion.attitude.rotations import rotation_angle
+) -> Array:
+    """Rotation angle (...) rad between the platform a two-axis chain gives and the one wanted, R_rp (..., 3, 3).
 
-    wanted = required_attitude(R_rb, R_rp, R_bg)
-    return Clocking(rotation_angle(chain.attitude(angles), wanted))
+    A level platform on two axes turns with its host in heading, and a little more as the host tilts.
+    """
+    return rotation_angle(chain.attitude(angles), required_attitude(R_rb, R_rp, R_bg))
+
+
+def clearance_directions(chain: GimbalChain, R_rp: ArrayLike, *, R_bg: ArrayLike | None = None) -> tuple[Array, Array]:
+    """The host direction (3,) and the reference direction (3,) whose angle is d of `clearance_over`, three axes.
+
+    With the platform held at R_rp (3, 3), d is the angle between the outermost axis, fixed in the host, and the
+    innermost one, fixed in the reference: the direction clearance of the host's region between these two, certified,
+    gives the certified clearance of the chain.
+    """
+    if len(chain.joints) != 3:
+        raise HardwareError(f"chain '{chain.name}' has {len(chain.joints)} axes; this is for three")
+    outer = chain.axes[0] if R_bg is None else np.asarray(R_bg, dtype=float) @ chain.axes[0]
+    return outer, np.asarray(R_rp, dtype=float) @ chain.R_gp0.T @ chain.axes[2]

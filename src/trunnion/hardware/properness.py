@@ -125,6 +125,11 @@ def require_proper(
     nearest rotation is taken when every entry lies within one unit of the last printed digit of it, and the
     measure says what was done. Raises HardwareError naming the cure.
     """
+    if host.left_handed:
+        raise HardwareError(
+            f"{what} is stated in the left-handed frame '{host.name}'",
+            remedy="state it in the right-handed partner of that frame",
+        )
     M = as_matrix(matrix, what)
     measure = properness(M, host, sensor_axes, what=what)
     if measure.mirrored:

@@ -12,6 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike
 
+from trunnion.attitude.rotations import about
 from trunnion.errors import HardwareError
 from trunnion.hardware.gimbals import GimbalChain
 from trunnion.hardware.joint_solutions import Solutions, attitude_solutions
@@ -34,8 +35,6 @@ def inner_solutions(chain: GimbalChain, R_gp: ArrayLike, outer: ArrayLike) -> So
 
 
 def _outer_turn(chain: GimbalChain, outer: ArrayLike) -> Array:
-    from trunnion.attitude.rotations import about
-
     return about(chain.joints[0].axis, np.asarray(outer, dtype=float))
 
 
