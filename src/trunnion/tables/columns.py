@@ -45,16 +45,22 @@ def seconds(time: NDArray[np.generic], unit: str, origin: float | int | None = N
     scale = UNITS[unit].to_inside(1.0)
     if time.dtype.kind == "M":
         time, scale = time.astype("datetime64[ns]").astype(np.int64), 1e-9
-    step = 0.0
-    if time.dtype.kind == "f":
-        finite = time[np.isfinite(time)]
-        largest = float(np.max(np.abs(finite), initial=0.0))
-        step = float(np.spacing(np.asarray(largest, dtype=time.dtype))) * scale
     zero = raw_origin(time, unit) if origin is None else origin
-    if time.dtype.kind in "iu":
-        shifted = (time.astype(np.int64) - np.int64(zero)).astype(float)
-        return shifted * scale, float(zero) * scale, 0.0
+    if time.dtype.kind in "iu" and len(time):
+        least, largest = int(time.min()) - int(zero), int(time.max()) - int(zero)
+        if max(-least, largest) < 2**62:  # else the difference may wrap round: floats then
+            return (time.astype(np.int64) - np.int64(zero)).astype(float) * scale, float(zero) * scale, 0.0
+    step = _clock_step(time) * scale
     return (time.astype(float) - float(zero)) * scale, float(zero) * scale, step
+
+
+def _clock_step(time: NDArray[np.generic]) -> float:
+    """The smallest step the number type can tell at the largest of these times; 0 for whole numbers."""
+    if time.dtype.kind != "f":
+        return 0.0
+    finite = np.abs(time[np.isfinite(time)])
+    with np.errstate(over="ignore"):
+        return float(np.spacing(np.max(finite))) if len(finite) else 0.0
 
 
 def raw_origin(time: NDArray[np.generic], unit: str) -> float | int:

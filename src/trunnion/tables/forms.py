@@ -21,7 +21,6 @@ from trunnion.tables.table import Trouble, trouble_at
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
 
-_HALF_TURN = np.pi
 _BLOCK_ROWS = 1 << 14
 
 
@@ -111,21 +110,29 @@ def _from_matrix_columns(columns: list[Array], statement: TableStatement) -> Con
 def _from_angle_columns(columns: list[Array], statement: TableStatement) -> Converted:
     convention = statement.convention
     assert convention is not None  # asked for by questions.require_answers
-    angles = np.stack(columns, axis=-1)
-    if statement.angle_unit == "deg":
-        angles = np.radians(angles)
-    finite = np.all(np.isfinite(angles), axis=-1)
-    notes = _range_notes(angles[finite], convention.angle_names, statement.angle_unit)
-    q = quaternions_from_angles(np.where(finite[:, None], angles, 0.0), convention)
+    scale = np.pi / 180.0 if statement.angle_unit == "deg" else 1.0
+    q = _quaternions_of(columns, scale, convention)
+    finite = np.isfinite(q[:, 0])
+    notes = _range_notes(columns, convention.angle_names, statement.angle_unit, scale)
     troubles = [trouble_at("no number", "an angle cell is empty or not a finite number", ~finite)]
     return Converted(q, ~finite, [trouble for trouble in troubles if trouble], notes)
 
 
 def quaternions_from_angles(angles: Array, convention: Convention) -> Array:
     """Quaternions (N, 4) of R_rb for stated angles (N, 3) rad: half-angle products, no matrices on the way."""
-    q = np.empty((len(angles), 4))
-    for block in _blocks(len(q)):
-        _chain_block(angles[block], convention, q[block])
+    return _quaternions_of(list(angles.T), 1.0, convention)
+
+
+def _quaternions_of(columns: list[Array], scale: float, convention: Convention) -> Array:
+    """Quaternions (N, 4) of three columns of stated angles in units of `scale` rad; NaN where an angle is none."""
+    q = np.empty((len(columns[0]), 4))
+    with np.errstate(invalid="ignore"):
+        for block in _blocks(len(q)):
+            halves = [
+                (0.5 * sign) * (column[block] * scale - offset)
+                for column, sign, offset in zip(columns, convention.signs, convention.offsets, strict=True)
+            ]
+            _chain_block(halves, convention, q[block])
     if not np.array_equal(convention.left, np.eye(3)):
         q = quaternion_product(quaternion_from_matrix(convention.left), q)
     if not np.array_equal(convention.right, np.eye(3)):
@@ -133,33 +140,34 @@ def quaternions_from_angles(angles: Array, convention: Convention) -> Array:
     return q
 
 
-def _chain_block(angles: Array, convention: Convention, q: Array) -> None:
+def _chain_block(halves: list[Array], convention: Convention, q: Array) -> None:
     """Fill q (N, 4) with the product of three half-angle quaternions in the order of the convention's sense."""
-    half = 0.5 * np.asarray(convention.signs) * (angles - np.asarray(convention.offsets))
-    turns = list(zip(convention.sequence.axes, np.cos(half).T, np.sin(half).T, strict=True))
+    turns = [(axis, np.cos(half), np.sin(half)) for axis, half in zip(convention.sequence.axes, halves, strict=True)]
     if convention.sense is Sense.FIXED:
         turns.reverse()
-    parts = [turns[0][1], *(np.zeros(len(q)) for _ in range(3))]
-    parts[1 + turns[0][0]] = turns[0][2]
-    for axis, c, s in turns[1:]:
-        w, k, i, j = 0, 1 + axis, 1 + (axis + 1) % 3, 1 + (axis + 2) % 3
-        parts[w], parts[k] = parts[w] * c - parts[k] * s, parts[k] * c + parts[w] * s
-        parts[i], parts[j] = parts[i] * c + parts[j] * s, parts[j] * c - parts[i] * s
-    for place in range(4):
-        q[:, place] = parts[place]
+    (first, c1, s1), (second, c2, s2), (axis, c, s) = turns
+    parts = [np.zeros(0)] * 4
+    third = 3 - first - second
+    handed = 1.0 if (second - first) % 3 == 1 else -1.0
+    parts[0], parts[1 + first], parts[1 + second] = c1 * c2, s1 * c2, c1 * s2
+    parts[1 + third] = handed * (s1 * s2)
+    w, k, i, j = 0, 1 + axis, 1 + (axis + 1) % 3, 1 + (axis + 2) % 3
+    q[:, w], q[:, k] = parts[w] * c - parts[k] * s, parts[k] * c + parts[w] * s
+    q[:, i], q[:, j] = parts[i] * c + parts[j] * s, parts[j] * c - parts[i] * s
 
 
-def _range_notes(angles: Array, names: tuple[str, str, str], unit: str | None) -> list[str]:
+def _range_notes(columns: list[Array], names: tuple[str, str, str], unit: str | None, scale: float) -> list[str]:
     """Notes on wraps, and a doubt where the unit looks wrong; nothing is changed because of either."""
-    if len(angles) == 0:
-        return []
-    notes = []
-    for place, name in enumerate(names):
-        wraps = int(np.count_nonzero(np.abs(np.diff(angles[:, place])) > _HALF_TURN))
+    notes, largest = [], 0.0
+    for column, name in zip(columns, names, strict=True):
+        low, high = (float(np.nanmin(column, initial=np.inf)), float(np.nanmax(column, initial=-np.inf)))
+        largest = max(largest, abs(low * scale), abs(high * scale)) if low <= high else largest
+        if high * scale - low * scale <= np.pi:
+            continue
+        wraps = int(np.count_nonzero(np.abs(np.diff(column)) * scale > np.pi))
         if wraps:
             notes.append(f"'{name}' wraps {wraps} times; rotations are used, so nothing is lost")
-    largest = float(np.max(np.abs(angles)))
-    if unit == "deg" and len(angles) > 10 and largest < np.radians(2.0 * np.pi):
+    if unit == "deg" and len(columns[0]) > 10 and largest < np.radians(2.0 * np.pi):
         notes.append("no angle exceeds 6.2832 deg: are these radians?")
     if unit == "rad" and largest > 4.0 * np.pi:
         notes.append(f"an angle of {largest:.6g} rad is more than two turns: are these degrees?")
