@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import subprocess
+import sys
+
 import numpy as np
 import pytest
 
@@ -103,3 +106,11 @@ def test_a_file_beside_the_data_never_runs(call, tmp_path, monkeypatch):
     (trap / "numpy.py").write_text("raise SystemExit('ran a file of the data folder')")
     monkeypatch.chdir(trap)
     assert call("fine", {"n": 2}).meta == {"words": "well"}
+
+
+def test_importing_the_room_loads_no_heavy_library():
+    """Commands that read no table must not pay for the libraries that do."""
+    program = "import sys, trunnion.tables; print([name for name in sys.modules if '.' not in name])"
+    loaded = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=True).stdout
+    for library in ("pyarrow", "scipy", "sympy", "pyulog", "rosbags", "mcap", "h5py", "pandas", "matplotlib"):
+        assert f"'{library}'" not in loaded

@@ -18,7 +18,7 @@ from trunnion.attitude.frames import Frame
 from trunnion.attitude.rotations import matrix_from_quaternion, quaternion_angle
 from trunnion.attitude.sequences import Sense, Sequence
 from trunnion.errors import TableError
-from trunnion.tables import dataflash, mavlink, read_table, statement_from_plain
+from trunnion.tables import dataflash, exif, mavlink, read_table, statement_from_plain
 
 WORLD = {"world": "x east, y north, z up", "moving axes": "x right, y down, z forward"}
 BODY = {"maps": "body to reference", "between samples": "slerp"}
@@ -292,6 +292,23 @@ def test_a_bag_asks_what_its_messages_do_not_say(bag):
     assert [words in str(caught.value) for words in ("which components", "world frame", "sensor's mount")] == [True] * 3
 
 
+@pytest.mark.parametrize(
+    ("library", "name", "extra"), [("rosbags", "run", "bags"), ("mcap", "run.mcap", "bags"), ("h5py", "new.mat", "mat")]
+)
+def test_a_missing_library_is_named_with_the_extra_that_brings_it(tmp_path, monkeypatch, bag, library, name, extra):
+    (tmp_path / "hidden" / library).mkdir(parents=True)
+    (tmp_path / "hidden" / library / "__init__.py").write_text(f"raise ImportError('no {library}')")
+    monkeypatch.setenv("PYTHONPATH", str(tmp_path / "hidden"))
+    root = bag.parent if name == "run" else tmp_path
+    if name == "run.mcap":
+        (tmp_path / name).write_bytes(b"\x89MCAP0\r\n")
+    if name == "new.mat":
+        (tmp_path / name).write_bytes(b"\x89HDF\r\n\x1a\n" + bytes(600))
+    plain = MAT if name == "new.mat" else {"topic": "/tf", "answers": BAG_ANSWERS, **BAG}
+    with pytest.raises(TableError, match=rf"needs the library '{library}'\n.*trunnion\[{extra}\]"):
+        read_table(state(name, **plain), root)
+
+
 @pytest.fixture
 def mcap_file(tmp_path, turns):
     """An MCAP file written by its own library: poses as JSON and a channel of another encoding."""
@@ -455,6 +472,30 @@ def test_hostile_and_broken_packets_are_refused(tmp_path, content, words):
     (tmp_path / "a.jpg").write_bytes(content)
     with pytest.raises(TableError, match=words):
         read_table(state("a.jpg", GIMBAL, **PHOTO), tmp_path)
+
+
+def test_exif_direction_and_date_as_pillow_writes_them(tmp_path):
+    image_module = pytest.importorskip("PIL.Image")
+    image, written = image_module.new("RGB", (8, 8)), image_module.Exif()
+    written.get_ifd(0x8825).update({0x10: "M", 0x11: 271.25})
+    written.get_ifd(0x8769)[0x9003] = "2031:05:01 10:00:07"
+    image.save(tmp_path / "a.jpg", exif=written)
+    packet = photo(gimbal_tags(0, -30, 0))[4:-2]
+    whole = (tmp_path / "a.jpg").read_bytes()
+    (tmp_path / "a.jpg").write_bytes(whole[:2] + b"\xff\xe1" + packet + whole[2:])
+    angles = {"angles": ["exif:GPSImgDirection", "GimbalPitchDegree", "GimbalRollDegree"], "unit": "deg"}
+    columns = {**angles, "time": {"column": "exif:DateTimeOriginal"}}
+    table = read_table(state("a.jpg", GIMBAL, **{**PHOTO, "columns": columns}), tmp_path)
+    expected = Rotation.from_euler("ZYX", [271.25, -30, 0], degrees=True).as_quat()
+    assert quaternion_angle(table.quaternions[0], np.roll(expected, 1)) < 1e-12
+    assert any("magnetic north" in note for note in table.notes)
+
+
+@settings(max_examples=100)
+@given(st.binary(max_size=200))
+def test_exif_of_any_bytes_is_tags_or_nothing(data):
+    for head in (b"II*\0\x08\0\0\0", b"MM\0*\0\0\0\x08", b"Exif\0\0II*\0\x08\0\0\0"):
+        assert isinstance(exif.exif_tags(head + data), dict)
 
 
 # --- any bytes ---------------------------------------------------------------------------------------------------

@@ -252,7 +252,7 @@ def _inspect_photos(report: Inspection, limits: Limits) -> None:
     files = photos.photo_files(report.path)
     values: dict[str, list[float]] = {}
     for photo in files[:1000]:
-        for name, text in photos.xmp_tags(photo).items():
+        for name, text in photos.photo_tags(photo).items():
             try:
                 values.setdefault(name, []).append(float(text))
             except ValueError:

@@ -1,4 +1,5 @@
-"""Angles in photo metadata: the XMP packet of JPEG, TIFF or DNG files, read as text; DTD and entities are refused.
+"""Angles in photo metadata: the XMP packet of JPEG, TIFF or DNG files, read as text (DTD and entities are refused),
+and the direction and date of EXIF.
 
 A table is a folder of photos or one photo. Columns are named as the tags are: `GimbalYawDegree`, `Camera:Yaw`; without
 a prefix a name must be unique. Rows are the photos in the order of their names; `time: {column: number}` counts them,
@@ -20,6 +21,7 @@ from trunnion.tables.assembly import assemble
 from trunnion.tables.ccsds_xml import safe_parser
 from trunnion.tables.columns import Columns
 from trunnion.tables.confine import Limits
+from trunnion.tables.exif import exif_tags
 from trunnion.tables.files import Seal, file_error
 from trunnion.tables.nearest import nearest_hint
 from trunnion.tables.questions import require_answers
@@ -36,7 +38,7 @@ def read_photo_table(statement: TableStatement, path: Path, limits: Limits) -> A
     require_answers("photo", statement, {}, path)
     seal = Seal.of(path)
     photos = photo_files(path)
-    tags = [xmp_tags(photo) for photo in photos]
+    tags = [photo_tags(photo) for photo in photos]
     faults: list[Fault] = []
     values = [[_number(photo, found, name, faults) for photo, found in zip(photos, tags, strict=True)]
               for name in statement.columns]  # fmt: skip
@@ -48,6 +50,7 @@ def read_photo_table(statement: TableStatement, path: Path, limits: Limits) -> A
         raise TableError(faults[:20])
     columns = Columns(np.array(times, dtype=np.int64), [np.array(column) for column in values])
     columns.notes = [f"{len(photos)} photos; angles from {', '.join(statement.columns)}"]
+    columns.notes += _north_notes(tags, statement.columns)
     unit = "s" if statement.time_column in (None, "number") else "us"
     return assemble(columns, replace(statement, time_unit=unit), path, seal.sha256)
 
@@ -62,17 +65,23 @@ def photo_files(path: Path) -> list[Path]:
     return found
 
 
-def xmp_tags(path: Path) -> dict[str, str]:
-    """Tags of the XMP packet as `prefix:name` and text. Raises TableError where there is no packet, or a DTD in it."""
+def photo_tags(path: Path) -> dict[str, str]:
+    """Tags of the XMP packet as `prefix:name` and text, and the EXIF tags that bear on attitude as `exif:name`.
+
+    Raises TableError where there is neither, or a DTD in the packet.
+    """
     with path.open("rb") as handle:
         data = handle.read(_SEARCHED)
+    tags = exif_tags(data)
     start = data.find(b"<x:xmpmeta")
     end = data.find(b"</x:xmpmeta>", start)
-    if start < 0 or end < 0:
-        raise file_error(path, "the photo holds no XMP packet", "its angles may be in a side-car file")
-    opening = data.rfind(b"<?xpacket begin", 0, start)
-    start = opening if opening >= 0 else start
-    return _parse(data[start : end + len(b"</x:xmpmeta>")], path)
+    if start >= 0 and end >= 0:
+        opening = data.rfind(b"<?xpacket begin", 0, start)
+        packet = data[opening if opening >= 0 else start : end + len(b"</x:xmpmeta>")]
+        return {**tags, **_parse(packet, path)}
+    if not tags:
+        raise file_error(path, "the photo holds no XMP packet and no direction", "its angles may be in a side-car file")
+    return tags
 
 
 def _parse(packet: bytes, path: Path) -> dict[str, str]:
@@ -137,9 +146,25 @@ def _time(photo: Path, tags: dict[str, str], place: int, statement: TableStateme
     if text is None:
         return 0
     try:
-        moment = datetime.datetime.fromisoformat(text.strip())
+        moment = _moment(text.strip())
     except ValueError:
         faults.append(Fault(f"the tag '{statement.time_column}' is '{text[:40]}', not a date", place=Place(photo)))
         return 0
     zero = datetime.datetime(2000, 1, 1, tzinfo=moment.tzinfo and datetime.UTC)
     return (moment - zero) // datetime.timedelta(microseconds=1)
+
+
+def _moment(text: str) -> datetime.datetime:
+    """A date of XMP (ISO 8601) or of EXIF (2031:05:01 10:00:00)."""
+    if text[4:5] == ":":
+        return datetime.datetime.strptime(text, "%Y:%m:%d %H:%M:%S")
+    return datetime.datetime.fromisoformat(text)
+
+
+def _north_notes(tags: list[dict[str, str]], columns: tuple[str, ...]) -> list[str]:
+    """Which north an EXIF direction counts from, as the files say."""
+    if not any(name.endswith("GPSImgDirection") for name in columns):
+        return []
+    named = {"T": "true north", "M": "magnetic north"}
+    norths = {named.get(found.get("exif:GPSImgDirectionRef", ""), "a north that is not said") for found in tags}
+    return [f"GPSImgDirection counts from {' and '.join(sorted(norths))}"]
