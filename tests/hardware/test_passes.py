@@ -109,6 +109,28 @@ def test_time_lost_is_what_full_rate_needs_to_catch_up():
     assert need == pytest.approx(limit * gap.seconds, rel=0.01)
 
 
+def test_acceleration_limits_lengthen_the_time_lost_and_the_axis_is_back_on_rate_and_angle():
+    """The axis simulated in small steps: up to the limit, along it, and down to the demanded rate at the end."""
+    track = passes.circular_pass(780e3, 84 * DEG, step=0.05)
+    azimuth = np.unwrap(passes.azimuth_elevation(track.direction_g)[0])
+    rate = np.gradient(azimuth, track.times)
+    limit, seconds = 2 * DEG, []
+    for acceleration in (None, 1 * DEG, 0.1 * DEG):
+        chain = gimbals.azimuth_elevation_chain(rates=(limit, None), accelerations=(acceleration, None))
+        (gap,) = passes.analyse_pass(chain, track).lost
+        seconds.append(gap.seconds)
+        if acceleration is None:
+            continue
+        a, b = np.searchsorted(track.times, [gap.start - 1e-9, gap.end - 1e-9])
+        sense = np.sign(rate[a])
+        t = np.linspace(0, gap.seconds, 20_001)
+        up, down = sense * rate[a] + acceleration * t, sense * rate[b] + acceleration * (gap.seconds - t)
+        way = np.trapezoid(np.minimum(np.minimum(up, down), limit), t)
+        assert way >= sense * (azimuth[b] - azimuth[a]) - 1e-6
+        assert way == pytest.approx(sense * (azimuth[b] - azimuth[a]), rel=0.01)
+    assert seconds[0] < seconds[1] < seconds[2]
+
+
 def test_a_base_tilt_takes_the_passes_out_of_the_keyhole():
     tracks = [passes.circular_pass(780e3, e * DEG, step=1.0, heading=0.2) for e in (70, 80, 86, 89.5)]
     chain = gimbals.azimuth_elevation_chain(elevation=(-30 * DEG, 210 * DEG), rates=(3 * DEG, 3 * DEG))

@@ -164,7 +164,7 @@ def highest_pass_followed(
 
 @dataclass(frozen=True)
 class LostTime:
-    """Time off target (s) around one demand beyond the outer axis's rate, turning at full rate from start to end.
+    """Time off target (s) around one demand beyond the outer axis's limits, the axis doing all it can in between.
 
     flipped: the mount comes back on its other solution (elevation past the top), which is quicker near the zenith.
     """
@@ -184,9 +184,9 @@ class PassAnalysis:
     """What a pass demands of a two-axis mount.
 
     rates, accelerations (k,): largest demanded. seconds_over_rate, seconds_over_acceleration (k,). lost: intervals off
-    target on one branch, with the outer axis at its full rate before and after the top; lost_with_flip: the same where
-    the travel lets the mount come back flipped. clearance (rad): least angle to the keyhole's centre line, with what
-    may hide between samples taken off. plan: whole turns, stops, unwinding.
+    target on one branch, the outer axis catching up within its rate and acceleration limits; lost_with_flip: the same
+    where the travel lets the mount come back flipped. clearance (rad): least angle to the keyhole's centre line, with
+    what may hide between samples taken off. plan: whole turns, stops, unwinding.
     """
 
     name: str
@@ -216,7 +216,7 @@ def analyse_pass(chain: GimbalChain, track: Pass, *, boresight_p: ArrayLike = (1
     demanded = pointing_rates(chain, angles, track.direction_g, track.change_g)
     turning = np.gradient(demanded, track.times, axis=0)
     limits, accelerations = chain.limits("rate"), chain.limits("acceleration")
-    lost = _lost(track.times, angles[:, 0], demanded[:, 0], limits[0])
+    lost = _lost(track.times, angles[:, 0], demanded[:, 0], turning[:, 0], limits[0], accelerations[0])
     step = angle_between(track.direction_g[1:], track.direction_g[:-1])
     return PassAnalysis(
         track.name,
@@ -248,22 +248,30 @@ def _intervals(mask: NDArray[np.bool_]) -> list[tuple[int, int]]:
     return [(int(a), int(b) - 1) for a, b in edges.reshape(-1, 2)]
 
 
-def _lost(t: Array, azimuth: Array, demanded: Array, limit: float) -> tuple[LostTime, ...]:
-    """Shortest intervals around each excess over which the axis, at full rate, gets from one end to the other."""
+def _lost(
+    t: Array, azimuth: Array, demanded: Array, turning: Array, limit: float, acceleration: float
+) -> tuple[LostTime, ...]:
+    """Shortest intervals around each excess of rate or acceleration over which the axis gets from one end to the other.
+
+    Running up from the demanded rate r to the limit W costs (W - r)^2 / (2 a) of way against running at W all along,
+    and so does coming back to it; whoever leaves at a and returns at b therefore needs
+    ahead(b) + cost(b) <= ahead(a) - cost(a), with ahead(t) = azimuth - W t in the sense of the turn.
+    """
     if not np.isfinite(limit):
         return ()
     found: list[LostTime] = []
-    for first, last in _intervals(np.abs(demanded) > limit):
+    for first, last in _intervals((np.abs(demanded) > limit) | (np.abs(turning) > acceleration)):
         if found and t[first] <= found[-1].end:
             continue
-        sense = np.sign(demanded[first])
-        # ahead(t) falls while the axis could keep up: whoever leaves at a and returns at b needs ahead(b) <= ahead(a)
+        peak = first + int(np.argmax(np.abs(demanded[first : last + 1])))
+        sense = np.sign(demanded[peak])
         ahead = sense * azimuth - limit * t
-        found.append(_shortest(t, ahead, ahead, first, last, flipped=False))
+        cost = np.maximum(limit - sense * demanded, 0.0) ** 2 / (2.0 * acceleration)
+        found.append(_shortest(t, ahead - cost, ahead + cost, first, last))
     return tuple(found)
 
 
-def _shortest(t: Array, before: Array, after: Array, first: int, last: int, *, flipped: bool) -> LostTime:
+def _shortest(t: Array, before: Array, after: Array, first: int, last: int) -> LostTime:
     """Shortest [a, b] with a <= first, b >= last, after(b) <= before(a); both fall outside the excess."""
     best = (np.inf, t[0], t[-1])
     b = last
@@ -277,13 +285,17 @@ def _shortest(t: Array, before: Array, after: Array, first: int, last: int, *, f
         best = min(best, (float(t[b] - t[a]), float(t[a]), float(t[b])))
         if t[last] - t[a] > best[0]:
             break
-    return LostTime(best[1], best[2], flipped)
+    return LostTime(best[1], best[2], False)
 
 
 def _lost_flipping(
     chain: GimbalChain, track: Pass, solutions: Solutions, branch: int, lost: tuple[LostTime, ...], limits: Array
 ) -> tuple[LostTime, ...]:
-    """The same intervals when the mount comes back on its other solution, where the inner axis's travel allows it."""
+    """The same intervals when the mount comes back on its other solution, where the inner axis's travel allows it.
+
+    Searched symmetrically about the nearest approach and judged on rates alone: a flip is worth a closer look with the
+    mount's own acceleration once it wins here.
+    """
     if not lost or not np.isfinite(limits[0]):
         return ()
     t = track.times

@@ -1,4 +1,7 @@
-"""Mounting mistakes from public reports: each is diagnosed by the check that should have found it."""
+"""Mounting mistakes from public reports: each is diagnosed by the check that should have found it.
+
+This is the published check of sensor-mount-check: the same functions, numbers printed by others.
+"""
 
 from __future__ import annotations
 
