@@ -324,6 +324,11 @@ _add("not-a-rotation", "{what} is not a rotation: {why}", "correct an entry, or 
 _add("mirror", "{what} is a mirror image (determinant {det}), not a rotation", "{hint}")
 _add("axis-map-incomplete", "one axis alone leaves the turn about it open", "say where a second axis points")
 _add("axis-map-parallel", "two axes are put along one line ({one} and {two})", "give each axis its own line")
+_add(
+    "axis-ambiguous",
+    "'{word}' is one axis of '{one}' and another of '{other}'",
+    "write the turn with three numbers, or say where two axes lie instead",
+)
 _add("zero-vector", "the direction has no length", "write an axis name or three numbers that are not all zero")
 
 # --- envelopes and tables

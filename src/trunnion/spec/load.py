@@ -31,7 +31,13 @@ def load_workbook(path: Path | str, overrides: Iterable[tuple[str, str]] = (), *
     remedy.
     """
     file = workbook_file(path)
-    data = _read(file)
+    return load_text(_read(file), file, overrides, check_files=check_files)
+
+
+def load_text(
+    data: bytes, file: Path, overrides: Iterable[tuple[str, str]] = (), *, check_files: bool = True
+) -> Workbook:
+    """The workbook whose spec is `data`, as if it stood in `file` (archives and issued revisions keep the bytes)."""
     shown = _short(file)
     tree, text, faults = read_tree(data, shown)
     if tree is None:

@@ -21,7 +21,6 @@ from trunnion.spec.scalars import Refused, resolve
 LARGEST_FILE = 5_000_000  # bytes
 DEEPEST = 32  # levels
 MOST_VALUES = 100_000  # nodes
-_SMALL_ENOUGH_TO_ASK_TWICE = 200_000  # characters; the slower reader gives the better message
 
 # characters that hide or reorder what a reader sees
 _HIDING = frozenset(
@@ -126,25 +125,14 @@ def _unprintable(character: str) -> bool:
     return character in _HIDING or unicodedata.category(character) in ("Cc", "Cs", "Cn")
 
 
-def _events(text: str, file: str, faults: list[Fault]) -> Iterator[yaml.Event]:
-    loader = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
+def _events(text: str, file: str, faults: list[Fault]) -> Iterator[Any]:
+    """Events of PyYAML's own reader. The faster one it may have beside it accepts other files and words its messages
+    otherwise, and a spec must mean the same on every machine."""
     try:
-        yield from yaml.parse(text, Loader=loader)
+        yield from yaml.parse(text, Loader=yaml.SafeLoader)
     except (yaml.YAMLError, RecursionError) as err:
-        faults.append(_syntax_fault(_clearest(text, err), file))
+        faults.append(_syntax_fault(err, file))
         raise _Stop from err
-
-
-def _clearest(text: str, err: Exception) -> Exception:
-    """The same error from the pure Python reader, whose wording does not depend on the machine."""
-    if len(text) > _SMALL_ENOUGH_TO_ASK_TWICE:
-        return err
-    try:
-        for _ in yaml.parse(text, Loader=yaml.SafeLoader):
-            pass
-    except (yaml.YAMLError, RecursionError) as second:
-        return second
-    return err
 
 
 def _syntax_fault(err: Exception, file: str) -> Fault:

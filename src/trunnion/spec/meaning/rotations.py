@@ -96,10 +96,14 @@ def _named_axis(ctx: Context, word: str, frame: Frame) -> Array | None:
 
 def _single_turn(ctx: Context, part: SingleTurn, ends: Ends) -> Array | None:
     """A turn about an axis has the same components on both sides; a word may be one of either frame."""
-    if isinstance(part.about, str) and part.about in axis_words(ends.q):
-        axis = ends.q.direction(part.about)
+    word = part.about
+    if isinstance(word, str) and word in axis_words(ends.q):
+        axis = ends.q.direction(word)
+        if word in axis_words(ends.p) and not np.array_equal(axis, ends.p.direction(word)):
+            ctx.note("axis-ambiguous", "about", word=word, one=ends.p.name, other=ends.q.name)
+            return None
     else:
-        axis = direction(ctx, part.about, ends.p, "about")
+        axis = direction(ctx, word, ends.p, "about")
     return None if axis is None else about(axis, part.angle.value)
 
 

@@ -22,10 +22,15 @@ FourNumbers = list_of(Real, 4, "the components of the quaternion")
 ThreeAngles = list_of(Angle, 3, "the angles, first turn first")
 
 
+def _no_other_form(schema: dict[str, Any]) -> None:
+    """For editors: words for axes, not one of the forms that have keys of their own."""
+    schema["not"] = {"anyOf": [{"required": [key]} for key in ("angle", "angles", "matrix", "quaternion")]}
+
+
 class AxisMap(Part):
     """Axis words: each key is an axis, its value the direction it lies along."""
 
-    model_config = ConfigDict(extra="allow")
+    model_config = ConfigDict(extra="allow", json_schema_extra=_no_other_form)
     __pydantic_extra__: dict[str, Name]
 
     side: Side | None = None
