@@ -266,3 +266,29 @@ def test_a_file_where_the_output_folder_should_be_is_told(miniature: Path, run, 
     blocked.write_text("not a folder")
     with pytest.raises(StoreError, match="lies below something that is a file"):
         run(miniature, output=blocked)
+
+
+def test_a_file_above_the_copied_size_is_listed_by_digest_only(miniature: Path, run, edit) -> None:
+    edit(miniature / "workbook.yaml", "workbook: 1", "workbook: 1\nmax copied size: 5 B")
+    done = run(miniature, only=["C02"])
+    assert done.done[1].state == "computed", done.done[1].error
+    (listed,) = done.results["calculations"][1]["inputs"]
+    assert listed["held"] is None
+    assert listed["sha256"] == hashlib.sha256((miniature / "data" / "numbers.csv").read_bytes()).hexdigest()
+    assert list((outputs_of(miniature) / "inputs").iterdir()) == []
+
+
+def test_a_sheet_that_tells_an_earlier_state_is_taken_away(computed: Path, run, edit) -> None:
+    edit(computed / "workbook.yaml", "steepest: 25 deg", "steepest: 30 deg")
+    run(computed, only=["C02"])
+    assert not (outputs_of(computed) / "C01-tiny-margin.ipynb").exists()
+    assert (outputs_of(computed) / "C02-tiny-sum.ipynb").exists()
+    run(computed)
+    assert (outputs_of(computed) / "C01-tiny-margin.ipynb").exists()
+
+
+def test_nothing_is_written_into_the_workbook(miniature: Path, run, tmp_path: Path) -> None:
+    before = checksums(miniature)
+    run(miniature, output=tmp_path / "elsewhere")
+    assert checksums(miniature) == before
+    assert not list((miniature.parent / "outputs").iterdir())

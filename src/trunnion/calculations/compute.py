@@ -90,6 +90,7 @@ def compute(
         kept, due = _sort(folder, planned, only)
         outcomes = _run(folder, due, workers, tell)
         done = tuple(_done(folder, entry, kept, outcomes) for entry in planned)
+        _remove_stale(folder, done)
         _write_state(folder, done)
         computed = _judged(workbook, folder, done, approved)
         _write_sheets(computed)
@@ -175,6 +176,7 @@ def _run(
             folder=folder.path,
             body=folder.body(entry.key),
             failed=folder.failed(entry.id, entry.template.name),
+            not_held={file.held: file.origin for file in entry.inputs.values() if not file.copied},
         )
         for entry in due
     ]
@@ -190,13 +192,24 @@ def _done(folder: RevisionFolder, entry: Planned, kept: Mapping[str, bytes], out
         content = folder.body(entry.key).read_bytes()
     if content is None:
         return Done(entry, MISSING, error="out of date and not asked for")
-    writes.remove(folder.failed(entry.id, entry.template.name))
     body = store.read_body(content)
     try:
         found = recorded(entry.id, body)
     except TrunnionError as err:
         return Done(entry, FAILED, body=content, error=str(err))
     return Done(entry, COMPUTED, outcome is not None, content, content_digest(body), found)
+
+
+def _remove_stale(folder: RevisionFolder, done: Sequence[Done]) -> None:
+    """Take away sheets and failed notebooks of what is not in this state any more; all can be made again."""
+    names = {(entry.planned.id, entry.planned.template.name) for entry in done}
+    for name, former in folder.read_state()["calculations"].items():
+        names.add((name, former.get("parts", {}).get("template", {}).get("name", "")))
+    standing = {folder.sheet(e.planned.id, e.planned.template.name) for e in done if e.body is not None}
+    failed = {folder.failed(e.planned.id, e.planned.template.name) for e in done if e.state == FAILED}
+    for name in names:
+        for path in {folder.sheet(*name), folder.failed(*name)} - standing - failed:
+            writes.remove(path)
 
 
 def _write_state(folder: RevisionFolder, done: Sequence[Done]) -> None:

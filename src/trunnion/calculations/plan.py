@@ -5,6 +5,7 @@ Nothing is run and nothing is written here. All faults of all calculations are c
 
 from __future__ import annotations
 
+import hashlib
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -28,6 +29,7 @@ class InputFile:
     sha256: str
     size: int
     content: bytes | None  # None where it is above the copied size: listed by digest only
+    origin: Path
 
     @property
     def copied(self) -> bool:
@@ -77,14 +79,22 @@ class _Reader:
             if not place.resolve().is_relative_to(self.folder.resolve()):
                 raise TrunnionError(f"'{path}' leaves the workbook", remedy="put the file into its folder")
             try:
-                content = place.read_bytes()
+                digest, content = _read(place, self.copied_limit)
+                size = place.stat().st_size
             except OSError as err:
                 cause = f"the file '{path}' can't be read ({err.strerror})"
                 raise TrunnionError(cause, remedy="write its path from the workbook's folder") from err
-            digest = sha256(content)
-            kept = content if len(content) <= self.copied_limit else None
-            self.files[path] = InputFile(path, held_name(path, digest), digest, len(content), kept)
+            self.files[path] = InputFile(path, held_name(path, digest), digest, size, content, place.resolve())
         return self.files[path]
+
+
+def _read(path: Path, limit: float) -> tuple[str, bytes | None]:
+    """SHA-256 of a file and, up to `limit` bytes, its content; a larger one is never held in memory."""
+    if path.stat().st_size <= limit:
+        content = path.read_bytes()
+        return sha256(content), content
+    with path.open("rb") as stream:
+        return hashlib.file_digest(stream, "sha256").hexdigest(), None
 
 
 def plan(workbook: Any, *, allow_local: bool = False, only: frozenset[str] = frozenset()) -> list[Planned]:

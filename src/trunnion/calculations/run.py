@@ -16,7 +16,7 @@ import tempfile
 import threading
 import time
 from collections.abc import Callable, Iterable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
 from queue import Empty, SimpleQueue
 from typing import Any
@@ -43,10 +43,11 @@ class Job:
     folder: Path
     body: Path
     failed: Path
+    not_held: Mapping[str, Path] = field(default_factory=dict)  # inputs read where they lie: name to file
 
     def line(self) -> bytes:
         """The job as a worker reads it."""
-        fields = {**self.__dict__, "parameters": dict(self.parameters)}
+        fields = {**self.__dict__, "parameters": dict(self.parameters), "not_held": dict(self.not_held)}
         text = json.dumps(fields, default=lambda path: str(path.absolute()), allow_nan=False)
         return text.encode("utf-8") + b"\n"
 

@@ -9,8 +9,12 @@ from __future__ import annotations
 
 import json
 import os
+import shutil
 import sys
+import tempfile
 import threading
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
 from queue import SimpleQueue
 from typing import IO, Any
@@ -20,6 +24,7 @@ from trunnion.calculations.notebooks import canonical_bytes
 from trunnion.calculations.writes import write_bytes
 from trunnion.errors import TrunnionError
 from trunnion.sheet.items import MIME
+from trunnion.sheet.parameters import INPUTS_VARIABLE
 
 _QUOTED_LINES = 12
 _MARKER = "papermill-error-cell-tag"  # cells papermill adds to a notebook that failed
@@ -41,6 +46,7 @@ def _watch_input(stream: IO[bytes], jobs: SimpleQueue[dict[str, Any]]) -> None:
         jobs.put(json.loads(line))
     if _current is not None:
         _current.kill_kernel()
+    shutil.rmtree(Path(os.environ["IPYTHONDIR"]).parent, ignore_errors=True)  # the run's scratch folder
     os._exit(0)
 
 
@@ -63,13 +69,32 @@ def _run(job: dict[str, Any], started: Any) -> dict[str, Any]:
 
     _current = launching.Evidence(started)
     node = _prepared(nbformat.read(job["template"], as_version=4))
-    executed = launching.execute(node, job["parameters"], Path(job["folder"]), _current)
+    with _inputs_elsewhere(job["not_held"]):
+        executed = launching.execute(node, job["parameters"], Path(job["folder"]), _current)
     body = normalised(_plain(executed), job["calculation"])
     nbformat.validate(nbformat.from_dict(body))
     _require_records(body)
     content = canonical_bytes(body)
     write_bytes(Path(job["body"]), content)
     return {"digest": content_digest(body), "sha256": sha256(content)}
+
+
+@contextmanager
+def _inputs_elsewhere(files: dict[str, str]) -> Iterator[None]:
+    """Make inputs that are not copied readable by name, for this run only."""
+    os.environ.pop(INPUTS_VARIABLE, None)
+    if not files:
+        yield
+        return
+    with tempfile.TemporaryDirectory(prefix="trunnion-inputs-") as folder:
+        for name, origin in files.items():
+            try:
+                os.symlink(origin, Path(folder) / name)
+            except OSError:  # no links here: a copy for the time of the run
+                shutil.copyfile(origin, Path(folder) / name)
+        os.environ[INPUTS_VARIABLE] = folder
+        yield
+    os.environ.pop(INPUTS_VARIABLE, None)
 
 
 def _prepared(node: Any) -> Any:

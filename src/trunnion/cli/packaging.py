@@ -252,7 +252,10 @@ def _summary(computed: Computed) -> p.Summary:
         for entry in counting
     )
     return p.Summary(
-        question=computed.workbook.document.title, answer=answer, margins=margins, figure=_figure(computed)
+        question="Are the requirements met, and how near does each come to its limit?",
+        answer=answer,
+        margins=margins,
+        figure=_figure(computed),
     )
 
 

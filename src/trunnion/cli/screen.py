@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import sys
+import time
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -37,13 +38,12 @@ def progress(*, shown: bool) -> Iterator[Tell | None]:
         return
     from rich.live import Live
 
-    rows: dict[str, Progress] = {}
-    with Live(console=console, refresh_per_second=8, transient=True) as live:
+    rows: dict[str, tuple[Progress, float]] = {}
 
-        def tell(event: Progress) -> None:
-            rows[event.calculation] = event
-            live.update(_running(rows))
+    def tell(event: Progress) -> None:
+        rows[event.calculation] = (event, time.monotonic())
 
+    with Live(console=console, refresh_per_second=5, transient=True, get_renderable=lambda: _running(rows)):
         yield tell
 
 
@@ -154,12 +154,14 @@ def _deviation_words(entry: Judgement) -> str:
     return f"accepted by {entry.deviation}" if entry.deviation_holds else f"{entry.deviation} not approved"
 
 
-def _running(rows: dict[str, Progress]) -> Table:
+def _running(rows: dict[str, tuple[Progress, float]]) -> Table:
+    """Calculation, cell and elapsed time, which runs on between cells."""
     table = Table(box=None, pad_edge=False, show_header=False)
-    for event in rows.values():
+    for event, told in list(rows.values()):
         done = event.state in ("done", "failed")
+        elapsed = event.elapsed if done else event.elapsed + time.monotonic() - told
         where = event.state if done else f"cell {event.cell + 1} of {event.of}" if event.of else "starting kernel"
-        table.add_row(event.calculation, where, f"{event.elapsed:.1f} s")
+        table.add_row(event.calculation, where, f"{elapsed:.1f} s")
     return table
 
 

@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Mapping
 from pathlib import Path
 from typing import Any
 
 from trunnion.errors import CalculationError
+
+INPUTS_VARIABLE = "TRUNNION_INPUTS"
 
 
 def input_path(name: str) -> Path:
@@ -16,7 +19,8 @@ def input_path(name: str) -> Path:
     """
     if Path(name).name != name or name in ("", ".", ".."):
         raise CalculationError(f"'{name}' is not the name of an input file", remedy="inputs are plain names in inputs/")
-    for folder in (Path("inputs"), Path("..") / "inputs"):
+    elsewhere = os.environ.get(INPUTS_VARIABLE)  # inputs above the copied size, while a calculation is run
+    for folder in (Path("inputs"), Path("..") / "inputs", *([Path(elsewhere)] if elsewhere else [])):
         path = folder / name
         if path.is_file():
             return path
