@@ -18,7 +18,9 @@ def key_of(attribute: str) -> str:
 class Part(BaseModel):
     """A part of the spec. Attributes are its keys with underscores for spaces."""
 
-    model_config = ConfigDict(strict=True, extra="forbid", frozen=True, alias_generator=key_of, protected_namespaces=())
+    model_config = ConfigDict(
+        defer_build=True, strict=True, extra="forbid", frozen=True, alias_generator=key_of, protected_namespaces=()
+    )
 
     #: keys that no number depends on; left out of the plain form
     words_only: ClassVar[frozenset[str]] = frozenset({"text"})
