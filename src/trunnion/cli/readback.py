@@ -21,6 +21,9 @@ def command(workbook: Path) -> ExitCode:
     for section in readback(load_workbook(workbook)):
         click.echo(section.title)
         for line in section.lines:
-            click.echo(textwrap.fill(line, 100, initial_indent="  ", subsequent_indent="    ", drop_whitespace=True))
+            laid_out = line.startswith("    ")
+            click.echo(
+                f"  {line}" if laid_out else textwrap.fill(line, 100, initial_indent="  ", subsequent_indent="    ")
+            )
         click.echo()
     return ExitCode.OK
