@@ -1,7 +1,8 @@
 """Each template's numbers against something published, through the very calls its cells make.
 
 Here stand the published check of envelope-sweep, the published check of convention-derivation, the published check of
-sensor-mount-check and the published check of convention-crosswalk.
+sensor-mount-check, the published check of convention-crosswalk, the
+published check of zero-attitude and the published check of onboard-threshold.
 """
 
 from __future__ import annotations
@@ -12,10 +13,13 @@ from typing import Any
 import numpy as np
 import pytest
 
+from trunnion.errors import CalculationError
 from trunnion.sheet.crosswalk import ConventionCrosswalk
 from trunnion.sheet.derivation import ConventionDerivation
 from trunnion.sheet.mount import MountCheck
+from trunnion.sheet.onboard import OnboardThreshold
 from trunnion.sheet.sweep import EnvelopeSweep
+from trunnion.sheet.zero import ZeroAttitude
 
 LOCAL = {"name": "local", "axes": ["north", "east", "down"], "north": "true", "carried": "along"}
 BODY = {"name": "body", "axes": ["forward", "starboard", "down"]}
@@ -143,3 +147,64 @@ def test_every_shown_item_of_the_cross_walk_can_be_shown(shown: list, plain: Cal
     bounds = results(shown, "error amplification")
     # With the wing at 45 deg from the vertical at worst and the nose anywhere: sqrt(2 / (1 - cos 45 deg)).
     assert bounds["ordinary to wing-last", "cruise"]["hi"] <= np.sqrt(2 / (1 - np.cos(np.radians(45.0)))) + 1e-9
+
+
+def carried_to(*directions: str) -> dict[str, Any]:
+    """Listed poses whose body z axis (down) lies along each of these reference directions."""
+    across = {"north": "east", "east": "down", "down": "north"}
+    return {
+        "name": "poses",
+        "poses": [{"down": direction, "forward": across[direction]} for direction in directions],
+        "reference": LOCAL,
+        "body": BODY,
+    }
+
+
+def test_published_check_of_zero_attitude(shown: list) -> None:
+    # The line farthest from three perpendicular ones makes arccos(1/sqrt 3) = 54.7356 deg with each (the angle between
+    # a cube's diagonal and its edges; any solid geometry text), and a cone of 30 deg leaves 60 deg to its own axis's
+    # perpendicular.
+    three = ZeroAttitude(
+        convention=stated("last about down", "1-2-3"), envelopes={"poses": carried_to("north", "east", "down")}
+    )
+    three.show_free()
+    best = results(shown, "lock margin with best zero")["last about down", "reference side"]
+    assert best["lo"] == pytest.approx(54.735610317, abs=1e-8)
+    assert best["hi"] == pytest.approx(54.735610317, abs=1e-8)
+    three.show_checks()
+    assert all(item["agrees"] for item in shown if item["kind"] == "check")
+    shown.clear()
+    cone = {
+        "name": "cone",
+        "cone": {"axis": "down", "around": "down", "half angle": "30 deg", "roll": "any"},
+        "reference": LOCAL,
+        "body": BODY,
+    }
+    ZeroAttitude(convention=stated("last about down", "1-2-3"), envelopes={"cone": cone}).show_free()
+    best = results(shown, "lock margin with best zero")["last about down", "reference side"]
+    assert best["lo"] == pytest.approx(60.0, abs=0.01)
+    assert best["hi"] == pytest.approx(60.0, abs=0.01)
+
+
+def test_published_check_of_onboard_threshold(shown: list) -> None:
+    # RobotLocomotion/drake 14114 (2020): |cos pitch| < 0.008 is refused, printed there as 0.458371 deg; about seven
+    # binary digits of an outer angle are lost at that distance (its source, value from memory).
+    from trunnion.attitude.onboard import ExtractionForm, Precision, consequences
+
+    (row,) = consequences(ExtractionForm.TWO_ARCTANGENTS, Precision.DOUBLE, [np.radians(0.458371)])
+    assert np.sin(row.threshold) == pytest.approx(0.008, abs=1e-8)
+    assert row.bits_lost == pytest.approx(7.0, abs=0.05)
+    work = OnboardThreshold(
+        convention=stated("ordinary", "3-2-1"), precision="float64", extraction="residual form", accuracy="0.001 deg"
+    )
+    for name in ("inputs", "assumptions", "errors", "thresholds", "consequences", "residual_form", "checks", "results"):
+        getattr(work, f"show_{name}")()
+    assert all(item["agrees"] for item in shown if item["kind"] == "check")
+    assert results(shown, "margin for the lock branch")["ordinary", "float64, residual form"]["hi"] == 0.0
+
+
+def test_words_that_are_no_precision_are_refused() -> None:
+    with pytest.raises(CalculationError, match="float32, float64"):
+        OnboardThreshold(
+            convention=stated("ordinary", "3-2-1"), precision="single", extraction="residual form", accuracy="1 deg"
+        )

@@ -171,6 +171,23 @@ def gain_curves(middle: Floats, curves: Mapping[str, Floats], *, locks: Sequence
 
 
 @house_look
+def error_laws(margins: Floats, pairs: Mapping[str, tuple[Floats, Floats]]) -> str:
+    """Measured errors (points) and their laws (lines), rad, against the margin (deg), both logarithmic."""
+    figure = new_figure(height_mm=72)
+    axes = new_axes(figure)
+    for index, (name, (measured, law)) in enumerate(pairs.items()):
+        colour = COLOURS[index % len(COLOURS)]
+        axes.loglog(margins, law, color=colour, linestyle=DASHES[index % len(DASHES)], label=f"{label(name)}, law")
+        axes.loglog(margins, measured, color=colour, linestyle="none", marker="osD"[index % 3], markersize=4)
+    axes.xaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
+    axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:.0e}"))
+    axes.set_xlabel("lock margin, deg")
+    axes.set_ylabel("error, rad")
+    axes.legend(loc="upper right")
+    return to_svg(figure)
+
+
+@house_look
 def varied_value(
     values: Sequence[float],
     series: Mapping[str, tuple[Sequence[float], Sequence[float]]],
