@@ -190,7 +190,7 @@ class _Problem:
     def choice(self, equals: Array, upper: float, rounds: int, gap: float) -> ZeroChoice:
         """The nearest to the present zero among equally good lines."""
         direction = self._nearest(equals)
-        turn = _shortest_turn(self.now, direction)
+        turn = shortest_turn(self.now, direction)
         constant = turn @ self.present if self.side is Side.REFERENCE else self.present @ turn.T
         made = self.with_constant(constant)
         left_over = max(upper - made.margin.least.lo, 0.0)
@@ -282,7 +282,7 @@ def _optimal_lines(points: Array, left_over: float) -> tuple[Array, float, Array
     return normals, line_margin(points, normals[0]), points[corners]
 
 
-def _shortest_turn(now: Array, goal: Array) -> Array:
+def shortest_turn(now: Array, goal: Array) -> Array:
     """The smallest rotation that brings the line of `now` onto the line of `goal`."""
     goal = goal if now @ goal >= 0.0 else -goal
     axis = np.cross(now, goal)
