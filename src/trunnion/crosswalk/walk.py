@@ -144,35 +144,40 @@ def _angle_map(walk: CrossWalk) -> AngleMap | None:
 class Probe:
     """A probe attitude: what it is in words, the first convention's angles (3,) rad, and what it tells apart (rad).
 
-    misses: rotation angle of the error when the reference map alone, the body map alone, or neither is applied.
+    misses: rotation angle of the error when the reference map alone, the body map alone, or neither is applied; None
+    where that would be no error because the map left out is no turn.
     """
 
     words: str
     angles: Array
-    misses: tuple[float, float, float]
+    misses: tuple[float | None, float | None, float | None]
 
     @property
     def sufficient(self) -> bool:
-        """True when each way of applying the maps by halves shows up by more than a degree."""
-        return min(self.misses) > np.radians(1.0)
+        """True when each wrong way of applying the maps by halves shows up by more than a degree."""
+        return all(miss is None or miss > np.radians(1.0) for miss in self.misses)
 
 
 def probes(walk: CrossWalk) -> tuple[Probe, ...]:
     """Zero attitude, zero turned by a quarter about the first axis, and one general attitude.
 
-    The first two alone are what half-applied maps survive: `sufficient` says so.
+    The first two alone are what half-applied maps often survive: `sufficient` says whether they do.
     """
     turns = (
         ("zero attitude", (0.0, 0.0, 0.0)),
         ("first angle a quarter turn from zero", (np.pi / 2, 0.0, 0.0)),
         ("a general attitude", tuple(np.radians((35.0, 20.0, -50.0)))),
     )
+    turned = [float(rotation_angle(matrix, np.eye(3))) > EXACT_MAP for matrix in (walk.R_pr, walk.R_bq)]
+    wrong = (turned[1], turned[0], any(turned))
     found = []
     for words, chain in turns:
         angles = walk.first.stated_from_chain(np.array(chain))
         R_rb = walk.first.matrix(angles)
         right = walk.attitude(R_rb)
         halves = (walk.R_pr @ R_rb, R_rb @ walk.R_bq, R_rb)
-        misses = tuple(float(rotation_angle(half, right)) for half in halves)
-        found.append(Probe(words, angles, misses))  # type: ignore[arg-type]
+        misses = [
+            float(rotation_angle(half, right)) if counts else None for half, counts in zip(halves, wrong, strict=True)
+        ]
+        found.append(Probe(words, angles, (misses[0], misses[1], misses[2])))
     return tuple(found)

@@ -169,15 +169,21 @@ class ConventionCrosswalk:
 
     def show_probes(self) -> None:
         """Three attitudes to try the map on, and what each shows when only one side of it is applied."""
+        found = probes(self.walk)
+        if all(miss is None for probe in found for miss in probe.misses):
+            display.statement(
+                "probes", "The frames of both conventions coincide, so there is no map to apply by halves."
+            )
+            return
         rows = [
             [
                 probe.words,
                 _triple(probe.angles),
                 _triple(self.walk.angles(probe.angles)[0]),
-                *(degrees_text(miss, 2) for miss in probe.misses),
+                *("no error" if miss is None else degrees_text(miss, 2) for miss in probe.misses),
                 "sufficient" if probe.sufficient else "insufficient",
             ]
-            for probe in probes(self.walk)
+            for probe in found
         ]
         display.table(
             "tbl:probes",
