@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import hashlib
+import os
 import re
 
 import numpy as np
@@ -286,3 +287,40 @@ def test_the_statement_in_the_form_of_the_spec():
     assert statement.body_to_reference is True
     assert statement.between is Between.SLERP
     assert statement.attitude_error == np.radians(1.0)
+
+
+def test_control_characters_of_a_file_never_reach_the_screen(csv_statement, write_rows):
+    """A cell or a column name could carry an escape sequence for the terminal."""
+    root = write_rows("t,w,x,y,z\x1b[2J", [(0, 1, "\x1b]0;evil\x07", 0, 0)])
+    columns = {"time": {"column": "t", "unit": "s"}, "quaternion": ["w", "x", "y", "z\x1b[2J"]}
+    for statement in (csv_statement(), csv_statement(columns=columns)):
+        with pytest.raises(TableError) as caught:
+            read_table(statement, root)
+        assert "\x1b" not in str(caught.value)
+        assert "[U+001B]" in str(caught.value)
+
+
+@pytest.mark.parametrize("name", ["a\0b.csv", "x" * 5000 + ".csv"])
+def test_names_that_are_no_file_names_end_in_one_message(csv_statement, tmp_path, name):
+    with pytest.raises(TableError, match="no usable file name"):
+        read_table(csv_statement(table=name), tmp_path)
+
+
+def test_a_pipe_is_not_waited_for(csv_statement, tmp_path):
+    os.mkfifo(tmp_path / "table.csv")
+    with pytest.raises(TableError, match="neither a file nor a folder"):
+        read_table(csv_statement(), tmp_path)
+
+
+@pytest.mark.parametrize("separator", ["", ",,", '"', "\n", "1", "."])
+def test_a_separator_is_one_mark_that_stands_in_no_number(csv_statement, separator):
+    with pytest.raises(TableError, match="'separator' is"):
+        csv_statement(separator=separator)
+
+
+def test_a_link_out_of_the_folder_is_refused(csv_statement, tmp_path):
+    (tmp_path / "book").mkdir()
+    (tmp_path / "outside.csv").write_text("t,w,x,y,z\n0,1,0,0,0\n")
+    (tmp_path / "book" / "table.csv").symlink_to(tmp_path / "outside.csv")
+    with pytest.raises(TableError, match="leaves the workbook"):
+        read_table(csv_statement(), tmp_path / "book")

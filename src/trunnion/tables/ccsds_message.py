@@ -15,6 +15,8 @@ from trunnion.tables.epochs import nanoseconds
 from trunnion.tables.nearest import nearest_hint
 
 MAX_BYTES = 256 << 20
+#: Bytes that are not printable ASCII stand as ? in what is kept; the breach is noted where they are found.
+_PRINTABLE = bytes(mark if 32 <= mark <= 126 else (32 if mark == 9 else 63) for mark in range(256))
 
 
 @dataclass(frozen=True)
@@ -102,7 +104,7 @@ def _lines(data: bytes, breaches: list[Breach]) -> Iterator[tuple[int, str]]:
             tab_only = all(mark == 9 or 32 <= mark <= 126 for mark in raw)
             what = "a TAB" if tab_only else "a character that is not printable ASCII"
             breaches.append(Breach(number, f"the line holds {what}", hard=False))
-        yield number, raw.decode("ascii", "replace").strip()
+        yield number, raw.translate(_PRINTABLE).decode("ascii").strip()
 
 
 class _Walk:

@@ -22,6 +22,7 @@ from typing import Any
 import numpy as np
 
 from trunnion.errors import Fault, Place, TableError
+from trunnion.units import shown
 
 META = "__meta__"
 _MIB = 1 << 20
@@ -120,21 +121,23 @@ def _cause_of_death(code: int | None, limits: Limits) -> str:
     """What the exit code of the child means, in words."""
     if code is None:
         return f"the reader was stopped: it used more than {limits.wall_seconds:g} s of wall time"
-    if hasattr(signal, "SIGXCPU") and code in (-signal.SIGXCPU, -signal.SIGKILL):
+    if hasattr(signal, "SIGXCPU") and code == -signal.SIGXCPU:
         return f"the reader was stopped: it used more than {limits.cpu_seconds:g} s of processor time"
+    if hasattr(signal, "SIGKILL") and code == -signal.SIGKILL:
+        return f"the reader was killed from outside, by its limit of {limits.cpu_seconds:g} s or for want of memory"
     if code < 0:
         return f"the reader crashed ({signal.Signals(-code).name})"
     return f"the reader ended with exit code {code} and no result"
 
 
 def _with_tail(limits: Limits, tail: str) -> str:
-    last = tail.splitlines()[-1][:200] if tail else ""
+    last = shown(tail.splitlines()[-1], 200) if tail else ""
     words = f"; its last words: {last}" if last else ""
     return f"the file is damaged, hostile or too large for the limits ({limits}), which the statement may raise{words}"
 
 
 def _raise_refusal(refusal: Mapping[str, str], path: Path, limits: Limits) -> None:
-    kind, words = refusal["kind"], refusal["words"]
+    kind, words = refusal["kind"], shown(refusal["words"], 400)
     if kind == "memory":
         space = limits.address_space / _MIB
         raise _fault(

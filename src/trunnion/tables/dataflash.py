@@ -9,7 +9,7 @@ import numpy as np
 
 from trunnion.tables.assembly import assemble
 from trunnion.tables.confine import Limits
-from trunnion.tables.files import Seal, file_error
+from trunnion.tables.files import Seal, file_error, read_whole
 from trunnion.tables.nearest import nearest_hint
 from trunnion.tables.packets import Damage, columns_of_fields
 from trunnion.tables.questions import require_answers
@@ -71,7 +71,7 @@ class FlashLog:
 def read_dataflash_table(statement: TableStatement, path: Path, limits: Limits) -> AttitudeTable:
     """One message of the log. Broken messages stop it unless damage is accepted."""
     seal = Seal.of(path)
-    log = walk_flash(path.read_bytes(), path)
+    log = walk_flash(read_whole(path), path)
     held = sorted(log.samples)
     if statement.topic is not None and statement.topic not in log.samples:
         raise file_error(path, f"the log holds no message '{statement.topic}'", nearest_hint(statement.topic, held))

@@ -20,6 +20,7 @@ from trunnion.tables.files import file_error
 from trunnion.tables.nearest import nearest_hint
 from trunnion.tables.statements import TableStatement
 from trunnion.tables.table import SHOWN_ROWS, Trouble
+from trunnion.units import shown
 
 MAX_LINE = 1 << 20  # bytes; a longer line is no table
 HEAD = 4 << 20
@@ -282,8 +283,7 @@ def _parse_row(
         try:
             numbers.append(float("nan") if cell in _EMPTY else _number(cell))
         except ValueError:
-            shown = cell if len(cell) <= 30 else cell[:30] + "…"
-            report.add("no number", row, number, f"'{shown}' in column '{names[place]}'")
+            report.add("no number", row, number, f"'{shown(cell, 30)}' in column '{shown(names[place])}'")
             return None
     return numbers
 

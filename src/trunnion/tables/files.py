@@ -9,6 +9,7 @@ from pathlib import Path
 import numpy as np
 
 from trunnion.errors import Fault, Place, TableError
+from trunnion.units import shown
 
 _BLOCK = 1 << 20
 #: Whole-file readers hold the file in memory; longer files go through `iter_chunks`.
@@ -18,14 +19,37 @@ MAX_WHOLE_BYTES = 2 << 30
 def locate(path_text: str, root: Path | str) -> Path:
     """The file a statement names, relative to `root`; TableError when it leaves root or is not there."""
     base = Path(root).resolve()
-    path = (base / path_text).resolve()
+    try:
+        path = (base / path_text).resolve()
+        there = path.exists()
+    except (OSError, ValueError) as err:
+        raise file_error(shown(path_text), "this is no usable file name") from err
     if Path(path_text).is_absolute() or not path.is_relative_to(base):
         raise file_error(path_text, "the path leaves the workbook", "keep the file in the workbook's folder")
-    if not path.exists():
+    if there:
+        require_plain(path)
+    else:
         near = sorted(other.name for other in path.parent.glob("*")) if path.parent.is_dir() else []
         listed = f"in that folder: {', '.join(near[:8])}" if near else "its folder is empty or missing"
         raise file_error(path, "there is no such file", listed)
     return path
+
+
+def require_plain(path: Path) -> None:
+    """Raise TableError for pipes, devices and sockets: opening one may wait for ever."""
+    if not path.is_file() and not path.is_dir():
+        raise file_error(path, "this is neither a file nor a folder")
+
+
+def read_whole(path: Path, limit: int = MAX_WHOLE_BYTES) -> bytes:
+    """All bytes of a binary file of at most `limit` bytes."""
+    try:
+        size = path.stat().st_size
+        if size > limit:
+            raise file_error(path, f"the file has {size} bytes, more than {limit}", "cut it into several")
+        return path.read_bytes()
+    except OSError as err:
+        raise file_error(path, f"can't be read: {err.strerror or err}") from err
 
 
 def file_error(path: Path | str, cause: str, remedy: str = "", line: int | None = None) -> TableError:

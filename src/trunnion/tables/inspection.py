@@ -14,11 +14,12 @@ from trunnion.tables.candidates import Found, Series, search
 from trunnion.tables.ccsds import load_message, message_parts
 from trunnion.tables.confine import Limits, read_confined
 from trunnion.tables.delimited import HEAD, read_layout
-from trunnion.tables.files import Seal, file_error, first_bytes
+from trunnion.tables.files import Seal, file_error, first_bytes, read_whole, require_plain
 from trunnion.tables.questions import QUESTIONS
 from trunnion.tables.trajectories import KITTI_NAMES, TUM_NAMES
 from trunnion.tables.ulog_health import examine
 from trunnion.tables.ulog_messages import Dictionary, Message, walk_messages
+from trunnion.units import shown
 
 SAMPLE_ROWS = 100_000
 _MAX_SERIES = 200
@@ -49,7 +50,7 @@ class Inspection:
         if self.spec_lines:
             out += ["suggested spec lines (what stands behind ? the file does not say):"]
             out += [f"  {line}" for line in self.spec_lines]
-        return out
+        return [shown(line, 400) for line in out]
 
 
 def inspect_file(path: Path | str, limits: Limits | None = None) -> Inspection:
@@ -60,6 +61,7 @@ def inspect_file(path: Path | str, limits: Limits | None = None) -> Inspection:
     path = Path(path)
     if not path.exists():
         raise file_error(path, "there is no such file")
+    require_plain(path)
     name = detect_format(path)
     seal = Seal.of(path.resolve())
     report = Inspection(path, name, seal.size, seal.sha256)
@@ -196,7 +198,7 @@ def _keep_sample(payload: bytes, words: Dictionary, held: dict[int, bytearray]) 
 
 
 def _inspect_mavlink(report: Inspection, limits: Limits) -> None:
-    log = mavlink.walk_telemetry(report.path.read_bytes(), report.path)
+    log = mavlink.walk_telemetry(read_whole(report.path), report.path)
     report.troubles += [str(trouble) for trouble in log.damage.troubles()]
     for key in sorted(log.samples):
         samples = mavlink.unpack(log, key)
@@ -205,7 +207,7 @@ def _inspect_mavlink(report: Inspection, limits: Limits) -> None:
 
 
 def _inspect_dataflash(report: Inspection, limits: Limits) -> None:
-    log = dataflash.walk_flash(report.path.read_bytes(), report.path)
+    log = dataflash.walk_flash(read_whole(report.path), report.path)
     report.troubles += [str(trouble) for trouble in log.damage.troubles()]
     for name in sorted(log.samples)[:_MAX_SERIES]:
         samples = dataflash.fields_of(log, name)

@@ -12,7 +12,7 @@ import numpy as np
 
 from trunnion.tables.assembly import assemble
 from trunnion.tables.confine import Limits
-from trunnion.tables.files import Seal, file_error
+from trunnion.tables.files import Seal, file_error, read_whole
 from trunnion.tables.nearest import nearest_hint
 from trunnion.tables.packets import Damage, columns_of_fields
 from trunnion.tables.questions import require_answers
@@ -64,7 +64,7 @@ class TelemetryLog:
 def read_mavlink_table(statement: TableStatement, path: Path, limits: Limits) -> AttitudeTable:
     """One attitude message of one vehicle. Broken packets and checksums stop it unless damage is accepted."""
     seal = Seal.of(path)
-    log = walk_telemetry(path.read_bytes(), path)
+    log = walk_telemetry(read_whole(path), path)
     key = _choose(log, statement, path)
     samples = unpack(log, key)
     require_answers("mavlink", statement, _facts(samples), path)

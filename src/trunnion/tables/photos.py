@@ -27,6 +27,7 @@ from trunnion.tables.nearest import nearest_hint
 from trunnion.tables.questions import require_answers
 from trunnion.tables.statements import TableStatement
 from trunnion.tables.table import AttitudeTable
+from trunnion.units import shown
 
 SUFFIXES = (".jpg", ".jpeg", ".tif", ".tiff", ".dng", ".xmp")
 _SEARCHED = 4 << 20  # bytes from the start of a file in which the packet must lie
@@ -124,7 +125,7 @@ def _find(photo: Path, tags: dict[str, str], name: str, faults: list[Fault]) -> 
     found = [key for key in tags if key.partition(":")[2] == name]
     if len(found) == 1:
         return tags[found[0]]
-    cause = f"the tag '{name}' is there as {' and '.join(found)}" if found else f"there is no tag '{name}'"
+    cause = f"the tag '{name}' is there as {shown(' and '.join(found), 200)}" if found else f"there is no tag '{name}'"
     faults.append(Fault(cause, nearest_hint(name, tags), Place(photo)))
     return None
 
@@ -134,7 +135,7 @@ def _number(photo: Path, tags: dict[str, str], name: str, faults: list[Fault]) -
     try:
         return float(text) if text is not None else float("nan")
     except ValueError:
-        faults.append(Fault(f"the tag '{name}' is '{text}', not a number", place=Place(photo)))
+        faults.append(Fault(f"the tag '{name}' is '{shown(text or '', 40)}', not a number", place=Place(photo)))
         return float("nan")
 
 
@@ -148,7 +149,9 @@ def _time(photo: Path, tags: dict[str, str], place: int, statement: TableStateme
     try:
         moment = _moment(text.strip())
     except ValueError:
-        faults.append(Fault(f"the tag '{statement.time_column}' is '{text[:40]}', not a date", place=Place(photo)))
+        faults.append(
+            Fault(f"the tag '{statement.time_column}' is '{shown(text, 40)}', not a date", place=Place(photo))
+        )
         return 0
     zero = datetime.datetime(2000, 1, 1, tzinfo=moment.tzinfo and datetime.UTC)
     return (moment - zero) // datetime.timedelta(microseconds=1)

@@ -180,7 +180,7 @@ class _Reader:
             topic=self._text("topic"),
             instance=self._count("instance", 0),
             segment=self._count("segment", None),
-            separator=self._text("separator") or ",",
+            separator=self._separator(),
             norm_tolerance=self._tolerance(),
             sha256=self._digest(),
             reader_memory=self._quantity("reader memory", "data size"),
@@ -238,6 +238,13 @@ class _Reader:
         if not number > 0.0:
             self._fault(key, f"is {value!r}", "give a quantity above zero")
         return number
+
+    def _separator(self) -> str:
+        value = self.plain.get("separator", ",")
+        if not isinstance(value, str) or len(value) != 1 or value in '"\r\n#.+-' or value.isalnum():
+            self._fault("separator", f"is {value!r}", "give the one character between two cells")
+            return ","
+        return value
 
     def _tolerance(self) -> float:
         value = self.plain.get("norm tolerance", 1e-3)

@@ -15,6 +15,7 @@ from pathlib import Path
 from trunnion.tables.files import file_error
 from trunnion.tables.table import SHOWN_ROWS, Trouble
 from trunnion.tables.ulog_messages import HEADER_SIZE, MAGIC, SYNC, Break, Dictionary, Message, Topic, walk_messages
+from trunnion.units import shown
 
 _ZERO_RUN = bytes(32)  # this many zero bytes inside a text are no text
 _UNKNOWN_INCOMPATIBLE = 0xFE  # of the first flag byte; bit 0 (appended data) is known
@@ -32,7 +33,8 @@ class Series:
     @property
     def label(self) -> str:
         """Topic name, with the instance where it is not the first."""
-        return f"{self.topic.name}[{self.topic.instance}]" if self.topic.instance else self.topic.name
+        name = shown(self.topic.name)
+        return f"{name}[{self.topic.instance}]" if self.topic.instance else name
 
 
 @dataclass
