@@ -11,6 +11,7 @@ from trunnion.attitude.sequences import Sense, Sequence
 from trunnion.errors import AttitudeError
 from trunnion.symbolic.checking import confirmation, independent_check
 from trunnion.symbolic.derivation import derive
+from trunnion.symbolic.setting import Setting
 
 SECTIONS = [
     "The three elementary turns",
@@ -30,14 +31,14 @@ def agree(derivation) -> None:
     assert not wrong, wrong
 
 
-@pytest.mark.parametrize("number", range(0, 24, 3))
+@pytest.mark.parametrize("number", [0, 5, 10, 15, 18])
 def test_any_convention_agrees_with_scipy(number: int, any_convention) -> None:
-    """One each of eight sequences with random senses, offsets, constants and mapping direction."""
+    """Five sequences, one of them about fixed axes, with random senses, offsets, constants and mapping direction."""
     agree(derive(any_convention(number)))
 
 
 @pytest.mark.full
-@pytest.mark.parametrize("number", range(120))
+@pytest.mark.parametrize("number", range(60))
 def test_many_conventions_agree_with_scipy(number: int, any_convention) -> None:
     agree(derive(any_convention(number)))
 
@@ -81,7 +82,7 @@ def test_unknown_step_names_the_steps_there_are(convention) -> None:
 
 
 def test_confirmation_lists_matrix_quaternion_and_angles(any_convention) -> None:
-    rows = confirmation(derive(any_convention(7)))
+    rows = confirmation(derive(any_convention(15)))
     assert len(rows) == 16
     assert all(difference < 1e-12 for *_, difference in rows)
 
@@ -132,9 +133,9 @@ def test_arbitrary_constant_is_stated_by_its_numbers(convention) -> None:
     ],
 )
 def test_letters_follow_the_angle_names(names, letters, convention) -> None:
-    derivation = derive(convention(angle_names=names))
-    assert tuple(turn.letter for turn in derivation.setting.turns) == letters
-    assert {row[0] for row in derivation.notation} >= set(letters)
+    setting = Setting(convention(angle_names=names))
+    assert tuple(turn.letter for turn in setting.turns) == letters
+    assert {row[0] for row in setting.notation()} >= set(letters)
 
 
 @pytest.mark.parametrize(

@@ -30,7 +30,7 @@ def widths(formulas: dict[str, str], folder) -> dict[str, float]:
     return {row["id"]: row["w"] for row in json.loads(compiler.query("<w>", field="value"))}
 
 
-@pytest.mark.parametrize("number", [2, 14])
+@pytest.mark.parametrize("number", [5, 10])
 def test_each_formula_fits(number: int, any_convention, tmp_path) -> None:
     steps = [step for step in derive(any_convention(number)).steps if step.latex]
     found = widths({step.id: typst_maths(read_formula(step.latex)) for step in steps}, tmp_path)
@@ -40,12 +40,12 @@ def test_each_formula_fits(number: int, any_convention, tmp_path) -> None:
 
 
 @pytest.mark.full
-@pytest.mark.parametrize("number", range(24))
+@pytest.mark.parametrize("number", range(0, 24, 2))
 def test_each_formula_of_many_conventions_fits(number: int, any_convention, tmp_path) -> None:
     test_each_formula_fits(number, any_convention, tmp_path)
 
 
-@pytest.mark.parametrize("number", [2, 6, 9, 15])
+@pytest.mark.parametrize("number", [0, 10, 15, 18])
 def test_mathematics_in_prose_and_notation_is_read(number: int, any_convention) -> None:
     derivation = derive(any_convention(number))
     for step in derivation.steps:

@@ -151,7 +151,7 @@ def close(actual, expected, atol: float) -> None:
 
 
 @pytest.mark.needs("gcc")
-@pytest.mark.parametrize("number", [0, 5, 10, 15, 20])
+@pytest.mark.parametrize("number", [0, 5, 10, 15, 18])
 def test_c_agrees_with_the_library_for_any_convention(number: int, any_convention, tmp_path) -> None:
     compare(any_convention(number), tmp_path)
 
@@ -166,7 +166,7 @@ def test_c_agrees_with_the_library_for_all_24(sequence: Sequence, sense: Sense, 
 
 @pytest.mark.full
 @pytest.mark.needs("gcc")
-@pytest.mark.parametrize("number", range(48))
+@pytest.mark.parametrize("number", range(24))
 def test_c_agrees_with_the_library_for_many_conventions(number: int, any_convention, tmp_path) -> None:
     compare(any_convention(number), tmp_path, 1000)
 
@@ -223,7 +223,7 @@ def load(convention: Convention, folder: Path):
     return module
 
 
-@pytest.mark.parametrize("number", [1, 6, 11, 18])
+@pytest.mark.parametrize("number", [0, 10, 18])
 def test_python_agrees_with_the_library(number: int, any_convention, tmp_path) -> None:
     convention = any_convention(number)
     module = load(convention, tmp_path)

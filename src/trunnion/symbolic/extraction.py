@@ -91,15 +91,11 @@ def _chain_entries(book: Book) -> None:
     prose = f"From the stated matrix back to the chain.{used}"
     if setting.exact:
         claim = identity(setting.chain_symbols, setting.back)
-        book.show(
-            "chain-entries",
-            "Back to the chain",
-            prose,
-            lhs,
-            setting.latex(setting.back),
-            claim,
-            samples=setting.anywhere,
-        )
+        if setting.wide:
+            lhs, rhs = r"\mathbf{E}", f"{left}{R}{right}"
+        else:
+            rhs = setting.latex(setting.back)
+        book.show("chain-entries", "Back to the chain", prose, lhs, rhs, claim, samples=setting.anywhere)
         return
     measured = nine("M") if setting.stated_letter == "R" else nine("M").T
     claim = identity(

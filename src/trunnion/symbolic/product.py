@@ -165,13 +165,14 @@ def _constants(book: Book) -> None:
             samples=setting.anywhere,
         )
         return
-    shown = setting.L.matrix * _shown_chain(setting) * setting.B.matrix
+    product = r"\, ".join(filter(None, letters))
+    shown = sympy.ImmutableMatrix((setting.L.matrix * _shown_chain(setting) * setting.B.matrix).applyfunc(sympy.expand))
     book.show(
         "whole",
         "The whole map",
         numbers + _commuting(setting),
-        r"\mathbf{R} = " + r"\, ".join(filter(None, letters)),
-        setting.latex(sympy.ImmutableMatrix(shown.applyfunc(sympy.expand))),
+        r"\mathbf{R}" if setting.wide else rf"\mathbf{{R}} = {product}",
+        product if setting.wide else setting.latex(shown),
         identity(nine("R"), setting.R),
         replacements=dict(zip(nine("R"), setting.L.matrix * setting.E * setting.B.matrix, strict=True)),
         samples=setting.anywhere,

@@ -206,6 +206,11 @@ class Setting:
         return self.L.kind in ("identity", "relabelling") and self.B.kind in ("identity", "relabelling")
 
     @cached_property
+    def wide(self) -> bool:
+        """True when entries multiplied out with both constants would outgrow a page: the factors are shown instead."""
+        return self.L.kind == self.B.kind == "turn"
+
+    @cached_property
     def back(self) -> sympy.ImmutableMatrix:
         """The chain in entries of the stated matrix, E = Lᵀ R Bᵀ; exact constants only."""
         R = self.M if self.convention.maps_body_to_reference else self.M.T
