@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import hashlib
 import os
 from collections import Counter
@@ -35,7 +36,8 @@ def bind(
     missing: Counter[str] = Counter()
     page = write_html(document, house, missing).encode("utf-8")
     made: dict[str, bytes] = {HTML_NAME: page}
-    pages, scaled = None, ()
+    pages: int | None = None
+    scaled: tuple[tuple[str, str, float], ...] = ()
     if pdf:
         from trunnion.binding.pdf import write_pdf
 
@@ -62,6 +64,7 @@ def _write(path: Path, content: bytes) -> None:
         beside.write_bytes(content)
         os.replace(beside, path)
     except OSError as error:
-        beside.unlink(missing_ok=True)
+        with contextlib.suppress(OSError):
+            beside.unlink(missing_ok=True)
         cause = f"{path} cannot be written: {error.strerror or error}"
         raise StoreError(cause, remedy="choose a folder that can be written to, with room on its disk") from error

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field, replace
 
 from trunnion.binding import blocks as b
@@ -76,7 +76,8 @@ def calculation_part(sheet: Sheet, package: PackageInput, words: Words, registry
         registry.faults += reader.faults
         registry.warnings += reader.warnings
         registry.code += [(sheet.id, cell, source) for cell, source in reader.code]
-    numbered = _Numbering(sheet, package, words, registry, name).number(_shifted(_gathered(body, words), sheet))
+    body = _without_echoes(_shifted(_gathered(body, words), sheet))
+    numbered = _Numbering(sheet, package, words, registry, name).number(body)
     foot = [b.Heading(2, b.line(words("Sign-off"))), sign_off(sheet.signatures, words)]
     return b.Part(
         anchor=sheet.id,
@@ -125,7 +126,7 @@ def _addressed(rows: list[RequirementRow], words: Words) -> b.Table:
         if row.candidate:
             name = (*name, *b.line(f" ({row.candidate})"))
         body.append((name, b.line(row.asks), b.line(row.result or "–"), verdict_line(row, words)))
-    return b.Table(tuple(b.line(words(h)) for h in heads), tuple(body), "llll", widths=(2, 4, 2, 2))
+    return b.Table(tuple(b.line(words(h)) for h in heads), tuple(body), "llll", widths=(2.7, 4, 2, 2.2))
 
 
 # ---- gathering results and checks into tables --------------------------------------------------------------
@@ -159,19 +160,23 @@ def _results_table(rows: list, words: Words) -> b.Table:
     keep = [True, any(r.of for r in rows), any(r.over for r in rows), True, True, any(r.where for r in rows)]
     body = []
     for row in rows:
-        value: b.Line = (b.Marked("value", b.line(row.value)),)
+        value: b.Line = (b.Marked("value", b.line(row.value.replace(" ", "\u00a0"))),)
         cells = [b.line(row.quantity), b.line(row.of), b.line(row.over), value, b.line(row.basis), b.line(row.where)]
         body.append(tuple(cell for cell, kept in zip(cells, keep, strict=True) if kept))
-    widths = [w for w, kept in zip((2.2, 2, 2.2, 2, 1.8, 3.2), keep, strict=True) if kept]
     return b.Table(
         tuple(b.line(words(h)) for h, kept in zip(heads, keep, strict=True) if kept),
         tuple(body),
         "".join("r" if h == "Value" else "l" for h, kept in zip(heads, keep, strict=True) if kept),
-        caption=b.line(words("Results")),
-        widths=tuple(widths),
+        caption=b.line(f"{words('Results')}: {_named(row.quantity for row in rows)}"),
         row_anchors=tuple(row.anchor for row in rows),
         look="results",
     )
+
+
+def _named(names: Iterable[str], most: int = 3) -> str:
+    """The different names, the first few of them."""
+    different = [name for name in dict.fromkeys(names) if name]
+    return ", ".join(different[:most]) + (", …" if len(different) > most else "")
 
 
 def _checks_table(rows: list, words: Words) -> b.Table:
@@ -187,7 +192,6 @@ def _checks_table(rows: list, words: Words) -> b.Table:
         tuple(body),
         "lrrrrll",
         caption=b.line(words("Independent check")),
-        widths=(3.2, 2, 2, 1.7, 1.6, 2, 1.7),
         row_anchors=tuple(r.anchor for r in rows),
         row_classes=tuple("" if r.agrees else "v-fails" for r in rows),
         look="checks",
@@ -208,6 +212,19 @@ def _shifted(found: list[b.Block], sheet: Sheet) -> list[b.Block]:
             if index < 3 and block.level == 1 and plain(block.parts).strip().lower() == sheet.title.strip().lower():
                 continue
             block = replace(block, level=min(max(block.level, 2), _DEEPEST))
+        out.append(block)
+    return out
+
+
+def _without_echoes(found: list[b.Block]) -> list[b.Block]:
+    """Formulas whose caption only repeats the title of the statement before them, without that caption."""
+    out: list[b.Block] = []
+    said = ""
+    for block in found:
+        if isinstance(block, b.Equation) and said and plain(block.caption).strip() == said:
+            block = replace(block, caption=())
+        if not (isinstance(block, b.Code) and block.folded):
+            said = block.title.strip() if isinstance(block, b.Callout) else ""
         out.append(block)
     return out
 

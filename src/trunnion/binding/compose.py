@@ -8,7 +8,7 @@ from collections.abc import Callable
 from dataclasses import replace
 
 from trunnion.binding import blocks as b
-from trunnion.binding.calculation import Registry, calculation_part, sign_off, signature_words, verdict_line
+from trunnion.binding.calculation import Registry, calculation_part, plain, sign_off, signature_words, verdict_line
 from trunnion.binding.glossary import CONTENTS_NOTE, terms, usual_contents
 from trunnion.binding.house import House
 from trunnion.binding.markdown import read_line
@@ -120,9 +120,15 @@ class _Composer:
         return b.Link(anchor, b.line(self.registry.labels[anchor]), page=True)
 
     def links(self, found: tuple[Evidence, ...]) -> b.Line:
+        """Ways to all evidence, one a line, each table or figure named once."""
         out: list[b.Inline] = []
-        for index, evidence in enumerate(found):
-            out += [*b.line(", " if index else ""), self.link(evidence)]
+        seen: set[str] = set()
+        for evidence in found:
+            way = self.link(evidence)
+            words = plain((way,))
+            if words not in seen:
+                out += [b.Break(), way] if out else [way]
+            seen.add(words)
         return tuple(out) or b.line("–")
 
     # -- front -------------------------------------------------------------------------------------------
@@ -183,7 +189,13 @@ class _Composer:
         return b.Part("history", self.words("Revision history"), (table,))
 
     def contents(self) -> b.Part:
-        return b.Part("contents", self.words("Contents"), (b.Contents("sections"),), look="contents", flows=True)
+        return b.Part(
+            "contents",
+            self.words("Contents"),
+            (b.Contents("sections"),),
+            look="contents",
+            flows=bool(self.package.revisions),
+        )
 
     def lists(self) -> b.Part:
         return b.Part(
@@ -253,7 +265,7 @@ class _Composer:
             caption=b.line(self.words("Requirement matrix")),
             anchor="tbl/matrix",
             number="1",
-            widths=(3.1, 2.4, 2.0, 2.3, 1.9, 1.2),
+            widths=(3.2, 2.4, 2.0, 2.25, 1.75, 1.5),
             row_anchors=tuple(anchors),
             row_classes=tuple(classes),
             look="matrix",

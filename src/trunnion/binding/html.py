@@ -12,14 +12,14 @@ from pathlib import Path
 
 from trunnion.binding import blocks as b
 from trunnion.binding.calculation import unlinked
-from trunnion.binding.faces import face_rules, subset_woff
+from trunnion.binding.faces import face_rules, figure_rules
 from trunnion.binding.house import House
 from trunnion.binding.maths import Formula
 from trunnion.binding.maths.mathml import mathml
 from trunnion.binding.maths.symbols import styled
 from trunnion.binding.package import Verdict
 from trunnion.binding.words import Words
-from trunnion.glyphs import FALLBACK_FACE, can_show, visible_text
+from trunnion.glyphs import can_show, visible_text
 
 POLICY = (
     "default-src 'none'; style-src 'unsafe-inline'; img-src data:; font-src data:; base-uri 'none'; form-action 'none'"
@@ -78,6 +78,7 @@ class _Writer:
         self.figures: list[tuple[str, str]] = []
         self.tables: list[tuple[str, str]] = []
         self.anonymous = 0
+        self.inside = ""
 
     def text(self, text: str) -> str:
         """Words with nothing in them that could be markup, unseen characters made visible."""
@@ -142,6 +143,7 @@ class _Writer:
         kind = self.logo() + kind if part.look == "cover" else kind
         anchor = self.id(part.anchor)
         head = f'{kind}<h{level} id="h-{anchor}">{number}{self.text(part.title)}</h{level}>'
+        self.inside = part.anchor
         blocks = "\n".join(self.block(block) for block in part.blocks)
         look = f' class="{part.look or ("calculation" if part.calculation else "part")}"'
         return f'<section id="{anchor}"{look} aria-labelledby="h-{anchor}">\n{head}\n{blocks}\n</section>'
@@ -191,7 +193,7 @@ class _Writer:
         return "".join(self.block(block) for block in found)
 
     def heading(self, block: b.Heading) -> str:
-        level = min(block.level + 1, 6)
+        level = min(block.level + (0 if self.inside == "cover" else 1), 6)
         anchor = f' id="{self.id(block.anchor)}"' if block.anchor else ""
         return f"<h{level}{anchor}>{self.line(block.parts)}</h{level}>"
 
@@ -344,16 +346,7 @@ def _with_font(svg: bytes) -> bytes:
     if "<text" not in text:
         return svg
     chars = frozenset(c for c in re.sub(r"<[^>]*>|&#?\w+;", "", text) if c.isprintable()) | frozenset("&<>")
-    families = [
-        (family, file)
-        for family, file in (("DejaVu Sans", FALLBACK_FACE), ("Trunnion Sans", "TrunnionSans-Regular.ttf"))
-        if family in text
-    ]
-    rules = "".join(
-        f"@font-face{{font-family:'{family}';src:url(data:font/woff;base64,"
-        f"{base64.b64encode(subset_woff(file, chars)).decode('ascii')})}}"
-        for family, file in families
-    )
+    rules = figure_rules(text, chars)
     if not rules:
         return svg
     return re.sub(r"(<svg\b[^>]*>)", lambda m: f"{m.group(1)}<style>{rules}</style>", text, count=1).encode("utf-8")

@@ -23,7 +23,9 @@ def quantity_text(value: object, unit: str) -> str:
     """A number with its unit, or a text as it stands."""
     shown = number_text(value)
     number = isinstance(value, int | float) and not isinstance(value, bool)
-    return with_unit(shown, unit).replace(" ", "\u00a0") if number and unit not in ("", "1") else shown
+    if not number or unit in ("", "1"):
+        return shown
+    return f"{shown}\u00a0{unit}" if "·10" in shown else with_unit(shown, unit).replace(" ", "\u00a0")
 
 
 def number_text(value: object) -> str:
@@ -35,7 +37,7 @@ def number_text(value: object) -> str:
     if value != 0 and (abs(value) < 1e-3 or abs(value) >= 1e7):
         mantissa, exponent = f"{value:.2e}".split("e")
         return signed(f"{mantissa}·10{str(int(exponent)).translate(_RAISED)}")
-    return signed(f"{value:.6g}")
+    return signed(f"{value + 0.0:.6g}")
 
 
 def signed(text: str) -> str:

@@ -16,17 +16,19 @@ from pathlib import Path
 from typing import Any
 
 from trunnion.binding import blocks as b
+from trunnion.binding.calculation import plain
 from trunnion.binding.house import PAPERS, House
 from trunnion.binding.maths import Formula
 from trunnion.binding.maths.typst_maths import quoted, typst_maths
 from trunnion.binding.package import Verdict
 from trunnion.binding.words import Words
 from trunnion.errors import BindingError, Fault, Place
-from trunnion.glyphs import FONT_FOLDER, visible_text
+from trunnion.glyphs import FONT_FOLDER, TEXT_FACES, visible_text
 
-STANDARDS = ["a-3a", "ua-1"]
+STANDARDS: list[Any] = ["a-3a", "ua-1"]
 LEAST_SCALE = 0.7
 TEXT_WIDTH_MM, LARGEST_HEIGHT_MM = 160.0, 190.0
+TABLE_SIZE = 8.5  # pt
 _TEMPLATE = "trunnion.typ"
 _BADGES = {Verdict.MEETS: "meets", Verdict.DOES_NOT_MEET: "fails", Verdict.NOT_SHOWN: "unshown"}
 _MARKED = {"strong": "strong", "emph": "emph", "strike": "strike", "code": "code", "quiet": "quiet", "hash": "hash"}
@@ -167,7 +169,7 @@ class _Writer:
         else:
             kicker = self.text(self.words("Appendix")) if part.number.isalpha() else "none"
             head = f"#part-head({kicker}, {self.text(part.number)}, {title}, {anchor}, flows: {str(flows).lower()})"
-        blocks = "\n".join(self.block(block) for block in part.blocks)
+        blocks = self.joined(part.blocks)
         where = part.title.replace("\n", " ")
         return f"// {where}\n{head}\n{blocks}"
 
@@ -202,6 +204,8 @@ class _Writer:
             return f"#goes({quoted(part.target)}, {self.content(part.parts)});{page}"
         if isinstance(part, b.Marked):
             name = _MARKED.get(part.how)
+            if part.how == "value" and len(plain(part.parts)) <= 26:
+                name = "whole-value"
             return f"#{name}{self.content(part.parts)};" if name else self.line(part.parts)
         raise TypeError(f"no typst for {type(part).__name__}")
 
@@ -213,7 +217,17 @@ class _Writer:
         return _BLOCKS[type(block)](self, block)
 
     def blocks(self, found: tuple[b.Block, ...]) -> str:
-        return "[" + "\n".join(self.block(block) for block in found) + "]"
+        return f"[{self.joined(found)}]"
+
+    def joined(self, found: tuple[b.Block, ...]) -> str:
+        """Blocks one after another; a statement stays with the formula or table it speaks of."""
+        seen = [block for block in found if not (isinstance(block, b.Code) and block.folded)]
+        out = []
+        for block, after in zip(seen, [*seen[1:], None], strict=True):
+            keeps = isinstance(block, b.Callout) and isinstance(after, b.Equation | b.Figure)
+            keeps = keeps or (isinstance(block, b.Callout) and isinstance(after, b.Table) and _small(after))
+            out.append(self.callout(block, keeps=True) if keeps else self.block(block))  # type: ignore[arg-type]
+        return "\n".join(out)
 
     def heading(self, block: b.Heading) -> str:
         name = f"#label({quoted(block.anchor)})" if block.anchor else ""
@@ -238,9 +252,9 @@ class _Writer:
     def code(self, block: b.Code) -> str:
         if block.folded:
             return ""  # stands in the appendix
-        language = f"lang: {quoted(block.language)}, " if block.language in ("python", "yaml") else ""
         title = self.text(block.title) if block.title else "none"
-        return f"#listing({title}, raw({self.text(block.text)}, {language}block: true))"
+        shown = _VERY_LONG_WORD.sub(lambda m: _chopped(m.group(), 40), visible_text(block.text, self.missing))
+        return f"#listing({title}, raw({quoted(shown)}, block: true))"
 
     def equation(self, block: b.Equation) -> str:
         name = quoted(block.anchor) if block.anchor else "none"
@@ -264,12 +278,16 @@ class _Writer:
                 lead = f"#here-is({quoted(anchor)});" if anchor and column == 0 else ""
                 cells.append(f"[{lead}{self.line(cell)}]")
         idle = "".join(f"{i}, " for i, name in enumerate(block.row_classes) if "idle" in name)
-        made = f"data-table(({columns}), ({align},), ({heads},), ({', '.join(cells)},), idle: ({idle}), size: {size}pt)"
+        whole = str(_small(block)).lower()
+        solid = str(all(len(plain(cell)) <= 600 for row in block.rows for cell in row)).lower()
+        options = f"idle: ({idle}), size: {size}pt, whole: {whole}, solid: {solid}"
+        made = f"data-table(({columns}), ({align},), ({heads},), ({', '.join(cells)},), {options})"
         if not (block.caption or block.number):
             return f"#{made}"
         name = quoted(block.anchor) if block.anchor else "none"
         notes = "".join(f"{self.content(note)}, " for note in block.notes)
-        return f"#captioned({name}, {self.caption('Table', block.number, block.caption)}, {made}, ({notes}))"
+        caption = self.caption("Table", block.number, block.caption)
+        return f"#captioned({name}, {caption}, {made}, ({notes}), whole: {whole})"
 
     def caption(self, word: str, number: str, parts: b.Line) -> str:
         lead = f"#strong[#{self.text(f'{self.words(word)} {number}')}];#h(0.6em);" if number else ""
@@ -298,9 +316,10 @@ class _Writer:
         rows = tuple(tuple(b.line(cell) for cell in row) for row in block.rows)
         return self.table(b.Table(heads, rows, "lllll", widths=(2, 3, 2, 3, 3)))
 
-    def callout(self, block: b.Callout) -> str:
+    def callout(self, block: b.Callout, *, keeps: bool = False) -> str:
         title = self.text(block.title) if block.title else "none"
-        return f"#callout({quoted(block.look)}, {title}, {self.blocks(block.blocks)})"
+        sticky = str(keeps).lower()
+        return f"#callout({quoted(block.look)}, {title}, {self.blocks(block.blocks)}, keeps: {sticky})"
 
     def contents(self, block: b.Contents) -> str:
         if block.of == "sections":
@@ -345,40 +364,74 @@ def _clipped(title: str, most: int = 72) -> str:
 
 # ---- sizes -------------------------------------------------------------------------------------------------
 
-_LONG_WORD = re.compile(r"\S{25,}")
+_LONG_WORD = re.compile(r"[^\s\u00a0]{14,}")
+_VERY_LONG_WORD = re.compile(r"\S{80,}")
 
 
 def _breakable(text: str) -> str:
-    """Words no line can hold get invisible places to break, one every 16 characters."""
-    return _LONG_WORD.sub(lambda m: "\u200b".join(m.group()[i : i + 16] for i in range(0, len(m.group()), 16)), text)
+    """Long words get invisible places to break: after their own stops, and in runs that have none."""
+
+    def split(match: re.Match[str]) -> str:
+        word = re.sub(r"(?<=[./_:;,])(?=[^\s./_:;,])", "\u200b", match.group())
+        return re.sub(r"[^\u200b]{25,}", lambda m: _chopped(m.group(), 16), word)
+
+    return _LONG_WORD.sub(split, text)
+
+
+def _chopped(word: str, every: int) -> str:
+    return "\u200b".join(word[i : i + every] for i in range(0, len(word), every))
 
 
 def _columns(block: b.Table) -> tuple[str, float]:
-    """Column widths and letter size: as wide as needed when all fits, shares of the line when not."""
+    """Column widths and letter size: as wide as needed when all fits, else shares that hold every word whole."""
     if block.widths:
-        return ", ".join(f"{width}fr" for width in block.widths) + ",", 8.5
+        return "".join(f"{width}fr, " for width in block.widths), TABLE_SIZE
     longest, words = _measured(block)
-    per_mm = 8.5 * 0.55 * 0.3528  # mean width of a letter at 8.5 pt, in mm
-    gaps = 2.9 * len(longest)
-    if sum(longest) * per_mm + gaps <= TEXT_WIDTH_MM:
-        return "auto, " * len(longest), 8.5
-    least = sum(words) * per_mm + gaps
-    size = 8.5 if least <= TEXT_WIDTH_MM else max(6.0, round(8.5 * (TEXT_WIDTH_MM - gaps) / (least - gaps), 1))
-    shares = [max(word + 1.5, min(length, 45) ** 0.75) for length, word in zip(longest, words, strict=True)]
-    return ", ".join(f"{share:.2f}fr" for share in shares) + ",", size
+    per_em = TABLE_SIZE * 0.3528
+    room = (TEXT_WIDTH_MM - 2.9 * len(longest)) / per_em  # in em, cell insets taken off
+    if sum(longest) <= room:
+        return "auto, " * len(longest), TABLE_SIZE
+    needed = sum(words)
+    size = TABLE_SIZE if needed <= room else max(5.5, round(TABLE_SIZE * room / needed, 1))
+    spare = max(0.0, room - needed)
+    wishes = [min(long, 40.0) - min(word, 40.0) + 0.01 for long, word in zip(longest, words, strict=True)]
+    gap = 2.9 / per_em
+    shares = [word + gap + spare * wish / sum(wishes) for word, wish in zip(words, wishes, strict=True)]
+    return "".join(f"{share:.3f}fr, " for share in shares), size
 
 
-def _measured(block: b.Table) -> tuple[list[int], list[int]]:
-    """Of each column the longest cell and the longest unbreakable word, in letters."""
-    from trunnion.binding.calculation import plain
-
-    longest, words = [1] * len(block.headers), [1] * len(block.headers)
+def _measured(block: b.Table) -> tuple[list[float], list[float]]:
+    """Of each column the longest cell and the longest unbreakable word, in em."""
+    longest, words = [1.0] * len(block.headers), [1.0] * len(block.headers)
     for row in (block.headers, *block.rows):
         for column, cell in enumerate(row):
             text = re.sub(r"\\[A-Za-z]+|[{}\\^_]", "", plain(cell))
-            longest[column] = max(longest[column], len(text))
-            words[column] = max([words[column], *(min(len(word), 25) for word in text.split(" "))])
+            longest[column] = max([longest[column], *(_em(line) for line in text.split("\n"))])
+            pieces = _breakable(text).replace("\u200b", " ").split(" ")
+            words[column] = max([words[column], *(_em(piece) for piece in pieces)])
     return longest, words
+
+
+@functools.cache
+def _advances() -> dict[str, float]:
+    """The width of each letter of the text face in em, digits all alike as in tables."""
+    from fontTools.ttLib import TTFont
+
+    font = TTFont(FONT_FOLDER / TEXT_FACES[2], lazy=True)
+    metrics, unit = font["hmtx"].metrics, font["head"].unitsPerEm
+    widths = {chr(code): metrics[name][0] / unit for code, name in font.getBestCmap().items()}
+    return widths | dict.fromkeys("0123456789", max(widths[digit] for digit in "0123456789"))
+
+
+def _em(text: str) -> float:
+    """The width of a text in em, set semibold (no narrower than what will be printed)."""
+    widths = _advances()
+    return sum(widths.get(char, 0.7) for char in text)
+
+
+def _small(block: b.Table) -> bool:
+    """Whether a table is kept on one page."""
+    return len(block.rows) <= 12 and sum(len(plain(cell)) for row in block.rows for cell in row) <= 1200
 
 
 @functools.lru_cache(maxsize=256)
