@@ -324,3 +324,27 @@ def test_a_link_out_of_the_folder_is_refused(csv_statement, tmp_path):
     (tmp_path / "book" / "table.csv").symlink_to(tmp_path / "outside.csv")
     with pytest.raises(TableError, match="leaves the workbook"):
         read_table(csv_statement(), tmp_path / "book")
+
+
+@pytest.mark.parametrize("torn", [False, True])
+def test_dates_are_times_whatever_unit_is_stated(csv_statement, write_rows, torn):
+    """The fast and the patient reading give the same seconds."""
+    rows = [(f"2031-05-01 10:00:{i * 0.25:09.6f}", 1, 0, 0, 0) for i in range(20)]
+    if torn:
+        rows[7] = (rows[7][0], "torn", 0, 0, 0)
+    table = read_table(csv_statement(accept_damaged="a test"), write_rows("t,w,x,y,z", rows))
+    expected = [i * 0.25 for i in range(20) if not (torn and i == 7)]
+    np.testing.assert_allclose(table.times, expected, rtol=0, atol=1e-9)
+    assert any("holds dates" in note for note in table.notes)
+
+
+def test_a_doubtful_unit_and_rounded_quaternions_are_noted(csv_statement, write_rows):
+    root = write_rows("t,w,x,y,z", [(i * 20_000, 0.6, 0, 0, 0.8003) for i in range(20)])
+    notes = read_table(csv_statement(), root).notes
+    assert any("is the time in 's'?" in note for note in notes)
+    assert any("made unit: lengths were off 1 by up to 0.00024" in note for note in notes)
+
+
+def test_columns_nobody_asked_for_may_be_anything(csv_statement, write_rows):
+    root = write_rows("a,t,w,x,a,y,z,note", [("?", i, 1, 0, "b,".strip(","), 0, 0, "text") for i in range(3)])
+    assert len(read_table(csv_statement(), root)) == 3

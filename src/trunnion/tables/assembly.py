@@ -16,6 +16,9 @@ from trunnion.tables.forms import continuous_signs, to_quaternions
 from trunnion.tables.statements import TableStatement
 from trunnion.tables.table import AttitudeTable, Trouble
 
+#: Mean steps outside these (s) make the stated unit of time doubtful: 10 us, one hour.
+_USUAL_STEPS = (1e-5, 3600.0)
+
 
 @dataclass(frozen=True)
 class Before:
@@ -51,7 +54,7 @@ def assemble(
         q, times, rows = q[~bad], times[~bad], rows[~bad]
     q, flips = continuous_signs(q, before.quaternion)
     findings, gap_notes = _gaps(times, rows, before, statement.max_gap)
-    notes = [*columns.notes, *converted.notes, *gap_notes]
+    notes = [*columns.notes, *converted.notes, *gap_notes, *_unit_doubt(times, unit, columns)]
     if flips:
         notes.append(f"the quaternion's sign flips {flips} times between rows; q and -q are one attitude")
     if origin:
@@ -68,6 +71,17 @@ def assemble(
         findings=(*columns.findings, *findings),
         dropped=tuple(damage),
     )
+
+
+def _unit_doubt(times: NDArray[np.float64], unit: str, columns: Columns) -> list[str]:
+    """A note where the usual step is so short or long that the stated unit is doubtful, or not used at all."""
+    if columns.time.dtype.kind == "M":
+        return [f"the time column holds dates; the stated unit '{unit}' is not used"]
+    if len(times) < 3:
+        return []
+    step = float((times[-1] - times[0]) / (len(times) - 1))
+    shortest, longest = _USUAL_STEPS
+    return [] if shortest <= step <= longest else [f"the mean step is {step:.3g} s: is the time in '{unit}'?"]
 
 
 def refuse_damage(

@@ -6,6 +6,7 @@ Lines that begin with # before the header are comments. Row numbers count data r
 from __future__ import annotations
 
 import csv
+import datetime
 import io
 from collections.abc import Iterator
 from dataclasses import dataclass, field
@@ -204,6 +205,8 @@ class _Report:
     """Counts and first rows of each kind of wrong row."""
 
     counts: dict[str, int] = field(default_factory=dict)
+    dates: int = 0
+    plain_times: int = 0
     firsts: dict[str, list[tuple[int, int, str]]] = field(default_factory=dict)
 
     def add(self, kind: str, row: int, line: int, detail: str) -> None:
@@ -237,7 +240,10 @@ def read_patiently(
     kept = list(_parsed_rows(lines, layout, names, separator, report, first_row))
     matrix = np.array([numbers for _, numbers in kept], dtype=float).reshape(-1, len(names))
     rows = np.array([row for row, _ in kept], dtype=np.int64)
-    return Columns(matrix[:, 0], list(matrix[:, 1:].T), rows, damage=report.troubles())
+    times: np.ndarray = matrix[:, 0]
+    if report.dates:
+        times = np.array([numbers[0] for _, numbers in kept], dtype=np.int64).astype("datetime64[ns]")
+    return Columns(times, list(matrix[:, 1:].T), rows, damage=report.troubles())
 
 
 def _parsed_rows(
@@ -277,11 +283,12 @@ def _parse_row(
     if len(cells) != width:
         report.add("ragged row", row, number, f"{len(cells)} cells where the header has {width}")
         return None
-    numbers = []
+    numbers: list[float] = []
     for place in places:
         cell = cells[place].strip()
         try:
-            numbers.append(float("nan") if cell in _EMPTY else _number(cell))
+            is_time = not numbers
+            numbers.append(_time_number(cell, report) if is_time else _cell_number(cell))
         except ValueError:
             report.add("no number", row, number, f"'{shown(cell, 30)}' in column '{shown(names[place])}'")
             return None
@@ -293,7 +300,27 @@ def split_line(text: str, separator: str) -> list[str]:
     return next(csv.reader([text.rstrip("\r\n")], delimiter=separator), []) if separator else text.split()
 
 
-def _number(cell: str) -> float:
+def _time_number(cell: str, report: _Report) -> float:
+    """A time as written, or a date as whole nanoseconds since 1970; a file has one or the other."""
+    if report.dates == 0:
+        try:
+            number = _cell_number(cell)
+        except ValueError:
+            if report.plain_times:
+                raise
+        else:
+            report.plain_times += 1
+            return number
+    moment = datetime.datetime.fromisoformat(cell)
+    zone = datetime.UTC if moment.tzinfo else None
+    microseconds = (moment - datetime.datetime(1970, 1, 1, tzinfo=zone)) // datetime.timedelta(microseconds=1)
+    report.dates += 1
+    return microseconds * 1000
+
+
+def _cell_number(cell: str) -> float:
+    if cell in _EMPTY:
+        return float("nan")
     if "_" in cell:  # Python's float reads 1_000; a table's writer did not mean that
         raise ValueError(cell)
     return float(cell)

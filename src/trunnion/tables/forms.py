@@ -22,6 +22,8 @@ Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
 
 _BLOCK_ROWS = 1 << 14
+#: Quaternions further off unit length than this are worth a note (32-bit floats stay below it).
+NORM_NOTE = 1e-6
 
 
 @dataclass(frozen=True)
@@ -53,16 +55,19 @@ def _from_quaternion_columns(columns: list[Array], statement: TableStatement) ->
             _normalise(ordered, block, vector_sign, q, length)
         finite = np.isfinite(length)
         tolerance = statement.norm_tolerance
-        off = finite & ~(np.abs(length - 1.0) <= tolerance)
+        miss = np.abs(length - 1.0)
+        off = finite & ~(miss <= tolerance)
     text = f"the quaternion's length is off 1 by more than {tolerance:g}"
     if np.any(off):
-        worst = int(np.flatnonzero(off)[np.argmax(np.abs(length[off] - 1.0))])
+        worst = int(np.flatnonzero(off)[np.argmax(miss[off])])
         text += f" (worst {length[worst]:.6g} in row {worst + 1})"
     troubles = [
         trouble_at("no number", "a quaternion cell is empty or not a finite number", ~finite),
         trouble_at("not unit", text, off, "check columns and order, or state a wider norm tolerance"),
     ]
-    return Converted(q, ~finite | off, [trouble for trouble in troubles if trouble], [])
+    largest = float(np.max(miss, initial=0.0, where=finite & ~off))
+    notes = [f"made unit: lengths were off 1 by up to {largest:.2g}"] if largest > NORM_NOTE else []
+    return Converted(q, ~finite | off, [trouble for trouble in troubles if trouble], notes)
 
 
 def _blocks(count: int) -> Iterator[slice]:
