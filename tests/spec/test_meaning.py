@@ -3,13 +3,24 @@
 from __future__ import annotations
 
 import math
+from types import SimpleNamespace
 
 import numpy as np
 import pytest
 from scipy.spatial.transform import Rotation
 
 from trunnion.errors import TrunnionError
-from trunnion.spec.build import convention_from_plain, frame_from_plain, mount_from_plain, region_from_plain
+from trunnion.spec.build import (
+    budget_from_plain,
+    convention_from_plain,
+    frame_from_plain,
+    gimbal_from_plain,
+    mount_from_plain,
+    pass_from_plain,
+    region_from_plain,
+    sector_from_plain,
+    survey_from_plain,
+)
 
 ROUNDING = 4e-15  # a few products of double precision
 LOCAL = {"name": "local", "axes": ["north", "east", "down"], "north": "true", "carried": "along"}
@@ -200,3 +211,55 @@ def test_plain_parts_that_are_wrong_say_so():
         frame_from_plain({"name": "f", "axis": ["x", "y", "z"]})
     with pytest.raises(TrunnionError, match="left-handed"):
         frame_from_plain({"name": "f", "axes": ["forward", "starboard", "up"]})
+
+
+def test_a_gimbal_turns_its_payload_as_its_words_say():
+    """Azimuth about down, elevation about east: scipy's z then y about moving axes, after the payload's own zero."""
+    plain = {
+        "name": "pedestal", "base": LOCAL, "zero": {"x": "north", "y": "down"},
+        "payload": {"name": "dish", "axes": ["x", "y", "z"]},
+        "joints": [{"name": "azimuth", "axis": "down", "travel": "any", "max rate": "10 deg/s"},
+                   {"name": "elevation", "axis": [0, 2, 0], "travel": ["-5 deg", "95 deg"]}],
+    }  # fmt: skip
+    chain = gimbal_from_plain(plain)
+    zero = np.column_stack([[1, 0, 0], [0, 0, 1], [0, -1, 0]])
+    expected = Rotation.from_euler("ZY", (30, 40), degrees=True).as_matrix() @ zero
+    close(chain.attitude(np.radians([30, 40])), expected)
+    assert chain.joints[0].rate == math.radians(10)
+    assert chain.joints[1].travel == (math.radians(-5), math.radians(95))
+
+
+def test_passes_sectors_surveys_and_budgets_carry_their_numbers():
+    circular = pass_from_plain(
+        {"name": "p", "circular": {"altitude": "500 km", "highest": "80 deg", "step": "1 s"}}, open_pass=None
+    )
+    assert math.degrees(math.asin(np.max(-circular.direction_g[:, 2]))) == pytest.approx(80, abs=1e-6)
+    table = SimpleNamespace(times=[0.0, 1.0, 2.0], azimuth=[0.0, 0.1, 0.2], elevation=[0.5, 0.5, 0.5])
+    columns = {"time": {"column": "t", "unit": "s"}, "azimuth": "a", "elevation": "e", "unit": "deg"}
+    made = pass_from_plain({"name": "q", "table": "q.csv", "columns": columns}, open_pass=lambda plain: table)
+    assert made.direction_g[0, 2] == pytest.approx(-math.sin(0.5))
+    corners = [["10 deg", "0 deg"], ["20 deg", "0 deg"], ["20 deg", "60 deg"]]
+    assert sector_from_plain({"name": "mast", "corners": corners}).corners[2, 1] == math.radians(60)
+    sightings = [{"sensor": "x", "host": "up"}, {"sensor": "y", "host": "port", "accuracy": "2 arcmin"}]
+    survey = survey_from_plain({"name": "s", "host": BODY, "sightings": sightings, "accuracy": "1 arcmin"})
+    np.testing.assert_array_equal(survey["in_host"], [[0, 0, -1], [0, -1, 0]])
+    np.testing.assert_allclose(survey["sigma"], np.radians([1 / 60, 2 / 60]), rtol=1e-15)
+
+
+def test_the_pointing_budget_of_a_standard():
+    """ECSS-E-ST-60-10C annex C prints x: 13.51 arcsec for the root sum square of these seven terms (see text there)."""
+    sigmas = {
+        "time": 10,
+        "bias": 6.67,
+        "control": 3.16,
+        "thermal": 1.63,
+        "mount": 2.89,
+        "targeting": 3.54,
+        "flex": 2.12,
+    }
+    terms = [
+        {"name": name, "kind": "sensor", "source": "ECSS-E-ST-60-10C", "gaussian": [f"{sigma} arcsec"]}
+        for name, sigma in sigmas.items()
+    ]
+    total = budget_from_plain({"name": "b", "axes": ["x"], "terms": terms}).total("APE", n_sigma=1.0)
+    assert math.degrees(total.sigma[0]) * 3600 == pytest.approx(13.51, abs=0.005)

@@ -6,7 +6,7 @@ the caller. Everything wrong raises TrunnionError with cause and remedy.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from functools import cache
 from typing import Any
 
@@ -18,9 +18,8 @@ from trunnion.errors import Place, TrunnionError
 from trunnion.spec import parts
 from trunnion.spec.kinds import KINDS
 from trunnion.spec.meaning.context import Context, Steps, raise_fault
-from trunnion.spec.meaning.conventions import build_convention
 from trunnion.spec.meaning.envelopes import OpenTable, build_region
-from trunnion.spec.meaning.frames import build_frame
+from trunnion.spec.resolve import BUILDERS
 from trunnion.units import shown
 
 
@@ -52,6 +51,39 @@ def region_from_plain(plain: Mapping[str, Any], *, open_table: OpenTable) -> Any
     return build_region(Context(_find, raise_fault), part, open_table)
 
 
+def gimbal_from_plain(plain: Mapping[str, Any]) -> Any:
+    """The `hardware.gimbals.GimbalChain` a plain part describes, its base written out."""
+    return _find("gimbals", dict(plain), ())
+
+
+def sector_from_plain(plain: Mapping[str, Any]) -> Any:
+    """The `hardware.sectors.Sector` a plain part describes."""
+    return _find("sectors", dict(plain), ())
+
+
+def survey_from_plain(plain: Mapping[str, Any]) -> dict[str, Any]:
+    """The arguments of `hardware.surveys.survey_directions` a plain part describes, its host and mount written out."""
+    survey: dict[str, Any] = _find("surveys", dict(plain), ())
+    return survey
+
+
+def budget_from_plain(plain: Mapping[str, Any]) -> Any:
+    """The `hardware.budgets.Budget` a plain part describes, its mounts written out."""
+    return _find("budgets", dict(plain), ())
+
+
+def pass_from_plain(plain: Mapping[str, Any], *, open_pass: Callable[[dict[str, Any]], Any]) -> Any:
+    """The `hardware.passes.Pass` a plain part describes.
+
+    open_pass: takes `{table, columns: {time: {column, unit}, azimuth, elevation, unit}}` and returns something with
+    `times` (N,) s, `azimuth` and `elevation` (N,) rad.
+    """
+    from trunnion.spec.meaning.hardware import build_pass
+
+    part = _find("passes", dict(plain), ())
+    return build_pass(part.name or "pass", part, open_pass)
+
+
 @cache
 def _adapter(section: str) -> TypeAdapter[Any]:
     kinds: dict[str, Any] = {
@@ -59,6 +91,11 @@ def _adapter(section: str) -> TypeAdapter[Any]:
         "conventions": parts.Convention,
         "mounts": parts.Mount,
         "envelopes": parts.Envelope,
+        "gimbals": parts.Gimbal,
+        "passes": parts.Pass,
+        "sectors": parts.Sector,
+        "surveys": parts.Survey,
+        "budgets": parts.Budget,
     }
     return TypeAdapter(kinds[section])
 
@@ -76,15 +113,7 @@ def _find(section: str, reference: Any, steps: Steps) -> Any:
     except ValidationError as error:
         raise _misshapen(error, steps) from error
     ctx, name = Context(_find, raise_fault, steps), part.name or section
-    if section == "frames":
-        return build_frame(ctx, name, part)
-    if section == "conventions":
-        return build_convention(ctx, name, part)
-    if section == "mounts":
-        from trunnion.spec.meaning.mounts import build_mount
-
-        return build_mount(ctx, name, part)
-    return part
+    return part if section == "envelopes" else BUILDERS[section](ctx, name, part)
 
 
 def _misshapen(error: ValidationError, steps: Steps) -> TrunnionError:

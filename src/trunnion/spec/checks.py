@@ -18,6 +18,8 @@ from trunnion.spec.resolve import Resolver
 from trunnion.spec.shape import key_place, place_of, walk
 from trunnion.spec.tree import Node
 
+HARDWARE = ("passes", "sectors", "surveys", "budgets")
+
 Spoiled = set[tuple[str | int, ...]]
 
 
@@ -86,7 +88,7 @@ class _Check:
 
     def everything(self) -> None:
         """Build everything that can be built; whatever keeps a part from meaning one thing is noted."""
-        for section in ("frames", "conventions", "mounts", "envelopes"):
+        for section in ("frames", "conventions", "mounts", "envelopes", "gimbals", *HARDWARE):
             for name in getattr(self.model, section):
                 self.resolver.build(section, name)
         for name, frame in self.model.frames.items():
@@ -177,7 +179,7 @@ class _Check:
     def _joined_frames(self) -> Iterator[str]:
         """Frames mentioned by anything; read from the file itself, so that faults elsewhere do not add
         noise."""
-        for section in ("conventions", "mounts", "envelopes", "links"):
+        for section in ("conventions", "mounts", "envelopes", "links", "gimbals", "surveys"):
             node = self.tree.child(section)
             if node is not None:
                 yield from _words_in(node)
@@ -226,10 +228,13 @@ class _Check:
                 self.note("unknown-source", steps, name=first or text, hint=hint)
 
     def _source_texts(self) -> Iterator[tuple[Steps, str]]:
-        for section in ("conventions", "envelopes", "mounts", "links"):
+        for section in NAMED_SECTIONS:
             for name, part in getattr(self.model, section).items():
-                if part.source is not None:
+                if getattr(part, "source", None) is not None:
                     yield (section, name, "source"), part.source
+        for name, budget in self.model.budgets.items():
+            for number, term in enumerate(budget.terms):
+                yield ("budgets", name, "terms", number, "source"), term.source
         for section in ("requirements", "assumptions"):
             for number, part in enumerate(getattr(self.model, section)):
                 if part.source is not None:
@@ -244,25 +249,22 @@ class _Check:
             if len(limits) != 1:
                 place = (*steps, limits[1]) if limits else steps
                 self.note("one-limit", place, count="none" if not limits else "two")
-            self._known((*steps, "of"), requirement.of, subjects, "convention, mount or decision")
+            self._known((*steps, "of"), requirement.of, subjects, "part or decision")
             for index, name in enumerate(requirement.over or []):
                 self._known((*steps, "over", index), name, self.resolver.names("envelopes"), "envelope")
 
     def _subjects(self) -> list[str]:
-        named = [
-            name for section in ("conventions", "mounts", "envelopes", "links") for name in self.resolver.names(section)
-        ]
-        return [*self._ids("decisions"), *named]
+        sections = [section for section in NAMED_SECTIONS if section != "frames"]
+        return [*self._ids("decisions"), *(name for section in sections for name in self.resolver.names(section))]
 
     def decisions(self) -> None:
         """What is chosen is a candidate; candidates and calculations exist."""
-        candidates = [
-            name for section in ("conventions", "mounts", "envelopes") for name in self.resolver.names(section)
-        ]
+        sections = ("conventions", "mounts", "envelopes", "gimbals")
+        candidates = [name for section in sections for name in self.resolver.names(section)]
         for number, decision in enumerate(self.model.decisions):
             steps = ("decisions", number)
             for index, name in enumerate(decision.over):
-                self._known((*steps, "over", index), name, candidates, "convention, mount or envelope")
+                self._known((*steps, "over", index), name, candidates, "convention, mount, envelope or gimbal")
             if decision.chosen not in decision.over:
                 hint = suggestion(decision.chosen, decision.over, "the candidates are")
                 self.note("not-a-candidate", (*steps, "chosen"), name=decision.chosen, hint=hint)
@@ -316,6 +318,9 @@ class _Check:
                 yield ("envelopes", name, "table"), part.table
             elif isinstance(part, parts.Campaign):
                 yield ("envelopes", name, "campaign"), part.campaign
+        for name, each in self.model.passes.items():
+            if isinstance(each, parts.TablePass):
+                yield ("passes", name, "table"), each.table
 
 
 def _inner_envelopes(part: Any) -> Iterator[str]:

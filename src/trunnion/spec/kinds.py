@@ -352,6 +352,9 @@ _add(
 # --- mounts
 # -------------------------------------------------------------------------------------------------------
 
+_add("few-sightings", "{count} sightings leave the mount open", "list two or more, well apart from each other")
+_add("budget-axes", "{count} values are given for {axes} axes", "give one value for each axis of the budget")
+_add("too-small", "a step of {text} is shorter than {limit}", "give at least {limit}")
 _add("no-sensor-axis", "the sensor has no axis '{word}'", "{hint}")
 _add(
     "accelerometer-silent",

@@ -9,6 +9,7 @@ from pydantic import Field
 
 from trunnion.spec.parts import (
     Assumption,
+    Budget,
     Calculation,
     Convention,
     Decision,
@@ -16,13 +17,17 @@ from trunnion.spec.parts import (
     Document,
     Envelope,
     Frame,
+    Gimbal,
     Link,
     Mount,
     Part,
+    Pass,
     Person,
     Requirement,
     Revision,
+    Sector,
     Source,
+    Survey,
 )
 from trunnion.spec.values import Count, DataSize, Name, RelativePath
 
@@ -35,6 +40,11 @@ NAMED_SECTIONS = {
     "conventions": "convention",
     "envelopes": "envelope",
     "mounts": "mount",
+    "gimbals": "gimbal",
+    "passes": "pass",
+    "sectors": "sector",
+    "surveys": "survey",
+    "budgets": "budget",
 }
 #: Sections that list parts with ids, and what one of them is called.
 LISTED_SECTIONS = {
@@ -63,6 +73,11 @@ class WorkbookFile(Part):
     conventions: dict[Name, Convention] = Field(default_factory=dict)
     envelopes: dict[Name, Envelope] = Field(default_factory=dict)
     mounts: dict[Name, Mount] = Field(default_factory=dict)
+    gimbals: dict[Name, Gimbal] = Field(default_factory=dict)
+    passes: dict[Name, Pass] = Field(default_factory=dict)
+    sectors: dict[Name, Sector] = Field(default_factory=dict)
+    surveys: dict[Name, Survey] = Field(default_factory=dict)
+    budgets: dict[Name, Budget] = Field(default_factory=dict)
     requirements: list[Requirement] = Field(default_factory=list)
     deviations: list[Deviation] = Field(default_factory=list)
     assumptions: list[Assumption] = Field(default_factory=list)

@@ -10,11 +10,12 @@ from typing import Any
 
 from trunnion.spec import parts
 from trunnion.spec.meaning.envelopes import table_frames
+from trunnion.spec.model import NAMED_SECTIONS
 from trunnion.spec.parts.mounts import AnglesAs
 from trunnion.spec.resolve import Resolver
 from trunnion.spec.workbook import Workbook
 
-_SECTIONS = {"frame": "frames", "convention": "conventions", "envelope": "envelopes", "mount": "mounts"}
+_SECTIONS = {singular: section for section, singular in NAMED_SECTIONS.items()}
 
 
 def plain_part(workbook: Workbook, kind: str, name: str) -> dict[str, Any]:
@@ -26,7 +27,14 @@ def plain_part(workbook: Workbook, kind: str, name: str) -> dict[str, Any]:
     section = _SECTIONS.get(kind, kind)
     part = workbook.part(section, name)
     made = {"name": name, **part.plain()}
-    writers = {"conventions": _convention, "envelopes": _envelope, "mounts": _mount}
+    writers = {
+        "conventions": _convention,
+        "envelopes": _envelope,
+        "mounts": _mount,
+        "gimbals": _gimbal,
+        "surveys": _survey,
+        "budgets": _budget,
+    }
     if section in writers:
         writers[section](workbook, part, made)
     return made
@@ -75,6 +83,21 @@ def _envelope(workbook: Workbook, part: Any, made: dict[str, Any]) -> None:
             "host": plain_part(workbook, "envelopes", str(part.product.host)),
             "mount": plain_part(workbook, "mounts", str(part.product.mount)),
         }
+
+
+def _gimbal(workbook: Workbook, part: parts.Gimbal, made: dict[str, Any]) -> None:
+    for key in ("base", "payload"):
+        _inline(workbook, "frames", made, key)
+
+
+def _survey(workbook: Workbook, part: parts.Survey, made: dict[str, Any]) -> None:
+    _inline(workbook, "frames", made, "host")
+    _inline(workbook, "mounts", made, "mount")
+
+
+def _budget(workbook: Workbook, part: parts.Budget, made: dict[str, Any]) -> None:
+    for term in made["terms"]:
+        _inline(workbook, "mounts", term, "mount")
 
 
 def _table(workbook: Workbook, part: Any, made: dict[str, Any]) -> None:

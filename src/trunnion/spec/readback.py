@@ -44,6 +44,8 @@ def read_back(workbook: Workbook) -> list[Section]:
         sections.append(Section(f"Envelope {name}", tuple(_envelope(envelope))))
     for name, mount in workbook.mounts.items():
         sections.append(Section(f"Mount {name}", tuple(_mount(mount, resolver.build("mounts", name)))))
+    for title, entries in _hardware(workbook):
+        sections.append(Section(title, tuple(entries)))
     for title, entries in _records(workbook):
         if entries:
             sections.append(Section(title, tuple(entries)))
@@ -282,6 +284,56 @@ def _tolerance(tolerance: Any) -> Iterator[str]:
 
 def _degrees(angle: float) -> str:
     return f"{convert(angle, 'angle', 'deg'):.6g} deg"
+
+
+# --- gimbals, passes, sectors, surveys, budgets ---------------------------------------------------------------------
+
+
+def _hardware(workbook: Workbook) -> Iterator[tuple[str, list[str]]]:
+    for name, gimbal in workbook.gimbals.items():
+        yield f"Gimbal {name}", [*_gimbal(gimbal), *_cited(gimbal)]
+    for name, each in workbook.passes.items():
+        yield f"Pass {name}", [_pass(each), *_cited(each)]
+    for name, sector in workbook.sectors.items():
+        corners = "; ".join(f"{azimuth.text}, {elevation.text}" for azimuth, elevation in sector.corners)
+        modes = f" in the modes {words.listed(sector.modes)}" if sector.modes else " in every mode"
+        yield f"Sector {name}", [f"Forbidden{modes}: the azimuth, elevation corners {corners}.", *_cited(sector)]
+    for name, survey in workbook.surveys.items():
+        drawing = f", to be compared with the mount {survey.mount}" if survey.mount else ""
+        count = f"{len(survey.sightings)} directions seen by the sensor and known in {survey.host}"
+        yield f"Survey {name}", [f"{count}, each to {survey.accuracy.text} (one sigma){drawing}.", *_cited(survey)]
+    for name, budget in workbook.budgets.items():
+        terms = [f"{term.name} ({term.kind}, {term.source})" for term in budget.terms]
+        yield f"Budget {name}", [f"On {words.listed(budget.axes)}: {words.listed(terms)}.", *_cited(budget)]
+
+
+def _gimbal(gimbal: parts.Gimbal) -> Iterator[str]:
+    yield f"On {gimbal.base}, outermost axis first:"
+    for joint in gimbal.joints:
+        limits = [
+            f"{what} {limit.text}"
+            for what, limit in (
+                ("rate at most", joint.max_rate),
+                ("acceleration at most", joint.max_acceleration),
+                ("encoder step", joint.encoder_step),
+            )
+            if limit is not None
+        ]
+        said = f"; {', '.join(limits)}" if limits else ""
+        yield f"{joint.name} turns about {_direction(joint.axis)}, travel {range_text(joint.travel)}{said}."
+    if gimbal.boresight is not None:
+        yield f"The payload looks along {_direction(gimbal.boresight)}."
+
+
+def _pass(each: Any) -> str:
+    if isinstance(each, parts.TablePass):
+        columns = each.columns
+        return f"Azimuth {columns.azimuth} and elevation {columns.elevation} ({columns.unit}) from {each.table}."
+    return f"A circular orbit at {each.circular.altitude.text}, highest at {each.circular.highest.text}; for sizing."
+
+
+def _cited(part: Any) -> list[str]:
+    return [f"Source: {part.source}." if part.source else "No source is cited."]
 
 
 # --- requirements, decisions, assumptions --------------------------------------------------------------------------

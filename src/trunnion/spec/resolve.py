@@ -68,7 +68,7 @@ class Resolver:
     def _made(self, section: str, name: str, part: Any) -> Any:
         """The object a builder makes; what the numerical rooms refuse is noted at the part."""
         try:
-            return _BUILDERS[section](self.context(section, name), name, part)
+            return BUILDERS[section](self.context(section, name), name, part)
         except TrunnionError as err:
             self.note("refused", (section, name), why=err.fault.cause, remedy=err.fault.remedy or "correct it")
             return None
@@ -118,7 +118,23 @@ def _envelope(ctx: Context, name: str, part: Any) -> Any:
     return part if check_envelope(ctx, name, part) else None
 
 
-_BUILDERS: dict[str, Callable[[Context, str, Any], Any]] = {
+def _hardware(function: str) -> Callable[[Context, str, Any], Any]:
+    """A builder of the hardware parts, loaded when a workbook has one."""
+
+    def build(ctx: Context, name: str, part: Any) -> Any:
+        from trunnion.spec.meaning import hardware
+
+        return getattr(hardware, function)(ctx, name, part)
+
+    return build
+
+
+BUILDERS: dict[str, Callable[[Context, str, Any], Any]] = {
+    "gimbals": _hardware("build_gimbal"),
+    "passes": _hardware("check_pass"),
+    "sectors": _hardware("build_sector"),
+    "surveys": _hardware("build_survey"),
+    "budgets": _hardware("build_budget"),
     "frames": build_frame,
     "conventions": build_convention,
     "mounts": _mount,

@@ -11,6 +11,7 @@ from trunnion.errors import Fault, Place
 from trunnion.spec.fields import known_keys
 from trunnion.spec.kinds import KINDS, fault, nearest, suggestion
 from trunnion.spec.parts.envelopes import ENVELOPE_FORMS
+from trunnion.spec.parts.hardware import PASS_FORMS, TERM_FORMS
 from trunnion.spec.parts.mounts import MOUNT_FORMS
 from trunnion.spec.tree import Node
 from trunnion.spec.values import what_it_is
@@ -173,6 +174,10 @@ def _forms_at(taken: list[str | int]) -> tuple[str, tuple[str, ...]]:
         return "envelope", tuple(ENVELOPE_FORMS)
     if taken[0] == "mounts":
         return "mount", tuple(MOUNT_FORMS)
+    if taken[0] == "passes":
+        return "pass", tuple(PASS_FORMS)
+    if taken[0] == "budgets":
+        return "term", tuple(TERM_FORMS)
     if taken[-1] == "north":
         return "north", ("magnetic", "grid", "wander")
     return "rotation", ("matrix", "quaternion", "angles", "angle")

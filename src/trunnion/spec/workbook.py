@@ -11,6 +11,7 @@ from trunnion.errors import Place
 from trunnion.spec.model import LISTED_SECTIONS, NAMED_SECTIONS, WorkbookFile
 from trunnion.spec.parts import (
     Assumption,
+    Budget,
     Calculation,
     Convention,
     Decision,
@@ -18,13 +19,17 @@ from trunnion.spec.parts import (
     Document,
     Envelope,
     Frame,
+    Gimbal,
     Link,
     Mount,
     Part,
+    Pass,
     Person,
     Requirement,
     Revision,
+    Sector,
     Source,
+    Survey,
 )
 from trunnion.spec.paths import find, locate
 from trunnion.spec.shape import place_of
@@ -77,6 +82,31 @@ class Workbook:
     def mounts(self) -> Mapping[str, Mount]:
         """Mounts by name."""
         return self.file.mounts
+
+    @property
+    def gimbals(self) -> Mapping[str, Gimbal]:
+        """Gimbals by name."""
+        return self.file.gimbals
+
+    @property
+    def passes(self) -> Mapping[str, Pass]:
+        """Passes by name."""
+        return self.file.passes
+
+    @property
+    def sectors(self) -> Mapping[str, Sector]:
+        """Forbidden sectors by name."""
+        return self.file.sectors
+
+    @property
+    def surveys(self) -> Mapping[str, Survey]:
+        """Alignment surveys by name."""
+        return self.file.surveys
+
+    @property
+    def budgets(self) -> Mapping[str, Budget]:
+        """Pointing budgets by name."""
+        return self.file.budgets
 
     @property
     def people(self) -> list[Person]:

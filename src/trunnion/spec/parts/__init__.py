@@ -14,6 +14,7 @@ from trunnion.spec.parts.envelopes import (
     Table,
 )
 from trunnion.spec.parts.frames import Frame
+from trunnion.spec.parts.hardware import Budget, CircularPass, Gimbal, Pass, Sector, Survey, TablePass
 from trunnion.spec.parts.mounts import AnglesAs, Mount, Tolerance
 from trunnion.spec.parts.records import (
     Assumption,
@@ -33,8 +34,10 @@ __all__ = [
     "AnglesAs",
     "Assumption",
     "Box",
+    "Budget",
     "Calculation",
     "Campaign",
+    "CircularPass",
     "Columns",
     "Cone",
     "Convention",
@@ -43,10 +46,12 @@ __all__ = [
     "Document",
     "Envelope",
     "Frame",
+    "Gimbal",
     "Link",
     "Mount",
     "NamedPart",
     "Part",
+    "Pass",
     "Person",
     "Phases",
     "Poses",
@@ -54,7 +59,10 @@ __all__ = [
     "Requirement",
     "Revision",
     "Rotation",
+    "Sector",
     "Source",
+    "Survey",
     "Table",
+    "TablePass",
     "Tolerance",
 ]
