@@ -289,3 +289,41 @@ def test_a_sweep_of_a_limit_brackets_the_flip_around_the_recorded_bound(computed
 def test_sweeps_that_make_no_sense_are_refused(text: str) -> None:
     with pytest.raises(TrunnionError):
         trials.parse_values(text)
+
+
+def test_the_comparison_page_is_one_file_with_figures_side_by_side(tmp_path: Path) -> None:
+    from trunnion.calculations.compare_page import page
+    from trunnion.sheet.items import MIME
+
+    def folder(name: str, svg: str) -> Path:
+        (tmp_path / name).mkdir()
+        data = {MIME: {"kind": "figure", "id": "fig:m"}, "image/svg+xml": svg}
+        cell = {
+            "cell_type": "code",
+            "source": "",
+            "metadata": {},
+            "outputs": [{"output_type": "display_data", "data": data}],
+        }
+        notebook = {"nbformat": 4, "nbformat_minor": 5, "metadata": {}, "cells": [cell]}
+        (tmp_path / name / "C01-x.ipynb").write_text(json.dumps(notebook))
+        return tmp_path / name
+
+    old = _results({"a<b>": (25.0, 25.5)}, "meets", "20 deg")
+    new = _results({"a<b>": (18.5, 19.0)}, "does not meet", "20 deg", inputs="bb")
+    text = page(compare_results(old, new, "o", "n"), folder("o", "<svg>1</svg>"), folder("n", "<svg>2</svg>"))
+    assert text.count("data:image/svg+xml;base64,") == 2
+    assert "a&lt;b&gt;" in text
+    assert "<b>" not in text
+    assert "http" not in text.replace("http-equiv", "")
+    assert "<script" not in text
+
+
+def test_the_package_holds_the_changes_since_the_superseded_revision(computed: Path, run, edit) -> None:
+    from trunnion.cli.packaging import changes_since_superseded
+
+    issued(computed, run)
+    revise(load_workbook(computed), reason="A steeper slope")
+    edit(computed / "workbook.yaml", "at least: 20 deg", "at least: 70 deg")
+    rows = changes_since_superseded(run(computed))
+    assert rows[0] == ("R1, ordinary", "meets", "does not meet", "limit at least 20 deg → at least 70 deg")
+    assert ("input", "numbers") not in rows

@@ -334,7 +334,7 @@ def sheet_text(computed: Computed, entry: Done) -> sheets.SheetText:
 
 def requirement_rows(computed: Computed, calculation: str) -> list[tuple[str, ...]]:
     """The requirements that rest on a calculation, one row a candidate."""
-    rows = []
+    rows: list[tuple[str, ...]] = []
     for judged in computed.judgements:
         if any(part.result is not None and part.result.calculation == calculation for part in judged.parts):
             asked = judged.asked

@@ -216,7 +216,7 @@ def _held(path: str, reader: _Reader, inputs: dict[str, InputFile]) -> str:
 def _with_inputs(value: Any, reader: _Reader, inputs: dict[str, InputFile]) -> Any:
     """The plain value with every file path replaced by the name the notebook reads it by."""
     if isinstance(value, dict):
-        made = {}
+        made: dict[str, Any] = {}
         for key, entry in value.items():
             if key in _FILE_KEYS and isinstance(entry, str):
                 made[key] = _held(entry, reader, inputs)

@@ -128,7 +128,7 @@ def _failure(job: dict[str, Any], err: Exception) -> dict[str, Any]:
     notebook = getattr(evidence, "notebook", None)
     cell = getattr(err, "cell_index", None)
     number = evidence.cell if cell is None and evidence is not None else cell
-    fields = {"error": _error_text(err), "cell": number, "source": "", "kept": None}
+    fields: dict[str, Any] = {"error": _error_text(err), "cell": number, "source": "", "kept": None}
     if notebook is None:
         return fields
     notebook.cells = [cell for cell in notebook.cells if _MARKER not in cell.metadata.get("tags", [])]

@@ -55,7 +55,7 @@ class _Commands(click.Group):
         if entry is None:
             return None
         module = importlib.import_module(f"trunnion.cli.{entry.module or entry.name}")
-        return module.command  # type: ignore[no-any-return]
+        return module.command
 
     def resolve_command(
         self, ctx: click.Context, args: list[str]
