@@ -97,7 +97,7 @@ def constant(matrix: NDArray[np.float64], letter: str) -> Constant:
         exact = _integers(rounded)
         kind = "identity" if np.array_equal(rounded, np.eye(3)) else "relabelling"
         numbers = mpmath.matrix(rounded.tolist())
-        return Constant(letter, kind, exact, None, None, exact, numbers, _relabelling_quaternion(rounded))
+        return Constant(letter, kind, exact, None, None, exact, numbers, relabelling_quaternion(rounded))
     turned = _as_turn(value)
     return _turn(letter, *turned) if turned else _general(letter, value)
 
@@ -137,7 +137,7 @@ def _turn(letter: str, axis: int, angle: float, relabelling: NDArray[np.float64]
         numbers = mpmath.matrix(entries(mpmath.cos(number), mpmath.sin(number))) * mpmath.matrix(relabelling.tolist())
     elementary: list[sympy.Expr] = [half_cosine, sympy.S.Zero, sympy.S.Zero, sympy.S.Zero]
     elementary[axis + 1] = half_sine
-    quaternion = hamilton(tuple(elementary), _relabelling_quaternion(relabelling))
+    quaternion = hamilton(tuple(elementary), relabelling_quaternion(relabelling))
     return Constant(letter, "turn", matrix, axis, symbol, exact, numbers, quaternion)
 
 
@@ -169,7 +169,7 @@ def _quaternion_numbers(R: mpmath.matrix) -> list[mpmath.mpf]:
     return [sign * entry / length for entry in row]
 
 
-def _relabelling_quaternion(
+def relabelling_quaternion(
     matrix: NDArray[np.float64],
 ) -> tuple[sympy.Expr, sympy.Expr, sympy.Expr, sympy.Expr]:
     """Exact quaternion of one of the 24: components 0, ±1/2, ±√2/2 or ±1."""

@@ -175,7 +175,7 @@ def _derive(convention: Convention) -> Derivation:
     found = rates(book, form, locked)
     near_lock(book, found, locked)
     small_angles(book)
-    four = quaternion(book)
+    four = quaternion(book, form, locked)
     inverse(book)
     return Derivation(
         convention=convention,

@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+import numpy as np
 import sympy
 
 from trunnion.attitude.sequences import Sense
-from trunnion.symbolic.constants import AXES, hamilton, matrix_of
-from trunnion.symbolic.proofs import identity
+from trunnion.symbolic.constants import AXES, hamilton, matrix_of, relabelling_quaternion
+from trunnion.symbolic.proofs import ROOT_2, identity, remainder
 from trunnion.symbolic.setting import Setting, Turn, nine
-from trunnion.symbolic.steps import Book, aligned
+from trunnion.symbolic.shape import Shape
+from trunnion.symbolic.singular import CD, SD, D, Locked, combination, delta_latex, locked_samples
+from trunnion.symbolic.steps import Book, aligned, extended
 
 Four = tuple[sympy.Expr, sympy.Expr, sympy.Expr, sympy.Expr]
 
@@ -33,7 +36,7 @@ def halves(setting: Setting) -> dict[sympy.Symbol, sympy.Expr]:
     return found
 
 
-def quaternion(book: Book) -> Four:
+def quaternion(book: Book, form: Shape, locked: tuple[Locked, Locked]) -> Four:
     """Write the section; returns the quaternion of R_rb, scalar first."""
     setting = book.setting
     book.open("The quaternion")
@@ -43,7 +46,52 @@ def quaternion(book: Book) -> Four:
     whole = hamilton(hamilton(setting.L.quaternion, chain), setting.B.quaternion)
     if not setting.plain:
         _whole(book)
+    for number, case in enumerate(locked, start=1):
+        _at_lock(book, form, chain, case, number)
     return whole
+
+
+def _at_lock(book: Book, form: Shape, chain: Four, case: Locked, number: int) -> None:
+    """δ from the four components, by taking the fixed rotation K of the singular attitude off again."""
+    setting, middle = book.setting, book.setting.order[1]
+    fixed = case.matrix.subs({CD: 1, SD: 0}, simultaneous=True)
+    w, x, y, z = relabelling_quaternion(np.array(fixed.tolist(), dtype=float))
+    parts = sympy.symbols("q:4")
+    left = hamilton(parts, (w, -x, -y, -z))
+    scalar, along = left[0], case.spin * left[form.a + 1]
+    scale = ROOT_2 if left[0].has(ROOT_2) or left[form.a + 1].has(ROOT_2) else sympy.S.One
+    shown = [remainder(scale * part) for part in (along, scalar)]
+    half_cosine, half_sine = (exact_root(f(case.turn / 2)) for f in (sympy.cos, sympy.sin))
+    n = middle.place + 1
+    there = {sympy.Symbol(f"g{n}"): half_cosine, sympy.Symbol(f"h{n}"): middle.sign * half_sine}
+    four = dict(zip(parts, (part.subs(there, simultaneous=True) for part in chain), strict=True))
+    doubled = [value.subs(halves(setting), simultaneous=True) for value in combination(setting, case.relation).values()]
+    certificate = (
+        (scalar**2 - along**2).subs(four, simultaneous=True) - doubled[0],
+        (2 * scalar * along).subs(four, simultaneous=True) - doubled[1],
+    )
+    samples = locked_samples(setting, case.turn, case.relation)
+    book.show(
+        f"quaternion-lock-{number}",
+        f"What is left, from the quaternion at {case.label}",
+        "The fixed rotation of this singular attitude taken off, a turn by $\\delta$ about one axis is left. Either "
+        "sign of the quaternion gives the same $\\delta$ but for a whole turn.",
+        rf"\delta = {delta_latex(setting, case.relation)}",
+        "2 " + setting.latex(sympy.atan2(*shown, evaluate=False)),
+        identity(
+            D,
+            2 * sympy.atan2(along, scalar, evaluate=False),
+            certificate=certificate,
+            because="double-angle forms of both arguments less cosine and sine of δ reduced to 0",
+            angle=True,
+        ),
+        samples=extended(samples, **{f"q{n}": part for n, part in enumerate(chain)}),
+    )
+
+
+def exact_root(value: sympy.Expr) -> sympy.Expr:
+    """√2/2 as half the symbol w; 0 and ±1 as they are."""
+    return value.subs(sympy.sqrt(2), ROOT_2)
 
 
 def _bar_words(setting: Setting) -> str:

@@ -275,7 +275,8 @@ class Setting:
             for j in (1, 2, 3):
                 names |= {f"M{i}{j}": rf"{self.stated_letter}_{{{i}{j}}}", f"E{i}{j}": rf"E_{{{i}{j}}}"}
                 names |= {f"L{i}{j}": rf"L_{{{i}{j}}}", f"B{i}{j}": rf"B_{{{i}{j}}}"}
-            names |= {f"w{i}": rf"\omega_{{{AXES[i - 1]}}}"}
+        prefix = "" if self.plain else "E"
+        names |= {f"q{n}": f"q_{{{prefix}{n}}}" for n in range(4)}
         return names
 
     def latex(self, expression: object) -> str:

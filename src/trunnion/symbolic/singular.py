@@ -88,7 +88,7 @@ def _reduce(book: Book, form: Shape, turn: sympy.Expr, reading: Singular, number
     substituted = sympy.ImmutableMatrix(setting.E.subs(values, simultaneous=True))
     y = middle.y_at(turn)
     relation = _relation(setting, substituted)
-    samples = _samples(setting, turn, relation)
+    samples = locked_samples(setting, turn, relation)
     at = f"{middle.y_latex} = {degrees_latex(y)}"
     label = f"{middle.name} {degrees_text(reading.angle)}"
     _substitution(book, substituted, values, at, label, number, samples)
@@ -101,13 +101,14 @@ def _reduce(book: Book, form: Shape, turn: sympy.Expr, reading: Singular, number
     return locked
 
 
-def _samples(setting: Setting, turn: sympy.Expr, relation: int) -> list[Sample]:
+def locked_samples(setting: Setting, turn: sympy.Expr, relation: int) -> list[Sample]:
+    """Sample points at a singular value with δ, its cosine and its sine."""
     first, last = setting.turns[0], setting.turns[2]
     delta = first.y + relation * last.y
     return extended(setting.locked(turn), d=delta, cd=sympy.cos(delta), sd=sympy.sin(delta))
 
 
-def _sum(setting: Setting, relation: int) -> dict[sympy.Symbol, sympy.Expr]:
+def combination(setting: Setting, relation: int) -> dict[sympy.Symbol, sympy.Expr]:
     """c_δ and s_δ by the addition theorem."""
     first, last = setting.turns[0], setting.turns[2]
     return {
@@ -125,7 +126,7 @@ def _relation(setting: Setting, substituted: sympy.ImmutableMatrix) -> int:
 
 
 def _in_delta(setting: Setting, substituted: sympy.ImmutableMatrix, relation: int) -> sympy.ImmutableMatrix | None:
-    theorem = _sum(setting, relation)
+    theorem = combination(setting, relation)
     found = []
     for entry in substituted:
         candidates = [entry] if entry.is_number else [sign * symbol for symbol in (CD, SD) for sign in (1, -1)]
@@ -136,7 +137,8 @@ def _in_delta(setting: Setting, substituted: sympy.ImmutableMatrix, relation: in
     return sympy.ImmutableMatrix(3, 3, found)
 
 
-def _delta(setting: Setting, relation: int) -> str:
+def delta_latex(setting: Setting, relation: int) -> str:
+    """`\\psi - \\phi`: the combination that is left."""
     first, last = setting.turns[0], setting.turns[2]
     return f"{first.y_latex} {'+' if relation > 0 else '-'} {last.y_latex}"
 
@@ -166,8 +168,8 @@ def _substitution(
 
 def _addition(book: Book, relation: int, label: str, number: int, samples: list[Sample]) -> None:
     setting = book.setting
-    theorem = _sum(setting, relation)
-    delta = _delta(setting, relation)
+    theorem = combination(setting, relation)
+    delta = delta_latex(setting, relation)
     rows = [(rf"\cos({delta})", setting.latex(theorem[CD])), (rf"\sin({delta})", setting.latex(theorem[SD]))]
     angle = setting.turns[0].y + relation * setting.turns[2].y
     exact = [sympy.cos(angle), sympy.sin(angle)]
@@ -200,11 +202,11 @@ def _one_angle(
     book.show(
         f"singular-{number}-one-angle",
         f"One angle is left, {label}",
-        f"With $\\delta = {_delta(setting, relation)}$.",
+        f"With $\\delta = {delta_latex(setting, relation)}$.",
         rf"{setting.chain_latex}\big|_{{{at}}}",
         setting.latex(matrix),
         identity(substituted, matrix),
-        replacements=_sum(setting, relation),
+        replacements=combination(setting, relation),
         samples=samples,
     )
     return matrix
@@ -270,7 +272,7 @@ def _recover(
         f"What can be recovered, {label}",
         f"Only $\\delta$. {first.name.capitalize()} and {last.name} one by one cannot be had from the attitude. "
         f"{_agreed(first, last, relation, solved='first')} {_agreed(first, last, relation, solved='last')}",
-        rf"\delta = {_delta(setting, relation)}",
+        rf"\delta = {delta_latex(setting, relation)}",
         setting.latex(value),
         identity(
             D, value, certificate=certificate, because="arguments less sine and cosine of δ reduced to 0", angle=True
@@ -318,7 +320,7 @@ def _null(book: Book, locked: Locked, values: dict[sympy.Symbol, sympy.Expr], la
         rf"\frac{{\partial {setting.chain_latex}}}{{\partial {last.y_latex}}}",
         r"\mathbf{0}",
         identity(slope, sympy.zeros(3, 3)),
-        samples=_samples(setting, locked.turn, locked.relation),
+        samples=locked_samples(setting, locked.turn, locked.relation),
     )
 
 

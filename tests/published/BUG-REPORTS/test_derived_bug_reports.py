@@ -73,6 +73,26 @@ def test_generated_source_takes_the_unnormalised_quaternion_of_px4_19933(generat
     assert source["turn_between"](source["matrix_from_angles"](angles), matrix) < 1e-15
 
 
+def test_what_is_left_of_the_quaternion_meets_kornia_3993(derived) -> None:
+    case, derivation = CASES["kornia-3993"], derived("ZYX")
+    forms = {
+        "plus": (
+            r"2 \operatorname{atan2}\left(- q_{1} + q_{3},\, q_{0} + q_{2}\right)",
+            lambda w, x, y, z: (z - x, w + y),
+        ),
+        "minus": (
+            r"2 \operatorname{atan2}\left(q_{1} + q_{3},\, q_{0} - q_{2}\right)",
+            lambda w, x, y, z: (z + x, w - y),
+        ),
+    }
+    for number, (pole, (latex, arguments)) in enumerate(forms.items(), start=1):
+        assert derivation.step(f"quaternion-lock-{number}").rhs == latex
+        roll, pitch, yaw = case["input"][pole]
+        four = derivation.value("quaternion", [yaw, pitch, roll])[0]
+        expected = case["expected"][f"{pole}_roll_pitch_yaw"][2]
+        assert 2 * np.arctan2(*arguments(*four)) == pytest.approx(expected, abs=case["tolerance"])
+
+
 def test_derived_quaternion_meets_humanml3d_150(derived) -> None:
     case = CASES["humanml3d-150"]
     for name in ("ZYX", "XYZ"):
