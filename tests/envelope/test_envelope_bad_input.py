@@ -3,6 +3,7 @@
 import numpy as np
 import pytest
 
+from trunnion.envelope.findings import region_findings
 from trunnion.envelope.regions import Between, Box, Cone, Dispersed, Mounted, Poses, Roll, Track, Union
 from trunnion.errors import AttitudeError, RegionError
 
@@ -115,3 +116,19 @@ def test_attitude_error_beyond_reason():
 def test_gap_that_is_not_positive():
     with pytest.raises(RegionError, match="longest gap must be positive"):
         Track([0.0], [LEVEL], longest_gap=0.0)
+
+
+def test_box_that_locks_its_own_convention_is_found(make_convention):
+    """Elevation 80 … 90, bank -10 … 10: the wing stays within asin(sin 10 cos 80) = 1.73 deg of level, by hand."""
+    names = ("heading", "elevation", "bank")
+    upright = Box(make_convention("3-2-1", names=names), ((-np.pi, np.pi), (1.4, 1.7), (-0.17, 0.17)))
+    assert len(region_findings(upright)) == 1
+    hover = Box(
+        make_convention("3-2-1", names=names),
+        tuple(tuple(np.radians(span)) for span in ([-180, 180], [80, 90], [-10, 10])),
+    )
+    (finding,) = region_findings(Union({"hover": Dispersed(hover, 0.1)}))
+    assert "hover: this box holds the lock of its own convention, where heading and bank" in finding
+    assert "limits the starboard axis to 1.73 deg from square to down" in finding
+    level = Box(make_convention("3-2-1"), ((-np.pi, np.pi), (-0.3, 0.3), (-0.7, 0.7)))
+    assert region_findings(level) == []
