@@ -1,14 +1,25 @@
 """Campaign reductions: the same answer however the rows are cut, whoever reduces them, and as often as one likes."""
 
 import multiprocessing
+import pickle
 from concurrent.futures import ProcessPoolExecutor
+from functools import partial
 
 import numpy as np
 import pytest
 from scipy.spatial.transform import Rotation
 
 from trunnion.attitude.basis import Basis
-from trunnion.envelope.campaign import Part, Plan, gathered, merged, reduce_campaign, reduce_chunk, reduce_chunks
+from trunnion.envelope.campaign import (
+    Part,
+    Plan,
+    gathered,
+    merged,
+    reduce_campaign,
+    reduce_chunk,
+    reduce_chunks,
+    reduce_part,
+)
 from trunnion.envelope.margins import lock_margin
 from trunnion.envelope.regions import Between, Track
 from trunnion.errors import RegionError
@@ -106,6 +117,15 @@ def test_runs_in_parts_in_other_processes_name_the_worst_run(make_convention):
             assert found.lo == pytest.approx(least[worst].lo, abs=1e-14)
             assert f"run {worst}" in found.governing
             assert f"run {worst}" in found.witness.where
+
+
+def test_work_and_results_travel_between_processes(make_convention):
+    """What a cluster sends to and fro survives pickling and is the same when done twice."""
+    plan = Plan.of([make_convention("3-2-1")])
+    work = pickle.loads(pickle.dumps(partial(reduce_part, read=read_pieces, plan=plan)))
+    part = Part("run", 0, (3, 100, 0, 100))
+    once, twice = work(part), pickle.loads(pickle.dumps(work(part)))
+    same(once, twice)
 
 
 def test_gap_between_chunks_is_not_joined(make_convention):

@@ -167,6 +167,24 @@ def test_rate_limited_track_brackets_any_motion_between_the_rows(make_convention
         assert bound.least.hi >= bound.least.lo
 
 
+def test_rate_limited_track_with_an_error_of_its_rows(make_convention, count):
+    """Rows off by up to 1 deg each its own way: the bound still holds for the true path between them."""
+    rng = np.random.default_rng(28)
+    convention = make_convention("3-2-1")
+    for _ in range(count(50)):
+        times, q = walk(rng, 201, 0.005)
+        fine = Track(times, q, Between.SLERP, attitude_error=0.0)
+        rate = track_report(fine).largest_step
+        axis = rng.normal(size=(11, 3))
+        off = Rotation.from_rotvec(np.radians(1.0) * axis / np.linalg.norm(axis, axis=1)[:, None])
+        recorded = (Rotation.from_quat(np.roll(q[::20], -1, axis=1)) * off).as_quat()
+        rows = np.roll(recorded, 1, axis=1)
+        coarse = Track(times[::20], rows, Between.RATE_LIMITED, max_rate=rate, attitude_error=np.radians(1.0))
+        whole, bound = lock_margin(fine, convention), lock_margin(coarse, convention)
+        assert bound.least.lo <= whole.least.lo + 1e-13
+        assert bound.largest.hi >= whole.largest.hi - 1e-13
+
+
 def test_rate_contradicted_by_the_rows_names_them():
     q = quaternion_from_matrix(np.stack([about([0, 0, 1], t) for t in (0.0, 0.1, 0.9, 1.0)]))
     with pytest.raises(RegionError, match="between rows 2 and 3 the body turns faster than the stated maximum"):

@@ -17,7 +17,7 @@ from __future__ import annotations
 import numpy as np
 
 from trunnion.attitude.rotations import matrix_from_quaternion
-from trunnion.envelope.balls import listed_spread
+from trunnion.envelope.balls import listed_spread, widened
 from trunnion.envelope.box import ROUNDING_BOUND
 from trunnion.envelope.results import (
     LARGEST_ANGLE,
@@ -92,13 +92,17 @@ def _best_plane(goal: Array, wide: Array, narrow: Array) -> Array:
     return np.maximum(sine(0.5 * (low + high)), values.max(axis=0))
 
 
-def path_floor(times: Array, carried: Array, rate: float, u: Array) -> tuple[float, int]:
-    """Floor (rad) of the angle to u (3,) over all steps of carried directions (3, N), and the step that sets it."""
+def path_floor(times: Array, carried: Array, rate: float, error: float, u: Array) -> tuple[float, int]:
+    """Floor (rad) of the angle to u (3,) over all steps of carried directions (3, N), and the step that sets it.
+
+    error: the rows' own error (rad). A point of the true path is within its way of the true ends, and these are within
+    the error of the rows: the string gets longer by twice the error, and nothing else comes off.
+    """
     count = carried.shape[1]
     angle = angle_between(carried, u[:, None])
     if count == 1:
-        return float(angle[0]), 0
-    way = rate * np.diff(times)
+        return max(float(angle[0]) - error, 0.0), 0
+    way = rate * np.diff(times) + 2.0 * error
     simple = simple_floor(angle[:-1], angle[1:], way)
     order = np.argsort(simple, kind="stable")
     best, where = np.inf, 0
@@ -114,15 +118,18 @@ def path_floor(times: Array, carried: Array, rate: float, u: Array) -> tuple[flo
     return best, where
 
 
-def rate_limited_spread(times: Array, quaternions: Array, rate: float, offset: int, u: Array, v: Array) -> Spread:
-    """Spread of any motion through the rows within the rate: bracketed by the floor and the best row."""
+def rate_limited_spread(
+    times: Array, quaternions: Array, rate: float, error: float, offset: int, u: Array, v: Array
+) -> Spread:
+    """Spread of any motion through the rows (known to `error` rad) within the rate: the floor and the best row."""
     matrices = matrix_from_quaternion(quaternions)
     spread = listed_spread(matrices, u, v, label="row", times=times)
     _renumber(spread, offset)
+    spread = widened(spread, u, v, error, "attitude error")
     for pair in range(u.shape[1]):
         carried = (matrices @ v[:, pair]).T
-        near, at_near = path_floor(times, carried, rate, u[:, pair])
-        far, at_far = path_floor(times, carried, rate, -u[:, pair])
+        near, at_near = path_floor(times, carried, rate, error, u[:, pair])
+        far, at_far = path_floor(times, carried, rate, error, -u[:, pair])
         _widen_to_floors(spread, pair, near, np.pi - far)
         for which, step in ((LEAST_ANGLE, at_near), (LARGEST_ANGLE, at_far)):
             spread.where[which, pair] += f" (bound set between rows {step + 1 + offset:,} and {step + 2 + offset:,})"

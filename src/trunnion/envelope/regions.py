@@ -184,7 +184,7 @@ class Track(Region):
         if self.longest_gap is not None and not self.longest_gap > 0.0:
             raise RegionError("the longest gap must be positive", remedy="state the time between rows still joined")
         if self.between is Between.RATE_LIMITED:
-            _require_rate(self.times, self.quaternions, self.max_rate, self.longest_gap)
+            _require_rate(self)
 
 
 _CHUNK = 16384  # rows worked at once, so that they stay in cache
@@ -222,12 +222,14 @@ def _require_units(norms: Array) -> None:
         )
 
 
-def _require_rate(times: Array, quaternions: Array, rate: float | None, gap: float | None) -> None:
+def _require_rate(track: Track) -> None:
+    """The rows themselves must keep the stated rate, as far as their own error lets one tell."""
+    rate, gap = track.max_rate, track.longest_gap
     if rate is None or not (np.isfinite(rate) and rate > 0.0):
         raise RegionError("motion limited by a body rate needs that rate", remedy="state the maximum body rate")
-    steps = step_angles(quaternions)
-    spans = np.diff(times)
-    excess = steps - rate * spans - 1e-9
+    steps = step_angles(track.quaternions)
+    spans = np.diff(track.times)
+    excess = steps - rate * spans - 2.0 * (track.attitude_error or 0.0) - 1e-9
     bad = excess > 0.0
     if gap is not None:
         bad &= spans <= gap

@@ -29,6 +29,8 @@ def track_spread(track: Track, u: Array, v: Array) -> Spread:
     if track.attitude_error is None:
         basis = Basis.SAMPLED if track.between is Between.SAMPLES else Basis.MEASURED
         return replace(spread, basis=basis)
+    if track.between is Between.RATE_LIMITED:  # its floors hold the error already
+        return spread
     widened_spread = widened(spread, u, v, track.attitude_error, "attitude error")
     return replace(widened_spread, basis=Basis.SAMPLED) if track.between is Between.SAMPLES else widened_spread
 
@@ -49,7 +51,8 @@ def _piece_spread(track: Track, piece: slice, u: Array, v: Array) -> Spread:
         return _slerp_spread(times, quaternions, offset, u, v)
     if track.between is Between.RATE_LIMITED:
         assert track.max_rate is not None
-        return rate_limited_spread(times, quaternions, track.max_rate, offset, u, v)
+        error = track.attitude_error or 0.0
+        return rate_limited_spread(times, quaternions, track.max_rate, error, offset, u, v)
     return listed_spread(matrix_from_quaternion(quaternions), u, v, label="row", times=times)
 
 
