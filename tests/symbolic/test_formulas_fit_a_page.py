@@ -10,6 +10,7 @@ import pytest
 from trunnion.binding.maths.parse import read_formula
 from trunnion.binding.maths.typst_maths import typst_maths
 from trunnion.symbolic.derivation import derive
+from trunnion.symbolic.statement import statement
 
 # 160 mm of text width less 7 em on one side for the equation number, at 10.5 pt
 AVAILABLE_POINTS = 160 / 25.4 * 72 - 7 * 10.5
@@ -56,3 +57,16 @@ def test_mathematics_in_prose_and_notation_is_read(number: int, any_convention) 
         read_formula(symbol)
         for formula in re.findall(r"\$([^$]+)\$", meaning):
             read_formula(formula)
+
+
+def test_names_cannot_open_or_break_mathematics(convention) -> None:
+    """Angle names are free text: a dollar sign, a brace or a backslash in one stays text."""
+    stated = convention(angle_names=("he$ading", "\\frac{", "ba}nk$$"))
+    derivation = derive(stated)
+    assert derivation.convention is stated
+    for step in derivation.steps:
+        assert step.prose.count("$") % 2 == 0
+        for formula in [step.latex, *re.findall(r"\$([^$]+)\$", step.prose)]:
+            if formula:
+                read_formula(formula)
+    assert all("$" not in paragraph for paragraph in statement(stated).paragraphs())

@@ -7,7 +7,7 @@ proved for every sequence in `symbolic`.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -43,6 +43,23 @@ def listed(words: list[str] | tuple[str, ...]) -> str:
     """`a, b and c`."""
     words = list(words)
     return words[0] if len(words) == 1 else ", ".join(words[:-1]) + " and " + words[-1]
+
+
+def plain_names(convention: Convention) -> Convention:
+    """The same convention with no dollar sign in any name: sentences carry mathematics between dollar signs."""
+    frames = (convention.reference, convention.body)
+    if not any("$" in name for frame in frames for name in (frame.name, *frame.axes, *convention.angle_names)):
+        return convention
+    reference, body = (replace(frame, name=_no_dollar(frame.name), axes=_no_dollars(frame.axes)) for frame in frames)
+    return replace(convention, reference=reference, body=body, angle_names=_no_dollars(convention.angle_names))
+
+
+def _no_dollars(names: tuple[str, str, str]) -> tuple[str, str, str]:
+    return _no_dollar(names[0]), _no_dollar(names[1]), _no_dollar(names[2])
+
+
+def _no_dollar(name: str) -> str:
+    return name.replace("$", " dollar ").strip()
 
 
 def axis_words(vector: Vector, frame: Frame, digits: int = 6) -> str:

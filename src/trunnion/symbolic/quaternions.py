@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import re
+
 import numpy as np
 import sympy
 
@@ -198,7 +200,9 @@ def _reversed_factor(turn: Turn) -> str:
 
 def _transposed(book: Book) -> None:
     setting = book.setting
-    body, reference = setting.convention.body.name, setting.convention.reference.name
+    body, reference = (
+        re.sub(r"[^\w .-]", " ", frame.name) for frame in (setting.convention.body, setting.convention.reference)
+    )
     rows = [
         (rf"\mathbf{{v}}_{{\text{{{reference}}}}}", rf"\mathbf{{R}}\, \mathbf{{v}}_{{\text{{{body}}}}}"),
         (rf"\mathbf{{v}}_{{\text{{{body}}}}}", rf"\mathbf{{R}}^{{\mathsf{{T}}}} \mathbf{{v}}_{{\text{{{reference}}}}}"),

@@ -18,6 +18,7 @@ import sympy
 
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.sequences import Sense
+from trunnion.attitude.words import plain_names
 from trunnion.symbolic.constants import AXES, Constant, constant, cross_matrix, exact_angle, to_number, turn_matrix
 from trunnion.symbolic.notation import degrees_latex, latex, letters
 from trunnion.symbolic.proofs import WORKING_DIGITS, Sample, remainder
@@ -131,7 +132,7 @@ class Setting:
     B: Constant = field(init=False)
 
     def __post_init__(self) -> None:
-        convention = self.convention
+        self.convention = convention = plain_names(self.convention)
         drawn = letters(convention.angle_names)
         self.turns = tuple(  # type: ignore[assignment]
             _turn(convention, place, drawn[place]) for place in range(3)

@@ -18,6 +18,7 @@ from trunnion.attitude.words import (
     degrees_text,
     listed,
     mapping_sentence,
+    plain_names,
     range_sentence,
     singular_words,
     turn_axes,
@@ -88,6 +89,7 @@ def statement(
     `frame_notes`: per frame name, text to carry along (which north, origin, lever arm); `standard` with
     `fixed_by_standard`: the standard that the workbook named and, one sentence each, what was taken from it.
     """
+    convention = plain_names(convention)
     turns = _turns(convention)
     stages = (turns[0].before, turns[0].after, turns[1].after, turns[2].after)
     worked = worked_vector(convention)
