@@ -15,6 +15,7 @@ from trunnion.spec.build import (
     convention_from_plain,
     frame_from_plain,
     gimbal_from_plain,
+    link_from_plain,
     mount_from_plain,
     pass_from_plain,
     region_from_plain,
@@ -263,3 +264,25 @@ def test_the_pointing_budget_of_a_standard():
     ]
     total = budget_from_plain({"name": "b", "axes": ["x"], "terms": terms}).total("APE", n_sigma=1.0)
     assert math.degrees(total.sigma[0]) * 3600 == pytest.approx(13.51, abs=0.005)
+
+
+def test_links_are_constants_or_records():
+    turned = {
+        "name": "yard-grid",
+        "of": YARD,
+        "in": LOCAL,
+        "constant": {"east": "east", "up": "up"},
+        "time offset": "20 ms",
+    }
+    link = link_from_plain(turned, open_table=None)
+    close(link.R_pc, [[0, 1, 0], [1, 0, 0], [0, 0, -1]])
+    assert link.time_offset == 0.02
+    log = {
+        "name": "log", "table": "log.csv", "between samples": "slerp", "max gap": "2 s", "scalar": "first",
+        "columns": {"time": {"column": "t", "unit": "s"}, "quaternion": ["a", "b", "c", "d"]},
+        "maps": "body to local", "reference": "local", "body": "body", "attitude error": "1 deg",
+    }  # fmt: skip
+    table = SimpleNamespace(times=[0.0, 1.0], quaternions=[[1.0, 0, 0, 0], [1.0, 0, 0, 0]])
+    flown = link_from_plain({"name": "flown", "of": BODY, "in": LOCAL, "attitude": log}, open_table=lambda plain: table)
+    assert (flown.parent, flown.child, flown.longest_gap) == ("local", "body", 2.0)
+    assert flown.attitude_error == math.radians(1)

@@ -51,6 +51,14 @@ def region_from_plain(plain: Mapping[str, Any], *, open_table: OpenTable) -> Any
     return build_region(Context(_find, raise_fault), part, open_table)
 
 
+def link_from_plain(plain: Mapping[str, Any], *, open_table: OpenTable) -> Any:
+    """The `hardware.frame_chains.Link` a plain part describes, its frames, mount or table written out."""
+    from trunnion.spec.meaning.links import build_link
+
+    part = _find("links", dict(plain), ())
+    return build_link(Context(_find, raise_fault), part, open_table)
+
+
 def gimbal_from_plain(plain: Mapping[str, Any]) -> Any:
     """The `hardware.gimbals.GimbalChain` a plain part describes, its base written out."""
     return _find("gimbals", dict(plain), ())
@@ -91,6 +99,7 @@ def _adapter(section: str) -> TypeAdapter[Any]:
         "conventions": parts.Convention,
         "mounts": parts.Mount,
         "envelopes": parts.Envelope,
+        "links": parts.Link,
         "gimbals": parts.Gimbal,
         "passes": parts.Pass,
         "sectors": parts.Sector,

@@ -9,9 +9,8 @@ from typing import Any
 from trunnion.errors import Fault
 from trunnion.spec import parts
 from trunnion.spec.kinds import fault, nearest, suggestion
-from trunnion.spec.meaning.context import Context, Steps
+from trunnion.spec.meaning.context import Steps
 from trunnion.spec.meaning.frames import check_partner
-from trunnion.spec.meaning.rotations import Ends, build_rotation
 from trunnion.spec.model import LISTED_SECTIONS, NAMED_SECTIONS, WorkbookFile
 from trunnion.spec.paths import find
 from trunnion.spec.resolve import Resolver
@@ -88,13 +87,11 @@ class _Check:
 
     def everything(self) -> None:
         """Build everything that can be built; whatever keeps a part from meaning one thing is noted."""
-        for section in ("frames", "conventions", "mounts", "envelopes", "gimbals", *HARDWARE):
+        for section in ("frames", "conventions", "mounts", "envelopes", "links", "gimbals", *HARDWARE):
             for name in getattr(self.model, section):
                 self.resolver.build(section, name)
         for name, frame in self.model.frames.items():
             self._partner(name, frame)
-        for name, link in self.model.links.items():
-            self._link(self.resolver.context("links", name), link)
         self._circles()
 
     def _partner(self, name: str, frame: parts.Frame) -> None:
@@ -109,24 +106,6 @@ class _Check:
             self.note("self-link", (*steps, "paired with"), what="the pairing", frame=name)
         else:
             check_partner(self.resolver.context(*steps), frame, self.model.frames.get(frame.paired_with))
-
-    def _link(self, ctx: Context, link: parts.Link) -> None:
-        of, into = ctx.part("frames", link.of, "of"), ctx.part("frames", link.in_, "in")
-        given = [key for key in ("constant", "mount", "attitude") if getattr(link, key) is not None]
-        if len(given) != 1:
-            ctx.note("link-form", count=len(given) or "none", forms="constant, mount and attitude")
-        if of is not None and into is not None and of.name == into.name:
-            ctx.note("self-link", "in", what="the link", frame=of.name)
-        if link.mount is not None:
-            ctx.part("mounts", link.mount, "mount")
-        if link.attitude is not None:
-            ctx.part("envelopes", link.attitude, "attitude")
-        if link.constant is not None and of is not None and into is not None:
-            for key, frame in (("of", of), ("in", into)):
-                if frame.left_handed:
-                    ctx.note("left-handed-use", key, frame=frame.name)
-                    return
-            build_rotation(ctx.at("constant"), link.constant, Ends(of, into, ("of",), ("in",)))
 
     def _circles(self) -> None:
         """Envelopes made of envelopes must not contain themselves."""
@@ -172,8 +151,8 @@ class _Check:
     def frames_in_use(self) -> None:
         """Every frame is joined to another one by something."""
         used = set(self._joined_frames())
-        for name in self.model.frames:
-            if name not in used:
+        for name, frame in self.model.frames.items():
+            if name not in used and frame.handed != "left":
                 self.note("unlinked-frame", ("frames", name), key=True, frame=name)
 
     def _joined_frames(self) -> Iterator[str]:

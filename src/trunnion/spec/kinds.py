@@ -352,6 +352,8 @@ _add(
 # --- mounts
 # -------------------------------------------------------------------------------------------------------
 
+_add("other-host", "mount '{mount}' sits on '{host}', and the link is to '{frame}'", "name the mount's host under `in`")
+_add("not-a-table", "envelope '{name}' is no record against time", "name an envelope that is a `table`")
 _add("few-sightings", "{count} sightings leave the mount open", "list two or more, well apart from each other")
 _add("budget-axes", "{count} values are given for {axes} axes", "give one value for each axis of the budget")
 _add("too-small", "a step of {text} is shorter than {limit}", "give at least {limit}")

@@ -21,8 +21,8 @@ _SECTIONS = {singular: section for section, singular in NAMED_SECTIONS.items()}
 def plain_part(workbook: Workbook, kind: str, name: str) -> dict[str, Any]:
     """A part of a workbook as plain JSON with its references written out.
 
-    kind: `frame`, `convention`, `envelope` or `mount` (or the section's name). KeyError for a name that is
-    not there. Table files keep their path relative to the workbook.
+    kind: what one part of a named section is called (`frame`, `convention`, `envelope`, `mount`, `link`, `gimbal`, …)
+    or the section's name. KeyError for a name that is not there. Table files keep their path in the workbook.
     """
     section = _SECTIONS.get(kind, kind)
     part = workbook.part(section, name)
@@ -31,6 +31,7 @@ def plain_part(workbook: Workbook, kind: str, name: str) -> dict[str, Any]:
         "conventions": _convention,
         "envelopes": _envelope,
         "mounts": _mount,
+        "links": _link,
         "gimbals": _gimbal,
         "surveys": _survey,
         "budgets": _budget,
@@ -83,6 +84,13 @@ def _envelope(workbook: Workbook, part: Any, made: dict[str, Any]) -> None:
             "host": plain_part(workbook, "envelopes", str(part.product.host)),
             "mount": plain_part(workbook, "mounts", str(part.product.mount)),
         }
+
+
+def _link(workbook: Workbook, part: parts.Link, made: dict[str, Any]) -> None:
+    for key in ("of", "in"):
+        _inline(workbook, "frames", made, key)
+    _inline(workbook, "mounts", made, "mount")
+    _inline(workbook, "envelopes", made, "attitude")
 
 
 def _gimbal(workbook: Workbook, part: parts.Gimbal, made: dict[str, Any]) -> None:

@@ -118,6 +118,12 @@ def _envelope(ctx: Context, name: str, part: Any) -> Any:
     return part if check_envelope(ctx, name, part) else None
 
 
+def _link(ctx: Context, name: str, part: Any) -> Any:
+    from trunnion.spec.meaning.links import check_link
+
+    return check_link(ctx, name, part)
+
+
 def _hardware(function: str) -> Callable[[Context, str, Any], Any]:
     """A builder of the hardware parts, loaded when a workbook has one."""
 
@@ -130,6 +136,7 @@ def _hardware(function: str) -> Callable[[Context, str, Any], Any]:
 
 
 BUILDERS: dict[str, Callable[[Context, str, Any], Any]] = {
+    "links": _link,
     "gimbals": _hardware("build_gimbal"),
     "passes": _hardware("check_pass"),
     "sectors": _hardware("build_sector"),

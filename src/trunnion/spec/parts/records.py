@@ -11,7 +11,7 @@ from pydantic import ConfigDict
 
 from trunnion.spec.parts.base import NamedPart, Part, Reference
 from trunnion.spec.parts.rotations import Rotation
-from trunnion.spec.values import AnyQuantity, Id, Name, Text, Time, Title, Truth, one_of
+from trunnion.spec.values import AnyQuantity, Duration, Id, Name, Text, Time, Title, Truth, one_of
 
 BASES = ("exact", "certified bound", "sampled", "measured")
 ROLES = ("prepared", "checked", "approved")
@@ -133,6 +133,7 @@ class Link(NamedPart):
     mount: Reference | None = None
     attitude: Reference | None = None
     time_offset: Time | None = None
-    jitter: Time | None = None
+    offset_error: Duration | None = None
+    jitter: Duration | None = None
     source: Text | None = None
     text: Text | None = None
