@@ -200,7 +200,7 @@ def test_changed_data_of_an_issued_revision_are_told(computed: Path, run, edit) 
 def test_an_incomplete_workbook_is_not_issued(miniature: Path, run, set_cell) -> None:
     set_cell(miniature / "templates" / "tiny-margin.ipynb", 3, "margin = 1 / 0")
     run(miniature)
-    with pytest.raises(RecordError, match="revision A is not complete: C01"):
+    with pytest.raises(StoreError, match="out of date or failed: C01"):
         issued(miniature, run)
     assert not (miniature / "issued").exists()
 

@@ -292,3 +292,26 @@ def test_nothing_is_written_into_the_workbook(miniature: Path, run, tmp_path: Pa
     run(miniature, output=tmp_path / "elsewhere")
     assert checksums(miniature) == before
     assert not list((miniature.parent / "outputs").iterdir())
+
+
+def test_a_decision_over_conventions_always_has_a_candidate_without_angles(computed: Path, run, edit) -> None:
+    from trunnion.calculations.judgement import NO_ANGLES
+
+    spec = computed / "workbook.yaml"
+    edit(spec, "of: ordinary, at least: 20 deg", "of: D1, at least: 20 deg")
+    decision = "  - {id: D1, chosen: ordinary, over: [ordinary], because: It is clear., rests on: [C01]}\n"
+    spec.write_text(spec.read_text() + "\ndecisions:\n" + decision)
+    first, second, _ = run(computed).judgements
+    assert (first.candidate, first.counts, first.verdict) == ("ordinary", True, Verdict.MEETS)
+    assert (second.candidate, second.counts, second.verdict) == (NO_ANGLES, False, Verdict.MEETS)
+    assert second.value_text == "no singular attitude"
+
+
+def test_an_old_body_altered_meanwhile_is_not_taken_back(computed: Path, run, edit) -> None:
+    spec = computed / "workbook.yaml"
+    former = next(iter(run(computed).done)).planned.key
+    edit(spec, "steepest: 25 deg", "steepest: 30 deg")
+    run(computed, only=["C01"])
+    edit(outputs_of(computed) / "bodies" / f"{former}.ipynb", "65.0", "66.0")
+    edit(spec, "steepest: 30 deg", "steepest: 25 deg")
+    assert run(computed).done[0].fresh

@@ -20,7 +20,7 @@ from trunnion.calculations.plan import Planned, plan
 from trunnion.calculations.results import Recorded, recorded
 from trunnion.calculations.run import Job, Outcome, Progress, run
 from trunnion.calculations.store import RevisionFolder
-from trunnion.errors import Fault, SpecError, StoreError, TrunnionError
+from trunnion.errors import SpecError, StoreError, TrunnionError
 
 COMPUTED, FAILED, MISSING = "computed", "failed", "missing"
 
@@ -68,17 +68,19 @@ def compute(
     workers: int | None = None,
     allow_local: bool = False,
     approved: Collection[str] = (),
+    signatures: Mapping[str, Sequence[Sequence[str]]] | None = None,
     scratch: str | None = None,
     tell: Callable[[Progress], None] | None = None,
     then: Callable[[Computed], None] | None = None,
 ) -> Computed:
     """Compute a loaded workbook into its revision folder.
 
-    Runs only what is out of date (of `only`, if given; nothing at all if it is None); every other body is
+    Runs only what is out of date (of `only`, if given; None: nothing may be due); every other body is
     kept byte for byte. A failed calculation does not stop the others. `approved` are ids of deviations an
-    approver has signed. `scratch` names a folder beside the revisions for a trial. `then` is called at the
-    end, while the folder is still held: the package is bound there. Raises SpecError, TemplateError or
-    StoreError before anything is run; what a calculation raises is in `Computed.failed`.
+    approver has signed, `signatures` the sign-off rows (role, name, date, state) of sheets by calculation
+    id. `scratch` names a folder beside the revisions for a trial. `then` is called at the end, while the
+    folder is still held: the package is bound there. Raises SpecError, TemplateError or StoreError before
+    anything is run; what a calculation raises is in `Computed.failed`.
     """
     _require_known(workbook, only or ())
     planned = plan(workbook, allow_local=allow_local, only=frozenset(only or ()))
@@ -93,7 +95,7 @@ def compute(
         _remove_stale(folder, done)
         _write_state(folder, done)
         computed = _judged(workbook, folder, done, approved)
-        _write_sheets(computed)
+        _write_sheets(computed, signatures or {})
         writes.write_if_changed(folder.path / "results.json", canonical_bytes(computed.results))
         writes.write_if_changed(folder.path / "workbook.yaml", workbook.text.encode("utf-8"))
         if then is not None:
@@ -138,19 +140,24 @@ def _copy_inputs(folder: RevisionFolder, planned: Sequence[Planned]) -> None:
 def _sort(
     folder: RevisionFolder, planned: Sequence[Planned], only: Collection[str] | None
 ) -> tuple[dict[str, bytes], list[Planned]]:
-    """Bodies that stand, by calculation id, and the calculations to run (none if `only` is None)."""
-    checksums = {
-        entry["key"]: entry.get("sha256") for entry in folder.read_state()["calculations"].values() if "key" in entry
-    }
+    """Bodies that stand, by calculation id, and the calculations to run (StoreError if `only` is None and
+    there are any).
+    """
+    checksums = folder.read_state().get("bodies", {})
     kept: dict[str, bytes] = {}
     due = []
     for entry in planned:
         content = folder.sound_body(entry.key, checksums.get(entry.key)) or _elsewhere(folder, entry.key)
         if content is not None:
             kept[entry.id] = content
-        elif only is not None and (not only or entry.id in only):
-            folder.set_aside(entry.key)
+        elif not only or entry.id in only:
             due.append(entry)
+    if only is None and due:
+        raise StoreError(
+            f"out of date or failed: {', '.join(entry.id for entry in due)}", remedy="run trunnion compute first"
+        )
+    for entry in due:
+        folder.set_aside(entry.key)
     return kept, due
 
 
@@ -159,9 +166,10 @@ def _elsewhere(folder: RevisionFolder, key: str) -> bytes | None:
     if folder.body(key).exists():
         return None
     for other in store.other_revisions(folder):
-        for entry in other.read_state()["calculations"].values():
-            if entry.get("key") == key and entry.get("sha256"):
-                return folder.take_body_from(other, key, entry["sha256"])
+        checksum = other.read_state().get("bodies", {}).get(key)
+        content = folder.take_body_from(other, key, checksum) if checksum else None
+        if content is not None:
+            return content
     return None
 
 
@@ -228,7 +236,10 @@ def _write_state(folder: RevisionFolder, done: Sequence[Done]) -> None:
             }
         elif former is not None:
             entries[entry.planned.id] = former
-    folder.write_state({**state, "calculations": entries, "code": dict(keys.surroundings().code)})
+    bodies = {key: digest for key, digest in state.get("bodies", {}).items() if folder.body(key).exists()}
+    bodies |= {entry.planned.key: sha256(entry.body) for entry in done if entry.body is not None}
+    code = dict(keys.surroundings().code)
+    folder.write_state({**state, "calculations": entries, "bodies": bodies, "code": code})
 
 
 def _judged(workbook: Any, folder: RevisionFolder, done: tuple[Done, ...], approved: Collection[str]) -> Computed:
@@ -237,21 +248,18 @@ def _judged(workbook: Any, folder: RevisionFolder, done: tuple[Done, ...], appro
         workbook.requirements,
         workbook.decisions,
         records,
-        without_angles=angle_free(workbook),
+        conventions=workbook.conventions,
         deviations=workbook.deviations,
         approved=approved,
+        place=workbook.place,
     )
-    broken = judgement.broken_promises(workbook.calculations, workbook.requirements, judgements, set(records))
+    broken = judgement.broken_promises(
+        workbook.calculations, workbook.requirements, judgements, set(records), workbook.place
+    )
     if broken:
-        raise SpecError([Fault(fault.cause, fault.remedy, fault.place) for fault in broken])
+        raise SpecError(broken)
     computed = Computed(workbook, folder, done, tuple(judgements))
     return Computed(workbook, folder, done, tuple(judgements), results_of(computed))
-
-
-def angle_free(workbook: Any) -> set[str]:
-    """Candidates of decisions that are no convention of the workbook: a quaternion or a matrix inside."""
-    named = {name for decision in workbook.decisions for name in decision.over}
-    return {name for name in named if name not in workbook.conventions and name not in workbook.mounts}
 
 
 def results_of(computed: Computed) -> dict[str, Any]:
@@ -303,16 +311,18 @@ def _plain_calculation(entry: Done) -> dict[str, Any]:
     }
 
 
-def _write_sheets(computed: Computed) -> None:
+def _write_sheets(computed: Computed, signatures: Mapping[str, Sequence[Sequence[str]]]) -> None:
     for entry in computed.done:
         if entry.body is None:
             continue
-        sheet = sheets.sheet_of(store.read_body(entry.body), sheet_text(computed, entry))
+        sheet = sheets.sheet_of(
+            store.read_body(entry.body), sheet_text(computed, entry, signatures.get(entry.planned.id, ()))
+        )
         path = computed.folder.sheet(entry.planned.id, entry.planned.template.name)
         writes.write_if_changed(path, canonical_bytes(sheet))
 
 
-def sheet_text(computed: Computed, entry: Done) -> sheets.SheetText:
+def sheet_text(computed: Computed, entry: Done, signed: Sequence[Sequence[str]] = ()) -> sheets.SheetText:
     """What the generated cells of one sheet say."""
     document, planned = computed.workbook.document, entry.planned
     libraries = ", ".join(f"{name} {version}" for name, version in planned.parts["libraries"].items())
@@ -329,7 +339,7 @@ def sheet_text(computed: Computed, entry: Done) -> sheets.SheetText:
     )
     if planned.template.local:
         warnings.append(f"Made with a template of the workbook's own (sha256 {planned.template.file_digest}).")
-    return sheets.SheetText(planned.id, rows, requirement_rows(computed, planned.id), (), warnings)
+    return sheets.SheetText(planned.id, rows, requirement_rows(computed, planned.id), signed, warnings)
 
 
 def requirement_rows(computed: Computed, calculation: str) -> list[tuple[str, ...]]:

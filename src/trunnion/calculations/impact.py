@@ -135,7 +135,7 @@ def _reasons(baseline: Baseline | None, entry: Planned, code: Mapping[str, str])
         return reasons(None, entry.parts)
     found = reasons(former["parts"], entry.parts, old_code=baseline.code, new_code=code)
     if not found and baseline.recorded(entry.id) is None:
-        return [Reason(ReasonKind.BODY, "the last run failed")]
+        return [Reason(ReasonKind.BODY, "not computed in the last run")]
     return found
 
 
@@ -164,8 +164,6 @@ def _against(
 def _verdicts(
     baseline: Baseline, workbook: Any, planned: Sequence[Planned], stale: set[str], approved: Collection[str]
 ) -> list[VerdictImpact]:
-    from trunnion.calculations.compute import angle_free
-
     fresh: dict[str, Recorded] = {}
     known: dict[str, Recorded] = {}
     for entry in planned:
@@ -175,7 +173,7 @@ def _verdicts(
             if entry.id not in stale:
                 fresh[entry.id] = found
     options: dict[str, Any] = {
-        "without_angles": angle_free(workbook),
+        "conventions": workbook.conventions,
         "deviations": workbook.deviations,
         "approved": approved,
     }

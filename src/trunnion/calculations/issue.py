@@ -29,7 +29,7 @@ from trunnion.calculations.notebooks import canonical_bytes
 from trunnion.errors import RecordError, StoreError
 
 SCHEMA = 1
-_NOT_FROZEN = ("lock.json",)
+_NOT_FROZEN = ("lock.json", "state.json")
 
 
 @dataclass(frozen=True)
@@ -104,6 +104,12 @@ def require_unaltered(workbook: Path, outputs: Path | None = None) -> None:
 def is_issued(workbook: Path, revision: str) -> bool:
     """Whether a revision is issued."""
     return (issued_folder(workbook) / revision / DIGESTS).is_file()
+
+
+def issue_date(workbook: Path, revision: str) -> str | None:
+    """The day a revision was issued; None if it is not."""
+    path = issued_folder(workbook) / revision / DIGESTS
+    return str(read_json(path)["document"]["issued"]) if path.is_file() else None
 
 
 def output_digests(folder: Path) -> dict[str, str]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterable, Mapping, Sequence
+from collections.abc import Callable, Collection, Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -18,10 +18,17 @@ from trunnion.calculations.verdicts import (
     together,
     why_text,
 )
-from trunnion.errors import Fault, SpecError, UnitError
+from trunnion.errors import Fault, Place, SpecError, UnitError
 from trunnion.sheet.rounding import with_unit
 
 LOCK_MARGIN = "lock margin"
+NO_ANGLES = "quaternion or matrix inside, angles for display only"
+
+PlaceOf = Callable[[str], Place]
+
+
+def _nowhere(key: str) -> Place:
+    return Place(key=key)
 
 
 @dataclass(frozen=True)
@@ -130,15 +137,16 @@ def judge_all(
     decisions: Sequence[Any],
     records: Mapping[str, Recorded],
     *,
-    without_angles: Collection[str] = (),
+    conventions: Collection[str] = (),
     deviations: Sequence[Any] = (),
     approved: Collection[str] = (),
+    place: PlaceOf = _nowhere,
 ) -> list[Judgement]:
     """Judge every requirement for every candidate, in the order of the spec.
 
-    `without_angles` names candidates that carry no angles inside (a quaternion or a matrix): they have no singular
-    attitude, so a lock margin bounds them trivially. `approved` are the ids of deviations an approver has signed.
-    SpecError names two results for one requirement, or a unit that can't be compared.
+    A decision over `conventions` always has one candidate more, NO_ANGLES: it has no singular attitude, so a lock
+    margin bounds it trivially. `approved` are the ids of deviations an approver has signed; `place` finds a key path
+    in the spec. SpecError names two results for one requirement, or a unit that can't be compared.
     """
     chosen = {decision.id: decision for decision in decisions}
     faults: list[Fault] = []
@@ -146,18 +154,32 @@ def judge_all(
     for requirement in requirements:
         asked = asked_of(requirement)
         decision = chosen.get(asked.of)
-        candidates = decision.over if decision is not None else [asked.of]
-        for candidate in candidates:
+        for candidate in _candidates(asked, decision, conventions):
             counts = decision is None or candidate == decision.chosen
-            judgement = _judge_one(asked, candidate, counts, records, candidate in without_angles, faults)
+            judgement = _judge_one(asked, candidate, counts, records, faults)
             judgements.append(_with_deviation(judgement, deviations, approved))
     if faults:
-        raise SpecError(faults)
+        raise SpecError([Fault(fault.cause, fault.remedy, place(fault.place.key)) for fault in faults])
     return judgements
 
 
-def broken_promises(calculations: Iterable[Any], requirements: Sequence[Any], judgements: Sequence[Judgement],
-                    finished: Collection[str]) -> list[Fault]:  # fmt: skip
+def _candidates(asked: Asked, decision: Any | None, conventions: Collection[str]) -> list[str]:
+    """The candidates a requirement is judged for: those of its decision, or the one it names."""
+    if decision is None:
+        return [asked.of]
+    candidates = list(decision.over)
+    if asked.quantity == LOCK_MARGIN and set(candidates) & set(conventions) and NO_ANGLES not in candidates:
+        candidates.append(NO_ANGLES)
+    return candidates
+
+
+def broken_promises(
+    calculations: Iterable[Any],
+    requirements: Sequence[Any],
+    judgements: Sequence[Judgement],
+    finished: Collection[str],
+    place: PlaceOf = _nowhere,
+) -> list[Fault]:
     """Promises (`shows`) of finished calculations without a matching result: one fault each, naming both."""
     known = {requirement.id for requirement in requirements}
     faults = []
@@ -167,7 +189,8 @@ def broken_promises(calculations: Iterable[Any], requirements: Sequence[Any], ju
                 continue
             if not any(_rests_on(judgement, promised, calculation.id) for judgement in judgements):
                 cause = f"{calculation.id} promises to show {promised}, and records no result that {promised} selects"
-                faults.append(Fault(cause, f"take {promised} out of its `shows`, or compare result, of and over"))
+                remedy = f"take {promised} out of its `shows`, or compare result, of and over"
+                faults.append(Fault(cause, remedy, place(f"calculations.{calculation.id}.shows")))
     return faults
 
 
@@ -178,9 +201,9 @@ def _rests_on(judgement: Judgement, requirement: str, calculation: str) -> bool:
 
 
 def _judge_one(
-    asked: Asked, candidate: str, counts: bool, records: Mapping[str, Recorded], no_angles: bool, faults: list[Fault]
+    asked: Asked, candidate: str, counts: bool, records: Mapping[str, Recorded], faults: list[Fault]
 ) -> Judgement:
-    if no_angles and asked.quantity == LOCK_MARGIN:
+    if candidate == NO_ANGLES and asked.quantity == LOCK_MARGIN:
         return Judgement(asked, candidate, counts, Verdict.MEETS, (), no_lock=True)
     parts = tuple(_judge_part(asked, candidate, over, records, faults) for over in asked.over or (None,))
     return Judgement(asked, candidate, counts, together(part.verdict for part in parts), parts)
@@ -196,7 +219,8 @@ def _judge_part(
         return Part(over, Verdict.NOT_SHOWN, None, f"no calculation records {asked.quantity} of {candidate}{where}")
     if len(found) > 1:
         cause = f"two results answer {asked.requirement}: {found[0].place} and {found[1].place}"
-        faults.append(Fault(cause, "let one calculation record it, or name the place with `over`"))
+        spot = Place(key=f"requirements.{asked.requirement}")
+        faults.append(Fault(cause, "let one calculation record it, or name the place with `over`", spot))
     result = found[0]
     failed = records[result.calculation].failed_checks
     if failed:
@@ -210,7 +234,7 @@ def _judged(asked: Asked, over: str | None, result: Result, faults: list[Fault])
         limit = asked.limit.in_unit(result.unit)
     except UnitError as err:
         cause = f"{asked.requirement} asks {asked.limit.text}, and {result.place} is in {result.unit or 'no unit'}"
-        faults.append(Fault(cause, err.fault.remedy))
+        faults.append(Fault(cause, err.fault.remedy, Place(key=f"requirements.{asked.requirement}")))
         return Part(over, Verdict.NOT_SHOWN, result, "its unit can't be compared")
     verdict = judge(result.bounds, asked.comparison, limit, asked.basis)
     why = why_text(result.bounds, asked.comparison, limit, asked.basis, result.unit)

@@ -15,6 +15,7 @@ from trunnion.calculations.baselines import issued_baseline
 from trunnion.calculations.compute import FAILED, MISSING, Computed, Done
 from trunnion.calculations.digest import sha256, sha256_json
 from trunnion.calculations.impact import without_source
+from trunnion.calculations.issue import issue_date
 from trunnion.calculations.judgement import Judgement
 from trunnion.errors import BindingError
 
@@ -69,6 +70,11 @@ def changes_since_superseded(computed: Computed) -> list[tuple[str, str, str, st
 def bind_package(computed: Computed, *, pdf: bool, status: str = "draft", date: str = "") -> Bound:
     """Bind the package of a computed workbook into its revision folder, unless what is there is what would be made."""
     folder, house_file = computed.folder.path, computed.workbook.house
+    issued = issue_date(computed.workbook.root, computed.folder.path.name)
+    if issued is not None:
+        status, date = "issued", issued
+        if (folder / "package.html").is_file():  # as issued; never bound again over it
+            return Bound(folder / "package.html", False)
     key = _package_key(computed, pdf, status, date)
     record = folder / RECORD
     if _stands(folder, record, key):
@@ -191,8 +197,9 @@ def _evidence(entry: Judgement) -> list[p.Evidence]:
 
 def _decision(decision: Any, computed: Computed) -> p.Decision:
     alternatives = []
-    for name in decision.over:
-        own = [j for j in computed.judgements if j.asked.of == decision.id and j.candidate == name]
+    judged = [j for j in computed.judgements if j.asked.of == decision.id]
+    for name in dict.fromkeys([*decision.over, *(j.candidate for j in judged)]):
+        own = [j for j in judged if j.candidate == name]
         verdicts = "; ".join(f"{j.asked.requirement}: {j.verdict.value}" for j in own)
         grounds = "; ".join(f"{j.asked.requirement}: {j.value_text}" for j in own)
         alternatives.append(p.Alternative(name, verdicts, grounds, name == decision.chosen))
