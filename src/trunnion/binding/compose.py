@@ -107,7 +107,8 @@ class _Composer:
         if findings:
             parts.append(f"{findings} {self.words('open findings')}")
         if self.package.deviations:
-            parts.append(", ".join(d.id for d in self.package.deviations))
+            ids = [d.id for d in self.package.deviations]
+            parts.append(", ".join(ids) if len(ids) <= 3 else f"{len(ids)} × {self.words('Deviations')}")
         return " · ".join(parts)
 
     def link(self, evidence: Evidence) -> b.Inline:
@@ -391,7 +392,7 @@ class _Composer:
         blocks: list[b.Block] = []
         if rows:
             heads = self.heads("Input", "Bytes", "Read as", "Source")
-            blocks.append(b.Table(heads, tuple(rows), "lrll", widths=(3.6, 1.2, 3.2, 2)))
+            blocks.append(b.Table(heads, tuple(rows), "lrll", widths=(3.5, 1.6, 3, 2)))
         if self.package.spec_text:
             blocks += [b.Heading(2, b.line(w("Project spec"))), b.Code(self.package.spec_text.rstrip("\n"), "yaml")]
         if not blocks:

@@ -12,6 +12,7 @@ import re
 import tempfile
 from collections import Counter
 from collections.abc import Callable
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -28,7 +29,8 @@ from trunnion.glyphs import FONT_FOLDER, TEXT_FACES, visible_text
 STANDARDS: list[Any] = ["a-3a", "ua-1"]
 LEAST_SCALE = 0.7
 TEXT_WIDTH_MM, LARGEST_HEIGHT_MM = 160.0, 190.0
-TABLE_SIZE = 8.5  # pt
+TABLE_SIZE, SMALLEST = 8.5, 6.5  # pt
+HEAD_WIDTH = TEXT_WIDTH_MM / (8.0 * 0.3528) - 1.5  # em of the head of a page, gap taken off
 _TEMPLATE = "trunnion.typ"
 _BADGES = {Verdict.MEETS: "meets", Verdict.DOES_NOT_MEET: "fails", Verdict.NOT_SHOWN: "unshown"}
 _MARKED = {"strong": "strong", "emph": "emph", "strike": "strike", "code": "code", "quiet": "quiet", "hash": "hash"}
@@ -150,9 +152,10 @@ class _Writer:
     def run(self, parts: list[b.Part]) -> str:
         """Parts that share pages, with the head and foot of those pages."""
         doc, w, first = self.document, self.words, parts[0]
-        left = self.text(f"{doc.number} · {w('Rev.')} {doc.revision} · {doc.date}")
-        cover = doc.organization if first.look == "cover" else _clipped(doc.title)
-        right = self.text(first.calculation or cover)
+        known = f"{doc.number} · {w('Rev.')} {doc.revision} · {doc.date}"
+        left = self.text(known)
+        cover = doc.organization if first.look == "cover" else doc.title
+        right = self.text(first.calculation or _clipped(cover, HEAD_WIDTH - _em(known)))
         foot, mark = self.text(first.state), self.text(doc.classification)
         sheet = f"{self.text(w('Sheet'))}, {self.text(w('of'))}"
         body = "\n".join(self.part(part, flows=index > 0) for index, part in enumerate(parts))
@@ -223,7 +226,7 @@ class _Writer:
         """Blocks one after another; a statement stays with the formula or table it speaks of."""
         seen = [block for block in found if not (isinstance(block, b.Code) and block.folded)]
         out = []
-        for block, after in zip(seen, [*seen[1:], None], strict=True):
+        for block, after in zip(seen, [*seen, None][1:], strict=True):
             keeps = isinstance(block, b.Callout) and isinstance(after, b.Equation | b.Figure)
             keeps = keeps or (isinstance(block, b.Callout) and isinstance(after, b.Table) and _small(after))
             out.append(self.callout(block, keeps=True) if keeps else self.block(block))  # type: ignore[arg-type]
@@ -266,10 +269,19 @@ class _Writer:
         return f"#display-maths({name}, {number}, {self.alt(block.formula)}, {caption}, {where}, {body})"
 
     def table(self, block: b.Table) -> str:
+        whole = str(_small(block)).lower()
+        made = " + v(0.6em, weak: true) + ".join(self.data_table(part, whole) for part in _narrowed(block))
+        if not (block.caption or block.number):
+            return f"#({made})"
+        name = quoted(block.anchor) if block.anchor else "none"
+        notes = "".join(f"{self.content(note)}, " for note in block.notes)
+        caption = self.caption("Table", block.number, block.caption)
+        return f"#captioned({name}, {caption}, {made}, ({notes}), whole: {whole})"
+
+    def data_table(self, block: b.Table, whole: str) -> str:
+        """The table itself, without caption; anchors of rows stand in their first cells."""
         columns, size = _columns(block)
-        align = ", ".join(
-            {"l": "left", "r": "right", "c": "center"}[a] for a in block.align or "l" * len(block.headers)
-        )
+        align = ", ".join(_SIDES[side] for side in block.align or "l" * len(block.headers))
         heads = ", ".join(self.content(cell) for cell in block.headers)
         cells = []
         for index, row in enumerate(block.rows):
@@ -278,16 +290,9 @@ class _Writer:
                 lead = f"#here-is({quoted(anchor)});" if anchor and column == 0 else ""
                 cells.append(f"[{lead}{self.line(cell)}]")
         idle = "".join(f"{i}, " for i, name in enumerate(block.row_classes) if "idle" in name)
-        whole = str(_small(block)).lower()
         solid = str(all(len(plain(cell)) <= 600 for row in block.rows for cell in row)).lower()
         options = f"idle: ({idle}), size: {size}pt, whole: {whole}, solid: {solid}"
-        made = f"data-table(({columns}), ({align},), ({heads},), ({', '.join(cells)},), {options})"
-        if not (block.caption or block.number):
-            return f"#{made}"
-        name = quoted(block.anchor) if block.anchor else "none"
-        notes = "".join(f"{self.content(note)}, " for note in block.notes)
-        caption = self.caption("Table", block.number, block.caption)
-        return f"#captioned({name}, {caption}, {made}, ({notes}), whole: {whole})"
+        return f"data-table(({columns}), ({align},), ({heads},), ({', '.join(cells)},), {options})"
 
     def caption(self, word: str, number: str, parts: b.Line) -> str:
         lead = f"#strong[#{self.text(f'{self.words(word)} {number}')}];#h(0.6em);" if number else ""
@@ -358,8 +363,13 @@ def _runs(parts: list[b.Part]) -> list[list[b.Part]]:
     return out
 
 
-def _clipped(title: str, most: int = 72) -> str:
-    return title if len(title) <= most else title[: most - 1].rstrip() + "…"
+def _clipped(title: str, room: float) -> str:
+    """A title as far as it fits into `room` em."""
+    if _em(title) <= room:
+        return title
+    while title and _em(title) > room - 1.0:
+        title = title[:-1]
+    return title.rstrip() + "…" if title else ""
 
 
 # ---- sizes -------------------------------------------------------------------------------------------------
@@ -372,8 +382,8 @@ def _breakable(text: str) -> str:
     """Long words get invisible places to break: after their own stops, and in runs that have none."""
 
     def split(match: re.Match[str]) -> str:
-        word = re.sub(r"(?<=[./_:;,])(?=[^\s./_:;,])", "\u200b", match.group())
-        return re.sub(r"[^\u200b]{25,}", lambda m: _chopped(m.group(), 16), word)
+        word = re.sub(r"(?<=[./_:;,])(?=[^\s./_:;,\d])", "\u200b", match.group())
+        return re.sub(r"[^\u200b]{23,}", lambda m: _chopped(m.group(), 12), word)
 
     return _LONG_WORD.sub(split, text)
 
@@ -392,12 +402,37 @@ def _columns(block: b.Table) -> tuple[str, float]:
     if sum(longest) <= room:
         return "auto, " * len(longest), TABLE_SIZE
     needed = sum(words)
-    size = TABLE_SIZE if needed <= room else max(5.5, round(TABLE_SIZE * room / needed, 1))
+    size = TABLE_SIZE if needed <= room else max(SMALLEST, round(TABLE_SIZE * room / needed, 1))
     spare = max(0.0, room - needed)
     wishes = [min(long, 40.0) - min(word, 40.0) + 0.01 for long, word in zip(longest, words, strict=True)]
     gap = 2.9 / per_em
     shares = [word + gap + spare * wish / sum(wishes) for word, wish in zip(words, wishes, strict=True)]
     return "".join(f"{share:.3f}fr, " for share in shares), size
+
+
+def _narrowed(block: b.Table) -> list[b.Table]:
+    """A table too wide for legible letters, as several below each other, each with the first column again."""
+    words = _measured(block)[1]
+    count = len(words)
+    gap = 2.9 / (SMALLEST * 0.3528)
+    room = TEXT_WIDTH_MM / (SMALLEST * 0.3528)
+    if block.widths or count < 3 or sum(words) + gap * count <= room:
+        return [block]
+    widest = max(words[1:]) + gap
+    each = max(1, int((room - words[0] - gap) / widest))
+    each = -(-(count - 1) // -(-(count - 1) // each))  # as many parts as that needs, of like size
+    groups = [list(range(start, min(start + each, count))) for start in range(1, count, each)]
+    return [_with_columns(block, [0, *group], first=index == 0) for index, group in enumerate(groups)]
+
+
+def _with_columns(block: b.Table, columns: list[int], *, first: bool) -> b.Table:
+    return replace(
+        block,
+        headers=tuple(block.headers[c] for c in columns),
+        rows=tuple(tuple(row[c] for c in columns) for row in block.rows),
+        align="".join(block.align[c] for c in columns) if block.align else "",
+        row_anchors=block.row_anchors if first else (),
+    )
 
 
 def _measured(block: b.Table) -> tuple[list[float], list[float]]:
