@@ -8,7 +8,11 @@ import pytest
 from jsonschema import Draft202012Validator
 
 from trunnion.spec import json_schema
+from trunnion.spec.meaning.envelopes import STATEMENT_KEYS
+from trunnion.spec.parts import Table
+from trunnion.spec.parts.base import key_of
 from trunnion.spec.tree import read_tree
+from trunnion.tables import statements
 
 HERE = Path(__file__).parent
 
@@ -49,4 +53,10 @@ def test_every_key_of_the_schema_is_met_by_the_full_example():
     schema = json_schema()
     keys = {key for part in [schema, *schema["$defs"].values()] for key in part.get("properties", {})}
     missing = {key for key in keys if f"{key}:" not in text}
-    assert missing <= {"house", "format", "segment", "separator", "answers"}
+    assert missing <= {"house", "format", "segment", "separator", "answers", "sha256", "reader memory", "reader time"}
+
+
+def test_a_table_says_what_the_table_readers_read():
+    """The keys of a table's statement are those its readers know (`max rate` is their other name for `max body rate`)."""
+    assert set(STATEMENT_KEYS) == set(statements._KEYS) - {"max rate"}
+    assert {key_of(name) for name in Table.model_fields} >= set(STATEMENT_KEYS)

@@ -277,7 +277,7 @@ class _Check:
                 self._glob(root, steps, path)
                 continue
             target = root / path
-            if not target.is_file():
+            if not target.is_file() and not (target / "metadata.yaml").is_file():  # a bag is a folder
                 self.note("path-missing", steps, path=path, hint=_like(root, path))
             elif not target.resolve().is_relative_to(root.resolve()):
                 self.note("path-leaves", steps, path=path, why="a link leads out of it")

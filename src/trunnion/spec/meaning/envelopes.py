@@ -28,7 +28,7 @@ _HALF_TURN = math.pi * (1.0 + 1e-12)
 STATEMENT_KEYS = (
     "table", "columns", "format", "scalar", "order", "convention", "reference", "body", "maps", "between samples",
     "max body rate", "attitude error", "max gap", "accept damaged", "topic", "instance", "segment", "separator",
-    "norm tolerance", "answers", "source",
+    "norm tolerance", "answers", "source", "sha256", "reader memory", "reader time",
 )  # fmt: skip
 
 

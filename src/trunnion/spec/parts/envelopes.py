@@ -15,6 +15,7 @@ from trunnion.spec.values import (
     Angle,
     AngleRange,
     Count,
+    DataSize,
     Direction,
     Duration,
     Name,
@@ -143,6 +144,9 @@ class _Statement(_Envelope):
     segment: Count | None = None
     separator: Name | None = None
     norm_tolerance: Real | None = None
+    sha256: Text | None = None
+    reader_memory: DataSize | None = None
+    reader_time: Duration | None = None
     answers: dict[str, Text] | None = None
 
 
