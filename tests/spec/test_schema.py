@@ -57,6 +57,6 @@ def test_every_key_of_the_schema_is_met_by_the_full_example():
 
 
 def test_a_table_says_what_the_table_readers_read():
-    """The keys of a table's statement are those its readers know (`max rate` is their other name for `max body rate`)."""
+    """A table's statement has the keys its readers know (`max rate` is their other name for `max body rate`)."""
     assert set(STATEMENT_KEYS) == set(statements._KEYS) - {"max rate"}
     assert {key_of(name) for name in Table.model_fields} >= set(STATEMENT_KEYS)

@@ -16,6 +16,7 @@ from trunnion.calculations.digest import sha256
 from trunnion.calculations.store import held_name
 from trunnion.calculations.templates import Template
 from trunnion.errors import Fault, Place, SpecError, TemplateError, TrunnionError
+from trunnion.spec.model import NAMED_SECTIONS
 
 ALL = "all"
 
@@ -188,14 +189,8 @@ def _parts(section: str) -> Callable[[_Reader, Any], Any]:
 
 
 _RESOLVERS: dict[str, Callable[[_Reader, Any], Any]] = {
-    "convention": _part("conventions"),
-    "conventions": _parts("conventions"),
-    "envelope": _part("envelopes"),
-    "envelopes": _parts("envelopes"),
-    "mount": _part("mounts"),
-    "mounts": _parts("mounts"),
-    "frame": _part("frames"),
-    "frames": _parts("frames"),
+    **{singular: _part(section) for section, singular in NAMED_SECTIONS.items()},
+    **{section: _parts(section) for section in NAMED_SECTIONS},
 }
 _FILE_KEYS = ("table", "file")
 _FILES_KEY = "files"
