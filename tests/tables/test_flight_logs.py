@@ -77,7 +77,7 @@ def message_borders(whole: bytes) -> set[int]:
 
 
 def test_a_cut_exactly_between_messages_shows_only_against_a_stated_digest(log_statement, log, whole):
-    """The format has no closing record, so the limit of what can be seen is said in a note, and a digest closes it."""
+    """The format has no closing record, so what can't be seen is said in a note, and a digest closes the gap."""
     border = sorted(message_borders(whole))[-5]
     digest = read_table(log_statement(), log.parent).sha256
     log.write_bytes(whole[:border])
@@ -154,8 +154,46 @@ def test_a_topic_whose_format_nests_itself_is_refused(log, log_writer, log_messa
     assert "nests without end" in str(trouble)
 
 
+@pytest.mark.parametrize("filler", [b"D", b"\0", b"\x01\0A", b"F\0F"])
+def test_millions_of_bytes_that_are_no_message_end_in_one_report(log, whole, filler):
+    log.write_bytes(whole + filler * ((4 << 20) // len(filler)))
+    troubles = examine(log).troubles()
+    assert troubles
+    assert {trouble.kind for trouble in troubles} == {"damaged log"}
+
+
+def test_definitions_that_multiply_are_refused(log, log_writer, log_message, turns):
+    """Sixty short formats of 20,000 fields each would make over a million fields."""
+    extra = b"".join(
+        log_message("F", f"wide{place}:uint64_t timestamp;uint8_t[19990] x;".encode())
+        + log_message("A", struct.pack("<BH", 0, 100 + place) + f"wide{place}".encode())
+        for place in range(60)
+    )
+    log.write_bytes(log_writer(turns, extra=extra))
+    assert any("fields in all" in str(trouble) for trouble in examine(log).troubles())
+
+
 def test_zeroed_quaternions_between_whole_messages_are_refused_by_row(log_statement, log, whole):
     start = whole.index(struct.pack("<HQ", 0, 5_000_000 + 100 * 10_000)) + 10
     log.write_bytes(whole[:start] + bytes(16) + whole[start + 16 :])
     with pytest.raises(TableError, match="row 101: the quaternion's length is off 1"):
         read_table(log_statement(), log.parent)
+
+
+def test_a_cut_inside_a_round_of_the_logger_is_a_finding(log_statement, log, log_writer, turns):
+    """Without the sparse topics every round ends with the rates; a log that ends with the attitude is doubtful."""
+    whole = log_writer(turns)
+    borders = sorted(message_borders(whole))
+    rounds = b"".join(
+        whole[start:end]
+        for start, end in zip(borders, [*borders[1:], len(whole)], strict=True)
+        if whole[start + 2 : start + 3] != b"D" or whole[start + 3] in (0, 1)
+    )
+    log.write_bytes(whole[:16] + rounds)
+    assert read_table(log_statement(), log.parent).findings == ()
+    last = max(message_borders(log.read_bytes()))
+    log.write_bytes(log.read_bytes()[:last])
+    (doubt,) = read_table(log_statement(), log.parent).findings
+    assert "399 of 399 rounds of its logger end with topic 'body_rates', the last one with 'vehicle_attitude'" in str(
+        doubt
+    )

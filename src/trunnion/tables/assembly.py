@@ -45,7 +45,8 @@ def assemble(
     late, time_troubles = _check_times_after(times, clock_step, before.time)
     troubles = [_renumber(trouble, rows) for trouble in (*converted.troubles, *time_troubles)]
     damage = [*columns.damage, *troubles]
-    refuse_damage(damage, statement, path, columns)
+    if damage:
+        refuse_damage([*damage, *columns.findings], statement, path, columns)
     bad = converted.bad | late
     if np.all(bad):
         raise TableError([Fault("no row of the file can be used", "check columns and units", Place(path))])

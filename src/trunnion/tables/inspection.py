@@ -173,8 +173,10 @@ def _floats(arrays: dict[str, np.ndarray]) -> dict[str, np.ndarray]:
 
 def _inspect_ulog(report: Inspection, limits: Limits) -> None:
     health = examine(report.path)
-    report.troubles += [str(trouble) for trouble in health.troubles()]
-    report.remarks.append(f"{sum(health.messages.values())} messages; a log cut exactly between two looks whole")
+    report.troubles += [str(trouble) for trouble in (*health.troubles(), *health.doubts())]
+    report.remarks.append(
+        f"{sum(health.messages.values())} messages; a log cut exactly between two rounds of its logger looks whole"
+    )
     held = {series.topic.number: bytearray() for series in health.series.values() if series.count}
     words = Dictionary()
     with report.path.open("rb", buffering=1 << 20) as handle:

@@ -5,6 +5,7 @@ Only the attitude messages are decoded, from the published message set `common`;
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass, field
 from pathlib import Path
 
@@ -21,6 +22,7 @@ from trunnion.tables.table import AttitudeTable
 
 _STAMP = 8
 _V1, _V2 = 0xFE, 0xFD
+_MARK = re.compile(rb"[\xfd\xfe]")
 _SIGNED = 1
 _SIGNATURE = 13
 #: Resynchronizing takes only stamps within this of the one before (us): ten years.
@@ -149,9 +151,8 @@ def _packet_end(data: bytes, offset: int) -> int | None:
 
 def _resync(data: bytes, start: int, last: int) -> int:
     """The next offset from which two packets follow each other, or the end."""
-    for offset in range(start, len(data) - _STAMP):
-        if data[offset + _STAMP] not in (_V1, _V2):
-            continue
+    for mark in _MARK.finditer(data, start + _STAMP):
+        offset = mark.start() - _STAMP
         stamp = int.from_bytes(data[offset : offset + _STAMP], "big")
         end = _packet_end(data, offset) if abs(stamp - last) <= _NEAR_US else None
         if end is not None and (end == len(data) or _packet_end(data, end) is not None):

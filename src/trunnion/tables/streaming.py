@@ -164,7 +164,8 @@ def _parquet_parts(statement: TableStatement, path: Path, rows: int, limits: Lim
 def _log_parts(statement: TableStatement, path: Path, rows: int, limits: Limits) -> Iterator[Columns]:
     """Samples of one topic from our own walk (no library), after the whole log was examined."""
     health, series, names = open_log(statement, path, keep=None)
-    refuse_damage(health.troubles(), statement, path)
+    if damage := health.troubles():
+        refuse_damage([*damage, *health.doubts()], statement, path)
     return _regrouped(_samples(path, health.size, list(health.appended), series, names), rows)
 
 

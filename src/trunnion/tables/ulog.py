@@ -33,6 +33,7 @@ def read_ulog_table(statement: TableStatement, path: Path, limits: Limits) -> At
     damage += _disagreements(returned, series) + _gap_damage(series, statement)
     columns = columns_of(returned, len(names))
     columns.damage = damage
+    columns.findings = health.doubts()
     columns.notes = [_summary(health, series)]
     return assemble(columns, statement, path, seal.sha256)
 
@@ -45,7 +46,7 @@ def open_log(statement: TableStatement, path: Path, keep: str | None) -> tuple[H
     health = examine(path, keep)
     damage = health.troubles()
     if any(trouble.kind == "damaged log" for trouble in damage):
-        refuse_damage(damage, statement, path)
+        refuse_damage([*damage, *health.doubts()], statement, path)
     require_answers("ulog", statement, {}, path)
     series = require_topic(health, statement, path)
     names = wanted_columns(statement)
@@ -101,5 +102,5 @@ def _summary(health: Health, series: Series) -> str:
     total = sum(health.messages.values())
     return (
         f"{series.count} samples of '{series.label}' among {total} messages in {health.size} bytes; "
-        "the format has no closing record, so a log cut exactly between two messages can't be told from a whole one"
+        "the format has no closing record, so a log cut exactly between two rounds of its logger looks whole"
     )

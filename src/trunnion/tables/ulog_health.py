@@ -1,7 +1,8 @@
-"""Is a ULog file whole? Every message walked to the last byte, every content checked against the log's own definitions.
+"""Is a ULog file whole? Every message walked to the last byte, every content checked against the log's definitions.
 
-What can't be seen from the file alone: a log cut exactly between two messages (the format has no closing record), and
-changed bytes inside numbers that stay plausible.
+A logger writes in rounds, topics in rising order of their numbers. Where nearly all rounds end with one topic, a last
+round that does not is a doubt (a finding, not damage). What can't be seen from the file alone: a log cut exactly
+between two rounds (the format has no closing record), and changed bytes inside numbers that stay plausible.
 """
 
 from __future__ import annotations
@@ -18,6 +19,8 @@ from trunnion.tables.ulog_messages import HEADER_SIZE, MAGIC, SYNC, Break, Dicti
 from trunnion.units import shown
 
 _ZERO_RUN = bytes(32)  # this many zero bytes inside a text are no text
+#: A last round raises a doubt only when there were this many rounds and this part of them ended alike.
+_ROUNDS_NEEDED, _ROUNDS_ALIKE = 50, 0.9
 _UNKNOWN_INCOMPATIBLE = 0xFE  # of the first flag byte; bit 0 (appended data) is known
 
 
@@ -49,6 +52,14 @@ class Health:
     dropouts: list[int] = field(default_factory=list)
     appended: list[int] = field(default_factory=list)
     keep: str | None = None
+    round_ends: Counter[int] = field(default_factory=Counter)
+    last_number: int = -1
+
+    def count_round(self, number: int) -> None:
+        """Take one sample's message number: one not above that ahead of it begins a new round."""
+        if number <= self.last_number:
+            self.round_ends[self.last_number] += 1
+        self.last_number = number
 
     def note_content(self, reason: str, offset: int) -> None:
         """Remember a message whose content contradicts the log's own definitions."""
@@ -100,6 +111,18 @@ class Health:
                 text = f"topic '{series.label}': {series.zeros} of {series.count} time stamps are zero"
                 found.append(Trouble("damaged log", text, series.zeros))
         return found
+
+    def doubts(self) -> list[Trouble]:
+        """What may speak against the log but need not: a last round that ends otherwise than most others."""
+        rounds = sum(self.round_ends.values())
+        if rounds < _ROUNDS_NEEDED or self.appended:
+            return []
+        usual, count = self.round_ends.most_common(1)[0]
+        if self.last_number == usual or count < _ROUNDS_ALIKE * rounds:
+            return []
+        usual_name, last_name = (self.series[number].label for number in (usual, self.last_number))
+        text = f"the log may be cut between two messages: {count} of {rounds} rounds of its logger end with topic "
+        return [Trouble("doubtful end", f"{text}'{usual_name}', the last one with '{last_name}'", 1)]
 
 
 def _bytes_listed(offsets: list[int]) -> str:
@@ -173,6 +196,7 @@ def _take_data(message: Message, words: Dictionary, health: Health) -> None:
         return
     series = health.series[number]
     series.count += 1
+    health.count_round(number)
     fields = topic.dtype.fields
     if fields and "timestamp" in fields:
         kind, start = fields["timestamp"][:2]

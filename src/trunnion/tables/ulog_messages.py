@@ -19,6 +19,8 @@ SYNC = b"\x2f\x73\x13\x20\x25\x0c\xbb\x12"
 HEADER_SIZE = 16
 _HEAD = struct.Struct("<HB")
 _KNOWN = frozenset(b"BFIMPQARDLCSO")
+_KNOWN_MARK = re.compile(rb"[BFIMPQARDLCSO]")
+_MAX_TRIED = 2_000_000
 _CHAIN = 5  # messages in a row that must fit before a walk takes up again after a break
 _SCALARS = {
     "int8_t": "i1",
@@ -35,7 +37,8 @@ _SCALARS = {
     "char": "i1",
 }
 _FIELD = re.compile(r"([A-Za-z_0-9]+)(?:\[(\d{1,5})\])? ([A-Za-z_0-9]+)")
-_MAX_FIELDS = 20_000
+_MAX_FIELDS = 20_000  # of one topic
+_MAX_FIELDS_IN_ALL = 1_000_000  # of all formats that are subscribed to
 
 
 @dataclass(frozen=True)
@@ -73,7 +76,8 @@ class Dictionary:
 
     formats: dict[str, list[tuple[str, int, str]]] = field(default_factory=dict)
     topics: dict[int, Topic] = field(default_factory=dict)
-    removed: set[int] = field(default_factory=set)
+    layouts: dict[str, tuple[np.dtype, int]] = field(default_factory=dict)
+    fields_in_all: int = 0
 
     def learn(self, message: Message) -> str | None:
         """Take in a format or subscription message; returns what is wrong with it, if anything."""
@@ -96,7 +100,9 @@ class Dictionary:
             fields.append((match[1], int(match[2] or 0), match[3]))
         if not name or not fields:
             raise ValueError("a format without name or fields")
-        self.formats[name] = fields
+        if self.formats.get(name) != fields:
+            self.formats[name] = fields
+            self.layouts.clear()
 
     def _learn_topic(self, payload: bytes) -> None:
         instance, number = struct.unpack_from("<BH", payload)
@@ -106,11 +112,20 @@ class Dictionary:
         known = self.topics.get(number)
         if known is not None and known.name != name:
             raise ValueError(f"message id {number} is given to two topics")
+        if name not in self.layouts:
+            self.layouts[name] = self._layout(name)
+        self.topics[number] = Topic(number, name, instance, *self.layouts[name])
+
+    def _layout(self, name: str) -> tuple[np.dtype, int]:
+        """The packed type of a topic without its trailing padding, and the size with it."""
         flat = self._flatten(name, "", 0)
+        self.fields_in_all += len(flat)
+        if self.fields_in_all > _MAX_FIELDS_IN_ALL:
+            raise ValueError(f"the log's topics have more than {_MAX_FIELDS_IN_ALL} fields in all")
         padded = sum(np.dtype(code).itemsize for _, code in flat)
         while flat and flat[-1][0].startswith("_padding"):
             flat.pop()
-        self.topics[number] = Topic(number, name, instance, np.dtype(flat), padded)
+        return np.dtype(flat), padded
 
     def _flatten(self, name: str, prefix: str, depth: int) -> list[tuple[str, str]]:
         if depth > 8:
@@ -171,16 +186,22 @@ def _bad_head(length: int, kind: int) -> str | None:
 
 
 def _find_chain(handle: BinaryIO, start: int, end: int, words: Dictionary) -> int:
-    """The first offset from `start` at which several messages in a row make sense, or `end`."""
-    window, keep = 1 << 16, 1 << 14
+    """The first offset from `start` at which several messages in a row make sense, or `end`.
+
+    After too many places that looked like a message and were none the search is given up: the rest is called lost.
+    """
+    window, keep, tried = 1 << 16, 1 << 14, 0
     offset = start
     while offset < end:
         handle.seek(offset)
         block = handle.read(window)
         last = len(block) if offset + len(block) >= end else max(1, len(block) - keep)
-        for place in range(last):
-            if block[place + 2 : place + 3] and block[place + 2] in _KNOWN and _is_chain(block, place, words):
-                return offset + place
+        for mark in _KNOWN_MARK.finditer(block, 2, last + 2):
+            tried += 1
+            if _is_chain(block, mark.start() - 2, words):
+                return offset + mark.start() - 2
+        if tried > _MAX_TRIED:
+            return end
         offset += last
     return end
 
