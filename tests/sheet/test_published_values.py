@@ -1,8 +1,13 @@
 """Each template's numbers against something published, through the very calls its cells make.
 
-Here stand the published check of envelope-sweep, the published check of convention-derivation, the published check of
-sensor-mount-check, the published check of convention-crosswalk, the
-published check of zero-attitude and the published check of onboard-threshold.
+* published check of envelope-sweep
+* published check of convention-derivation
+* published check of sensor-mount-check
+* published check of convention-crosswalk
+* published check of zero-attitude
+* published check of onboard-threshold
+* published check of switched-conventions
+* published check of direction-clearance
 """
 
 from __future__ import annotations
@@ -14,11 +19,13 @@ import numpy as np
 import pytest
 
 from trunnion.errors import CalculationError
+from trunnion.sheet.clearance import DirectionClearance
 from trunnion.sheet.crosswalk import ConventionCrosswalk
 from trunnion.sheet.derivation import ConventionDerivation
 from trunnion.sheet.mount import MountCheck
 from trunnion.sheet.onboard import OnboardThreshold
 from trunnion.sheet.sweep import EnvelopeSweep
+from trunnion.sheet.switching import SwitchedConventions
 from trunnion.sheet.zero import ZeroAttitude
 
 LOCAL = {"name": "local", "axes": ["north", "east", "down"], "north": "true", "carried": "along"}
@@ -208,3 +215,79 @@ def test_words_that_are_no_precision_are_refused() -> None:
         OnboardThreshold(
             convention=stated("ordinary", "3-2-1"), precision="single", extraction="residual form", accuracy="1 deg"
         )
+
+
+ANYWHERE = {
+    "name": "anywhere",
+    "cone": {"axis": "forward", "around": "north", "half angle": "180 deg", "roll": "any"},
+    "reference": LOCAL,
+    "body": BODY,
+}
+
+
+def test_published_check_of_switched_conventions(shown: list) -> None:
+    # Two sequences that share their first axis and differ in the last (3-2-1 with 3-1-2) can both be no nearer to
+    # lock than two perpendicular lines to a third: 45 deg. Three perpendicular ones leave arccos(1/sqrt 3), that is
+    # 54.7356 deg, the angle between a cube's diagonal and its edges (any text of solid geometry).
+    conventions = {
+        "nose last": stated("nose last", "3-2-1"),
+        "wing last": stated("wing last", "3-1-2"),
+        "belly last": stated("belly last", "3-1-3"),
+    }
+    work = SwitchedConventions(
+        conventions=conventions,
+        envelopes={"anywhere": ANYWHERE},
+        threshold="20 deg",
+        max_body_rate="100 deg/s",
+        attitude_error="0 deg",
+    )
+    work.show_sets()
+    found = results(shown, "switched lock margin")
+    pair = found["nose last with wing last", None]
+    assert pair["lo"] <= 45.0 <= pair["hi"]
+    assert pair["hi"] - pair["lo"] < 0.11
+    triple = found["nose last with wing last with belly last", None]
+    assert triple["lo"] <= 54.735610317 <= triple["hi"]
+    work.show_rule()
+    (dwell,) = [
+        item
+        for item in shown
+        if item["kind"] == "result" and item["of"] == "nose last with wing last" and item["unit"] == "s"
+    ]
+    assert dwell["lo"] == pytest.approx((45.0 - 20.0) / 100.0, abs=2e-3)
+    work.show_checks()
+    assert all(item["agrees"] for item in shown if item["kind"] == "check")
+
+
+def test_published_check_of_direction_clearance(shown: list) -> None:
+    # zivid/zivid-ros 108 (2024): the printed camera-to-base matrix holds the optical axis 3.3538 deg from straight
+    # down. It is printed with seven digits, so the nearest rotation is used.
+    printed = np.array(
+        [
+            [-0.003973591, 0.9993435, 0.03601083],
+            [0.9989207, 0.005633254, -0.04610426],
+            [-0.04627685, 0.03578877, -0.9982873],
+        ]
+    )
+    U, _, Vt = np.linalg.svd(printed)
+    camera = (U @ Vt).tolist()
+    base = {"name": "base", "axes": ["north", "west", "up"], "north": "true", "carried": "fixed at a point"}
+    optics = {"name": "optics", "axes": ["right", "down", "forward"]}
+    work = DirectionClearance(
+        directions={"optical axis": {"body": "forward", "reference": "down"}},
+        reference=base,
+        body=optics,
+        envelopes={
+            "hand": {
+                "name": "hand",
+                "poses": [{"matrix": camera, "maps": "optics to base"}],
+                "reference": base,
+                "body": optics,
+            }
+        },
+    )
+    work.show_clearances()
+    found = results(shown, "least direction clearance")["optical axis", "hand"]
+    assert found["lo"] == pytest.approx(3.3538, abs=2e-4)
+    work.show_checks()
+    assert all(item["agrees"] for item in shown if item["kind"] == "check")

@@ -30,6 +30,13 @@ def input_path(name: str) -> Path:
     )
 
 
+def frame(plain: Mapping[str, Any]) -> Any:
+    """The frame an injected parameter describes."""
+    from trunnion.spec.build import frame_from_plain
+
+    return frame_from_plain(plain)
+
+
 def convention(plain: Mapping[str, Any]) -> Any:
     """The convention an injected parameter describes."""
     from trunnion.spec.build import convention_from_plain

@@ -10,25 +10,43 @@ import numpy as np
 from numpy.typing import NDArray
 
 from trunnion.attitude.conventions import Convention
+from trunnion.attitude.demand import margin_for_rate
+from trunnion.attitude.noise import linear_noise
 from trunnion.attitude.sequences import Sequence
+from trunnion.envelope.demand import peak_demand
 from trunnion.envelope.margins import entry_margin_table, lock_margin
 from trunnion.envelope.regions import Region, Track, Union
 from trunnion.envelope.results import AngleRange, Extreme
+from trunnion.envelope.shares import shares_near_lock
+from trunnion.envelope.subdivision import self_check
+from trunnion.errors import TrunnionError
 from trunnion.figures import charts, drawings
 from trunnion.sheet import display, parameters, region_checks
 from trunnion.sheet.describe import angles_text, convention_rows, region_rows
 from trunnion.sheet.maps import angle_map, body_track, histogram
-from trunnion.sheet.rounding import interval_text
+from trunnion.sheet.rounding import ceiling_text, floor_text, interval_text
 from trunnion.units import parse_quantity
 
 Array = NDArray[np.float64]
+
+_NEAR_LOCK_DEG = (2.0, 5.0, 10.0)
 
 
 class EnvelopeSweep:
     """The conventions and regions of one sweep; each `show_…` displays one part and records what it finds."""
 
-    def __init__(self, *, conventions: Mapping[str, Any], envelopes: Mapping[str, Any]) -> None:
+    def __init__(
+        self,
+        *,
+        conventions: Mapping[str, Any],
+        envelopes: Mapping[str, Any],
+        angle_rate_limit: str = "",
+        attitude_noise: str = "",
+        self_check: bool = False,
+    ) -> None:
         self._plain = {"conventions": dict(conventions), "envelopes": dict(envelopes)}
+        self._stated = {"angle rate limit": angle_rate_limit, "attitude noise": attitude_noise}
+        self._self_check = self_check
         self.conventions: dict[str, Convention] = {
             name: parameters.convention(plain) for name, plain in conventions.items()
         }
@@ -48,6 +66,11 @@ class EnvelopeSweep:
         display.inputs(
             [row for name, plain in self._plain["conventions"].items() for row in convention_rows(name, plain)]
             + [row for name, plain in self._plain["envelopes"].items() for row in region_rows(name, plain)]
+            + [
+                {"input": name, "stated": text, "source": "this workbook"}
+                for name, text in self._stated.items()
+                if text
+            ]
         )
 
     def show_assumptions(self) -> None:
@@ -167,23 +190,103 @@ class EnvelopeSweep:
                 alt=f"Sphere with the path of the carried axis of {key} and caps of ten degrees about the lock line.",
             )
 
-    def show_rates(self) -> None:
-        """The largest outer angle rate a stated body rate can demand, where the margin is proven."""
+    def show_shares(self) -> None:
+        """Shares of each region, or of the time of each table, within given distances of lock."""
         rows = []
-        for name in self.conventions:
-            for over, plain in self._plain["envelopes"].items():
-                rate = plain.get("max body rate")
-                if rate is not None:
-                    rows.append(self._rate_row(name, over, parse_quantity(rate, kind="angular rate").value))
+        for name, convention in self.conventions.items():
+            for over, region in self.regions.items():
+                shares = shares_near_lock(region, convention, np.radians(_NEAR_LOCK_DEG))
+                display.record(
+                    quantity=f"share within {_NEAR_LOCK_DEG[-1]:g} deg of lock",
+                    of=name,
+                    over=over,
+                    lo=100.0 * shares[-1].lo,
+                    hi=100.0 * shares[-1].hi,
+                    unit="%",
+                    basis=shares[-1].basis,
+                )
+                rows.append([name, over, *(_share_text(share.lo, share.hi) for share in shares), shares[0].rule])
+        display.table(
+            "tbl:shares",
+            ["convention", "region", *(f"within {distance:g}°" for distance in _NEAR_LOCK_DEG), "share"],
+            rows,
+            caption="Share within given distances of lock",
+            align="ll" + "r" * len(_NEAR_LOCK_DEG) + "l",
+        )
+
+    def show_rates(self) -> None:
+        """What the stated body rates and accelerations can demand of the outer angles, and the margin a limit needs."""
+        rows = [row for name in self.conventions for over in self.regions if (row := self._demand_row(name, over))]
         if not rows:
             display.statement("rates", "No region states a body rate, so no angle rates are worked out.")
             return
         display.table(
             "tbl:rates",
-            ["convention", "region", "body rate", "amplification", "largest outer angle rate"],
+            [
+                "convention",
+                "region",
+                "body rate",
+                "outer angle rate at most",
+                "body acceleration",
+                "outer angle acceleration at most",
+            ],
             rows,
-            caption="Outer angle rates the stated body rates can demand",
-            align="llrrr",
+            caption="What the stated body rates and accelerations can demand of the outer angles",
+            align="llrrrr",
+        )
+        limit = self._stated["angle rate limit"]
+        if limit:
+            display.statement("rate-limit", [self._limit_line(over, limit) for over in self.regions])
+
+    def show_noise(self) -> None:
+        """How attitude noise grows into each angle at the least margin, and where the linear law holds."""
+        text = self._stated["attitude noise"]
+        if not text:
+            display.statement("noise", "No attitude noise is stated, so its growth is not worked out.")
+            return
+        sigma = parse_quantity(text, kind="angle").value
+        rows = []
+        for (name, over), found in self.margins.items():
+            if found.least.lo <= 0.0:
+                rows.append([name, over, "unbounded", "", "no"])
+                continue
+            noise = linear_noise(found.least.lo, sigma)
+            holds = "yes" if bool(noise.holds) else "no: Rice and projected-normal laws apply"
+            rows.append([name, over, f"{np.degrees(noise.outer):.4f}°", f"{np.degrees(noise.combination):.4f}°", holds])
+        display.table(
+            "tbl:noise",
+            ["convention", "region", "outer angles", "their known combination", "linear law holds"],
+            rows,
+            caption=f"Standard deviation of the angles at the least margin for {text} of attitude noise an axis",
+            align="llrrl",
+        )
+
+    def show_self_check(self) -> None:
+        """The least margins bracketed by subdivision, which knows nothing of the closed forms, if asked for."""
+        if not self._self_check:
+            display.statement("self-check", "The check by subdivision was not asked for.")
+            return
+        rows = []
+        for (name, over), found in self.margins.items():
+            bracket = self_check(self.regions[over], self.conventions[name])
+            display.check(
+                f"check:{name}:{over}:subdivision",
+                f"least lock margin of {name} over {over}, bracketed by subdivision",
+                ours=float(np.degrees(found.least.lo)),
+                theirs=float(np.degrees(bracket.lo)),
+                difference=float(np.degrees(max(0.0, bracket.lo - found.least.hi, found.least.lo - bracket.hi))),
+                tolerance=1e-9,
+                unit="deg",
+                library="second-order subdivision",
+            )
+            low, high = (float(np.degrees(end)) for end in (bracket.lo, bracket.hi))
+            rows.append([name, over, f"{floor_text(low, 4)}° … {ceiling_text(high, 4)}°", f"{bracket.cells:,}"])
+        display.table(
+            "tbl:self-check",
+            ["convention", "region", "bracket", "cells looked at"],
+            rows,
+            caption="Least margins bracketed by subdivision",
+            align="llrr",
         )
 
     def show_checks(self) -> None:
@@ -250,22 +353,46 @@ class EnvelopeSweep:
         angles = angles_text(self.conventions[name], witness.matrix)
         return [name, over, f"{np.degrees(witness.value):.4f}°", angles, f"{witness.where}{when}"]
 
-    def _rate_row(self, name: str, over: str, rate: float) -> list[str]:
-        least = self.margins[name, over].least.lo
-        body = f"{np.degrees(rate):g} deg/s"
-        if least <= 0.0:
-            return [name, over, body, "unbounded", "unbounded: lock is within the region"]
-        gain = 1.0 / np.sin(least)
-        display.record(
-            quantity="largest angle rate",
-            of=name,
-            over=over,
-            lo=None,
-            hi=float(np.degrees(rate * gain)),
-            unit="deg/s",
-            basis=self.margins[name, over].least.basis,
-        )
-        return [name, over, body, f"{gain:.3f}", f"{np.degrees(rate * gain):.1f} deg/s"]
+    def _demand_row(self, name: str, over: str) -> list[str]:
+        plain = self._plain["envelopes"][over]
+        stated, faster = plain.get("max body rate"), plain.get("max angular acceleration")
+        if stated is None:
+            return []
+        rate = parse_quantity(stated, kind="angular rate").value
+        acceleration = 0.0 if faster is None else parse_quantity(faster, kind="angular acceleration").value
+        demand = peak_demand(self.regions[over], self.conventions[name], rate, acceleration)
+        row = [name, over, stated]
+        if not np.isfinite(demand.outer_rate[1]):
+            return [*row, "unbounded: lock is within the region", faster or "not stated", "unbounded"]
+        self._record_demand("largest angle rate", name, over, demand.outer_rate, "deg/s", demand.basis.value)
+        row += [f"{ceiling_text(float(np.degrees(demand.outer_rate[1])), 1)} deg/s", faster or "not stated"]
+        if faster is None:
+            return [*row, ""]
+        found = demand.outer_acceleration
+        self._record_demand("largest angle acceleration", name, over, found, "deg/s^2", demand.basis.value)
+        return [*row, f"{ceiling_text(float(np.degrees(found[1])), 1)} deg/s²"]
+
+    def _record_demand(
+        self, quantity: str, name: str, over: str, ends: tuple[float, float], unit: str, basis: str
+    ) -> None:
+        lo, hi = (float(np.degrees(end)) for end in ends)
+        display.record(quantity=quantity, of=name, over=over, lo=min(lo, hi), hi=hi, unit=unit, basis=basis)
+
+    def _limit_line(self, over: str, limit: str) -> str:
+        stated = self._plain["envelopes"][over].get("max body rate")
+        if stated is None:
+            return f"{over}: no body rate is stated."
+        try:
+            needed = margin_for_rate(parse_quantity(stated, kind="angular rate").value, parse_quantity(limit).value)
+        except TrunnionError as err:
+            return f"{over}: {err.fault.cause}."
+        margin = ceiling_text(float(np.degrees(needed)))
+        return f"{over}: a limit of {limit} on the outer angle rates needs a margin of {margin}°."
+
+
+def _share_text(low: float, high: float) -> str:
+    lowest, highest = f"{100 * low:.2f}", f"{100 * high:.2f}"
+    return f"{lowest} %" if lowest == highest else f"{lowest} … {highest} %"
 
 
 def _matrices(track: Track) -> Array:

@@ -228,13 +228,22 @@ class _Check:
             if len(limits) != 1:
                 place = (*steps, limits[1]) if limits else steps
                 self.note("one-limit", place, count="none" if not limits else "two")
-            self._known((*steps, "of"), requirement.of, subjects, "part or decision")
+            if not _made_of(requirement.of, subjects):
+                self._known((*steps, "of"), requirement.of, subjects, "part or decision")
             for index, name in enumerate(requirement.over or []):
                 self._known((*steps, "over", index), name, self.resolver.names("envelopes"), "envelope")
 
     def _subjects(self) -> list[str]:
+        """What a result may be of: named parts, decisions, and what calculations name in their own parameters."""
         sections = [section for section in NAMED_SECTIONS if section != "frames"]
-        return [*self._ids("decisions"), *(name for section in sections for name in self.resolver.names(section))]
+        own = [
+            str(key)
+            for calculation in self.model.calculations
+            for value in calculation.parameters.values()
+            if isinstance(value, dict)
+            for key in value
+        ]
+        return [*self._ids("decisions"), *(name for section in sections for name in self.resolver.names(section)), *own]
 
     def decisions(self) -> None:
         """What is chosen is a candidate; candidates and calculations exist."""
@@ -343,3 +352,12 @@ def _like(root: Path, path: str) -> str:
     names = sorted(p.name for p in folder.iterdir() if p.is_file()) if folder.is_dir() else []
     near = nearest(Path(path).name, names[:1000])
     return f"did you mean '{(Path(path).parent / near).as_posix()}'?" if near else "check the path and its case"
+
+
+def _made_of(name: str, subjects: list[str]) -> bool:
+    """True for `one with another` and `one to another` of known names, as results of several parts are called."""
+    for word in (" with ", " to "):
+        parts = name.split(word)
+        if len(parts) > 1 and all(part in subjects for part in parts):
+            return True
+    return False
