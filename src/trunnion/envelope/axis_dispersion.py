@@ -92,6 +92,8 @@ def axis_dispersed_clearance(
 def _bracket(region: AxisDispersion, u: Array, v: Array, which: int, tolerance: float, seconds: float) -> Extreme:
     sign = 1.0 if which in (LEAST_ANGLE, LEAST_LINE) else -1.0
     bases: list[Basis] = []
+    top = np.pi / 2 if which in (LEAST_LINE, LARGEST_LINE) else np.pi
+    end = 0.0 if sign > 0 else -top  # no angle lies beyond these
 
     def bound(cells: Cells) -> Bounds:
         spread = _spread(region, u, v, cells.centre)
@@ -99,7 +101,8 @@ def _bracket(region: AxisDispersion, u: Array, v: Array, which: int, tolerance: 
         reach = np.sqrt((cells.half**2).sum(axis=0))
         outer = spread.lo[which] if sign > 0 else -spread.hi[which]
         inner = spread.hi[which] if sign > 0 else -spread.lo[which]
-        return Bounds(outer - reach, inner.copy(), cells.centre, cells.half, cells)
+        lower = np.maximum(outer - reach, end)
+        return Bounds(lower, inner.copy(), cells.centre, cells.half, cells)
 
     corners = np.array(list(product((-1.0, 1.0), repeat=len(region.limits)))).T * region.limits[:, None]
     low = np.concatenate([-region.limits[:, None], corners], axis=1)  # the whole, and its corners as points

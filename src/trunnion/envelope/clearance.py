@@ -124,7 +124,8 @@ class _AnyTime:
         reach = np.append(self.directions.arcs, 0.0)[row] * cells.half[1]
         lo, hi = spread.lo[self.which], spread.hi[self.which]
         outer, inner = (lo, hi.copy()) if self.sign > 0 else (-hi, -lo)
-        return Bounds(outer - reach, inner, cells.centre, np.stack([np.full_like(reach, -1.0), reach]), cells)
+        lower = np.maximum(outer - reach, 0.0 if self.sign > 0 else -np.pi)  # no angle lies outside 0 … pi
+        return Bounds(lower, inner, cells.centre, np.stack([np.full_like(reach, -1.0), reach]), cells)
 
     def extreme(self, found: Bracket) -> Extreme:
         """The bracket with the attitude and the time of the direction at which it is reached."""
@@ -201,7 +202,8 @@ class _SameTime:
             half = np.sqrt(np.maximum(3.0 - np.trace(turn, axis1=1, axis2=2), 0.0)) * 0.5
             reach = np.maximum(reach, 2.0 * np.arcsin(np.minimum(half, 1.0)) + angle_between(u.T, u_end.T))
         reach = np.where(cells.half[0] > 0.0, reach + 2e-8, 0.0)  # the trace is blind to turns below 1.5e-8 rad
-        return Bounds(value - reach, value, cells.centre, reach[None], cells)
+        lower = np.maximum(value - reach, 0.0 if sign > 0 else -np.pi)
+        return Bounds(lower, value, cells.centre, reach[None], cells)
 
     def extreme(self, found: Bracket, sign: float) -> Extreme:
         """The bracket widened by the attitude error, with the time at which it is reached."""
