@@ -85,9 +85,17 @@ def result(identity: str, quantity: str, of: str, over: str, lo: float, **fields
     return item("result", identity, **{**base, **fields})
 
 
-def derivation(rows: int = 12) -> dict[str, Any]:
-    """A notebook with prose, formulas, a sympy matrix, a figure, tables, checks and results."""
-    table = [[f"{10 * i} deg", f"{90 - 7 * i:.2f}", f"{i / 7:.4f}"] for i in range(rows)]
+def derivation(rows: int = 12, case: int = 0) -> dict[str, Any]:
+    """A notebook with prose, formulas, a sympy matrix, a figure, tables, checks and results; no two cases alike."""
+    table = [[f"{10 * i} deg", f"{90 - 7 * i + case:.2f}", f"{(i + case) / 7:.4f}"] for i in range(rows)]
+    body = _derivation_cells(table)
+    if case:
+        text = json.dumps(body).replace("_{32}", f"_{{32,{case}}}").replace("phi", f"phi_{{{case}}}")
+        body = json.loads(text.replace("lock margin", f"lock margin {case}").replace("three turns", f"{case} turns"))
+    return body
+
+
+def _derivation_cells(table: list[list[str]]) -> dict[str, Any]:
     return notebook(
         markdown("| | |\n|---|---|\n| number | SW |", p.SHEET_TAG),
         markdown(
@@ -297,7 +305,7 @@ def package(**changes: Any) -> p.PackageInput:
 def large(calculations: int, rows: int = 60) -> p.PackageInput:
     """A package of many calculations, for growth in time."""
     sheets = tuple(
-        p.Sheet(f"C{n:02d}", f"Margins of the wing-last convention, case {n}", "envelope-sweep", derivation(rows))
+        p.Sheet(f"C{n:02d}", f"Margins of the wing-last convention, case {n}", "envelope-sweep", derivation(rows, n))
         for n in range(1, calculations + 1)
     )
     return package(sheets=sheets)

@@ -135,7 +135,7 @@ def test_words_can_be_read_in_both_schemes(browser, address, scheme):
 def test_code_unfolds_and_folds(page):
     code = page.locator("details pre").first
     assert not code.is_visible()
-    page.locator("details summary").first.click()
+    page.locator("details:has(pre) summary").first.click()
     assert code.is_visible()
 
 

@@ -241,7 +241,9 @@ def test_signed_means_all_three_signatures(material, tmp_path):
 
 def test_every_page_state_names_open_findings_and_deviations(material):
     document, _ = compose(material.package(), House())
-    assert document.parts[0].state == "partly signed (prepared) · 1 open findings · DV-1"
+    calculation = next(part for part in document.parts if part.calculation == "C02")
+    assert calculation.state == "not signed · open findings: 1 · DV-1"
+    assert document.parts[0].state == "partly signed (prepared) · open findings: 1 · DV-1"
 
 
 def test_an_unusable_folder_is_said_and_nothing_is_left(material, tmp_path):

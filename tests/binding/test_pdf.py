@@ -141,6 +141,11 @@ def test_bookmarks_lead_to_every_part(pdf):
     assert any("C01" in title and "wing-last" in title for title in titles)
 
 
+def test_the_file_is_sound(pdf):
+    """qpdf's own check of syntax, streams and cross references finds nothing."""
+    assert pdf.check_pdf_syntax() == []
+
+
 def test_pages_are_counted(pdf, bound):
     assert bound[1].pages == len(pdf.pages)
 

@@ -180,17 +180,18 @@ def _named(names: Iterable[str], most: int = 3) -> str:
 
 
 def _checks_table(rows: list, words: Words) -> b.Table:
-    heads = ("What", "Ours", "Independent", "Difference", "Tolerance", "Route", "Agreement")
+    heads = ("What", "Ours", "Independent", "Difference", "Tolerance", "Agreement")
     body = []
     for r in rows:
         verdict = words("agrees") if r.agrees else words("DOES NOT AGREE")
         mark: b.Line = (b.Marked("emph" if r.agrees else "strong", b.line(verdict)),)
         numbers = (b.line(r.ours), b.line(r.theirs), b.line(r.difference), b.line(r.tolerance))
-        body.append((b.line(r.what), *numbers, b.line(r.library), mark))
+        route = (b.Break(), b.Marked("quiet", b.line(r.library))) if r.library else ()
+        body.append(((*b.line(r.what), *route), *numbers, mark))
     return b.Table(
         tuple(b.line(words(h)) for h in heads),
         tuple(body),
-        "lrrrrll",
+        "lrrrrl",
         caption=b.line(words("Independent check")),
         row_anchors=tuple(r.anchor for r in rows),
         row_classes=tuple("" if r.agrees else "v-fails" for r in rows),
@@ -314,7 +315,7 @@ def plain(parts: b.Line) -> str:
         elif isinstance(part, b.Marked | b.Link):
             out.append(plain(part.parts))
         elif isinstance(part, b.Break):
-            out.append(" ")
+            out.append("\n")
         elif isinstance(part, b.Badge):
             out.append(part.verdict.value)
     return "".join(out)

@@ -58,8 +58,8 @@ class _Composer:
         middle = [self.requirements(), self.decisions(), self.standing()]
         back = [self.statements(), self.changes(), *self.appendices()]
         parts = [part for part in (*front, *middle, *calculations, *back) if part is not None]
-        state = self.state()
-        parts = [replace(part, state=part.state or state) for part in parts]
+        state, standing = self.state(), self.standing_words()
+        parts = [replace(part, state=" · ".join([part.state, *standing]) if part.state else state) for part in parts]
         parts = [_stepped(resolve(part, self.registry)) for part in parts]
         return b.NeutralDocument(
             title=doc.title,
@@ -102,14 +102,17 @@ class _Composer:
 
     def state(self) -> str:
         """What the foot of every page says: signatures, open findings, deviations."""
-        parts = [signature_words(self.package.signatures, self.words)]
+        return " · ".join([signature_words(self.package.signatures, self.words), *self.standing_words()])
+
+    def standing_words(self) -> list[str]:
+        """Open findings and deviations, in the fewest words."""
+        parts = []
         findings = sum(f.state == "open" for f in self.package.findings)
         if findings:
-            parts.append(f"{findings} {self.words('open findings')}")
-        if self.package.deviations:
-            ids = [d.id for d in self.package.deviations]
-            parts.append(", ".join(ids) if len(ids) <= 3 else f"{len(ids)} × {self.words('Deviations')}")
-        return " · ".join(parts)
+            parts.append(f"{self.words('open findings')}: {findings}")
+        if ids := [d.id for d in self.package.deviations]:
+            parts.append(", ".join(ids) if len(ids) <= 3 else f"{self.words('Deviations')}: {len(ids)}")
+        return parts
 
     def link(self, evidence: Evidence) -> b.Inline:
         """A way to the evidence; to the calculation when the item is unknown or the calculation gave none."""

@@ -123,7 +123,8 @@ class _Writer:
         for title, found in (("Figures", self.figures), ("Tables", self.tables)):
             if found:
                 rows = "".join(f'<li><a href="#{anchor}">{words}</a></li>' for anchor, words in found)
-                out.append(f"<h3>{self.words(title)}</h3><ul class='list'>{rows}</ul>")
+                head = f"<summary>{self.words(title)} ({len(found)})</summary>"
+                out.append(f'<details class="lists">{head}<ul class="list">{rows}</ul></details>')
         return "".join(out)
 
     @staticmethod

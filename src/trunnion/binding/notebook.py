@@ -308,7 +308,7 @@ def _witness_words(item: Mapping[str, Any]) -> str:
             parts.append(f"t = {number_text(witness['time'])} s")
     if item.get("note"):
         parts.append(str(item["note"]))
-    return "; ".join(parts)
+    return re.sub(r"(?<![\w.])-(?=\d)", "−", "; ".join(parts))
 
 
 __all__ = ["NotebookReader", "Refuse", "clean_svg"]

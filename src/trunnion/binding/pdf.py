@@ -7,12 +7,10 @@ as typst code, and the compiler sees a folder of its own and no system fonts.
 from __future__ import annotations
 
 import datetime
-import functools
 import re
 import tempfile
 from collections import Counter
 from collections.abc import Callable
-from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -22,14 +20,24 @@ from trunnion.binding.house import PAPERS, House
 from trunnion.binding.maths import Formula
 from trunnion.binding.maths.typst_maths import quoted, typst_maths
 from trunnion.binding.package import Verdict
+from trunnion.binding.paper import (
+    TEXT_WIDTH_MM,
+    VERY_LONG_WORD,
+    breakable,
+    chopped,
+    columns_of,
+    image_size,
+    kept_whole,
+    narrowed,
+    unbroken,
+    width_in_em,
+)
 from trunnion.binding.words import Words
 from trunnion.errors import BindingError, Fault, Place
-from trunnion.glyphs import FONT_FOLDER, TEXT_FACES, visible_text
+from trunnion.glyphs import FONT_FOLDER, visible_text
 
 STANDARDS: list[Any] = ["a-3a", "ua-1"]
 LEAST_SCALE = 0.7
-TEXT_WIDTH_MM, LARGEST_HEIGHT_MM = 160.0, 190.0
-TABLE_SIZE, SMALLEST = 8.5, 6.5  # pt
 HEAD_WIDTH = TEXT_WIDTH_MM / (8.0 * 0.3528) - 1.5  # em of the head of a page, gap taken off
 _TEMPLATE = "trunnion.typ"
 _BADGES = {Verdict.MEETS: "meets", Verdict.DOES_NOT_MEET: "fails", Verdict.NOT_SHOWN: "unshown"}
@@ -147,7 +155,7 @@ class _Writer:
 
     def text(self, text: str) -> str:
         """A string literal; unseen characters made visible, very long words given places to break."""
-        return quoted(_breakable(visible_text(text, self.missing)))
+        return quoted(breakable(visible_text(text, self.missing)))
 
     def run(self, parts: list[b.Part]) -> str:
         """Parts that share pages, with the head and foot of those pages."""
@@ -155,7 +163,7 @@ class _Writer:
         known = f"{doc.number} · {w('Rev.')} {doc.revision} · {doc.date}"
         left = self.text(known)
         cover = doc.organization if first.look == "cover" else doc.title
-        right = self.text(first.calculation or _clipped(cover, HEAD_WIDTH - _em(known)))
+        right = self.text(first.calculation or _clipped(cover, HEAD_WIDTH - width_in_em(known)))
         foot, mark = self.text(first.state), self.text(doc.classification)
         sheet = f"{self.text(w('Sheet'))}, {self.text(w('of'))}"
         body = "\n".join(self.part(part, flows=index > 0) for index, part in enumerate(parts))
@@ -223,13 +231,17 @@ class _Writer:
         return f"[{self.joined(found)}]"
 
     def joined(self, found: tuple[b.Block, ...]) -> str:
-        """Blocks one after another; a statement stays with the formula or table it speaks of."""
+        """Blocks one after another; statements and short lines stay with the formula or table they speak of."""
         seen = [block for block in found if not (isinstance(block, b.Code) and block.folded)]
         out = []
         for block, after in zip(seen, [*seen, None][1:], strict=True):
-            keeps = isinstance(block, b.Callout) and isinstance(after, b.Equation | b.Figure)
-            keeps = keeps or (isinstance(block, b.Callout) and isinstance(after, b.Table) and _small(after))
-            out.append(self.callout(block, keeps=True) if keeps else self.block(block))  # type: ignore[arg-type]
+            shown = isinstance(after, b.Equation | b.Figure) or (isinstance(after, b.Table) and kept_whole(after))
+            if shown and isinstance(block, b.Callout):
+                out.append(self.callout(block, keeps=True))
+            elif shown and isinstance(block, b.Paragraph) and len(plain(block.parts)) <= 240:
+                out.append(f"#block(sticky: true)[{self.paragraph(block)}]")
+            else:
+                out.append(self.block(block))
         return "\n".join(out)
 
     def heading(self, block: b.Heading) -> str:
@@ -256,7 +268,7 @@ class _Writer:
         if block.folded:
             return ""  # stands in the appendix
         title = self.text(block.title) if block.title else "none"
-        shown = _VERY_LONG_WORD.sub(lambda m: _chopped(m.group(), 40), visible_text(block.text, self.missing))
+        shown = VERY_LONG_WORD.sub(lambda m: chopped(m.group(), 40), visible_text(block.text, self.missing))
         return f"#listing({title}, raw({quoted(shown)}, block: true))"
 
     def equation(self, block: b.Equation) -> str:
@@ -269,8 +281,9 @@ class _Writer:
         return f"#display-maths({name}, {number}, {self.alt(block.formula)}, {caption}, {where}, {body})"
 
     def table(self, block: b.Table) -> str:
-        whole = str(_small(block)).lower()
-        made = " + v(0.6em, weak: true) + ".join(self.data_table(part, whole) for part in _narrowed(block))
+        block = unbroken(block)
+        whole = str(kept_whole(block)).lower()
+        made = " + v(0.6em, weak: true) + ".join(self.data_table(part, whole) for part in narrowed(block))
         if not (block.caption or block.number):
             return f"#({made})"
         name = quoted(block.anchor) if block.anchor else "none"
@@ -280,7 +293,7 @@ class _Writer:
 
     def data_table(self, block: b.Table, whole: str) -> str:
         """The table itself, without caption; anchors of rows stand in their first cells."""
-        columns, size = _columns(block)
+        columns, size = columns_of(block)
         align = ", ".join(_SIDES[side] for side in block.align or "l" * len(block.headers))
         heads = ", ".join(self.content(cell) for cell in block.headers)
         cells = []
@@ -303,7 +316,7 @@ class _Writer:
         same = next((name for name, data in self.files.items() if data == block.data), None)
         self.files[same or path] = block.data
         alt = quoted(visible_text(block.alt))
-        made = f"image({quoted(same or path)}, alt: {alt}{_image_size(block)})"
+        made = f"image({quoted(same or path)}, alt: {alt}{image_size(block)})"
         if not block.number:
             return f"#shown-again({self.content(block.caption)}, {made})"
         name = quoted(block.anchor) if block.anchor else "none"
@@ -365,124 +378,8 @@ def _runs(parts: list[b.Part]) -> list[list[b.Part]]:
 
 def _clipped(title: str, room: float) -> str:
     """A title as far as it fits into `room` em."""
-    if _em(title) <= room:
+    if width_in_em(title) <= room:
         return title
-    while title and _em(title) > room - 1.0:
+    while title and width_in_em(title) > room - 1.0:
         title = title[:-1]
     return title.rstrip() + "…" if title else ""
-
-
-# ---- sizes -------------------------------------------------------------------------------------------------
-
-_LONG_WORD = re.compile(r"[^\s\u00a0]{14,}")
-_VERY_LONG_WORD = re.compile(r"\S{80,}")
-
-
-def _breakable(text: str) -> str:
-    """Long words get invisible places to break: after their own stops, and in runs that have none."""
-
-    def split(match: re.Match[str]) -> str:
-        word = re.sub(r"(?<=[./_:;,])(?=[^\s./_:;,\d])", "\u200b", match.group())
-        return re.sub(r"[^\u200b]{23,}", lambda m: _chopped(m.group(), 12), word)
-
-    return _LONG_WORD.sub(split, text)
-
-
-def _chopped(word: str, every: int) -> str:
-    return "\u200b".join(word[i : i + every] for i in range(0, len(word), every))
-
-
-def _columns(block: b.Table) -> tuple[str, float]:
-    """Column widths and letter size: as wide as needed when all fits, else shares that hold every word whole."""
-    if block.widths:
-        return "".join(f"{width}fr, " for width in block.widths), TABLE_SIZE
-    longest, words = _measured(block)
-    per_em = TABLE_SIZE * 0.3528
-    room = (TEXT_WIDTH_MM - 2.9 * len(longest)) / per_em  # in em, cell insets taken off
-    if sum(longest) <= room:
-        return "auto, " * len(longest), TABLE_SIZE
-    needed = sum(words)
-    size = TABLE_SIZE if needed <= room else max(SMALLEST, round(TABLE_SIZE * room / needed, 1))
-    spare = max(0.0, room - needed)
-    wishes = [min(long, 40.0) - min(word, 40.0) + 0.01 for long, word in zip(longest, words, strict=True)]
-    gap = 2.9 / per_em
-    shares = [word + gap + spare * wish / sum(wishes) for word, wish in zip(words, wishes, strict=True)]
-    return "".join(f"{share:.3f}fr, " for share in shares), size
-
-
-def _narrowed(block: b.Table) -> list[b.Table]:
-    """A table too wide for legible letters, as several below each other, each with the first column again."""
-    words = _measured(block)[1]
-    count = len(words)
-    gap = 2.9 / (SMALLEST * 0.3528)
-    room = TEXT_WIDTH_MM / (SMALLEST * 0.3528)
-    if block.widths or count < 3 or sum(words) + gap * count <= room:
-        return [block]
-    widest = max(words[1:]) + gap
-    each = max(1, int((room - words[0] - gap) / widest))
-    each = -(-(count - 1) // -(-(count - 1) // each))  # as many parts as that needs, of like size
-    groups = [list(range(start, min(start + each, count))) for start in range(1, count, each)]
-    return [_with_columns(block, [0, *group], first=index == 0) for index, group in enumerate(groups)]
-
-
-def _with_columns(block: b.Table, columns: list[int], *, first: bool) -> b.Table:
-    return replace(
-        block,
-        headers=tuple(block.headers[c] for c in columns),
-        rows=tuple(tuple(row[c] for c in columns) for row in block.rows),
-        align="".join(block.align[c] for c in columns) if block.align else "",
-        row_anchors=block.row_anchors if first else (),
-    )
-
-
-def _measured(block: b.Table) -> tuple[list[float], list[float]]:
-    """Of each column the longest cell and the longest unbreakable word, in em."""
-    longest, words = [1.0] * len(block.headers), [1.0] * len(block.headers)
-    for row in (block.headers, *block.rows):
-        for column, cell in enumerate(row):
-            text = re.sub(r"\\[A-Za-z]+|[{}\\^_]", "", plain(cell))
-            longest[column] = max([longest[column], *(_em(line) for line in text.split("\n"))])
-            pieces = _breakable(text).replace("\u200b", " ").split(" ")
-            words[column] = max([words[column], *(_em(piece) for piece in pieces)])
-    return longest, words
-
-
-@functools.cache
-def _advances() -> dict[str, float]:
-    """The width of each letter of the text face in em, digits all alike as in tables."""
-    from fontTools.ttLib import TTFont
-
-    font = TTFont(FONT_FOLDER / TEXT_FACES[2], lazy=True)
-    metrics, unit = font["hmtx"].metrics, font["head"].unitsPerEm
-    widths = {chr(code): metrics[name][0] / unit for code, name in font.getBestCmap().items()}
-    return widths | dict.fromkeys("0123456789", max(widths[digit] for digit in "0123456789"))
-
-
-def _em(text: str) -> float:
-    """The width of a text in em, set semibold (no narrower than what will be printed)."""
-    widths = _advances()
-    return sum(widths.get(char, 0.7) for char in text)
-
-
-def _small(block: b.Table) -> bool:
-    """Whether a table is kept on one page."""
-    return len(block.rows) <= 12 and sum(len(plain(cell)) for row in block.rows for cell in row) <= 1200
-
-
-@functools.lru_cache(maxsize=256)
-def _size_of(data: bytes, media: str) -> tuple[float, float] | None:
-    """Width and height of a picture in points, where it states them."""
-    if media == "image/png":
-        return int.from_bytes(data[16:20], "big") * 0.75, int.from_bytes(data[20:24], "big") * 0.75
-    head = data[:4000].decode("utf-8", "replace")
-    match = re.search(r"viewBox=[\"']\s*[-\d.]+[\s,]+[-\d.]+[\s,]+([\d.]+)[\s,]+([\d.]+)", head)
-    return (float(match.group(1)), float(match.group(2))) if match else None
-
-
-def _image_size(block: b.Figure) -> str:
-    size = _size_of(block.data, block.media)
-    if size is None or not all(size):
-        return ", width: 100%"
-    width, height = size[0] * 0.3528, size[1] * 0.3528
-    factor = min(1.0, TEXT_WIDTH_MM / width, LARGEST_HEIGHT_MM / height)
-    return f", width: {width * factor:.2f}mm"

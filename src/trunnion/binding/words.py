@@ -116,7 +116,6 @@ _GERMAN = {
     "Independent": "Unabhängig",
     "Difference": "Unterschied",
     "Tolerance": "Toleranz",
-    "Route": "Weg",
     "agrees": "stimmt überein",
     "DOES NOT AGREE": "STIMMT NICHT ÜBEREIN",
     "Agreement": "Übereinstimmung",
