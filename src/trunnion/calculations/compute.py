@@ -23,6 +23,7 @@ from trunnion.calculations.store import RevisionFolder
 from trunnion.errors import SpecError, StoreError, TrunnionError
 
 COMPUTED, FAILED, MISSING = "computed", "failed", "missing"
+SignatureRows = Mapping[str, Sequence[Sequence[str]]]
 
 
 @dataclass(frozen=True)
@@ -68,7 +69,7 @@ def compute(
     workers: int | None = None,
     allow_local: bool = False,
     approved: Collection[str] = (),
-    signatures: Mapping[str, Sequence[Sequence[str]]] | None = None,
+    signatures: Callable[[Computed], SignatureRows] | None = None,
     scratch: str | None = None,
     tell: Callable[[Progress], None] | None = None,
     then: Callable[[Computed], None] | None = None,
@@ -77,7 +78,7 @@ def compute(
 
     Runs only what is out of date (of `only`, if given; None: nothing may be due); every other body is
     kept byte for byte. A failed calculation does not stop the others. `approved` are ids of deviations an
-    approver has signed, `signatures` the sign-off rows (role, name, date, state) of sheets by calculation
+    approver has signed, `signatures` gives the sign-off rows (role, name, date, state) of sheets by calculation
     id. `scratch` names a folder beside the revisions for a trial. `then` is called at the end, while the
     folder is still held: the package is bound there. Raises SpecError, TemplateError or StoreError before
     anything is run; what a calculation raises is in `Computed.failed`.
@@ -95,7 +96,7 @@ def compute(
         _remove_stale(folder, done)
         _write_state(folder, done)
         computed = _judged(workbook, folder, done, approved)
-        _write_sheets(computed, signatures or {})
+        _write_sheets(computed, signatures(computed) if signatures is not None else {})
         writes.write_if_changed(folder.path / "results.json", canonical_bytes(computed.results))
         writes.write_if_changed(folder.path / "workbook.yaml", workbook.text.encode("utf-8"))
         if then is not None:
@@ -311,7 +312,7 @@ def _plain_calculation(entry: Done) -> dict[str, Any]:
     }
 
 
-def _write_sheets(computed: Computed, signatures: Mapping[str, Sequence[Sequence[str]]]) -> None:
+def _write_sheets(computed: Computed, signatures: SignatureRows) -> None:
     for entry in computed.done:
         if entry.body is None:
             continue

@@ -46,10 +46,11 @@ class Alteration:
         return f"issued revision {self.revision}: {self.path} is {self.what}"
 
 
-def freeze(computed: Computed, *, date: str) -> Path:
+def freeze(computed: Computed, *, date: str, record: Mapping[str, bytes] | None = None) -> Path:
     """Freeze a computed workbook as its revision; returns the folder under `issued/`.
 
-    `date` is the day of issue (ISO). RecordError if the revision is issued already, if a calculation failed or was
+    `date` is the day of issue (ISO); `record` holds further files to freeze with it (signatures, findings), by
+    relative path. RecordError if the revision is issued already, if a calculation failed or was
     not run, or if the revision it supersedes was altered.
     """
     workbook, folder = computed.workbook, computed.folder.path
@@ -59,17 +60,19 @@ def freeze(computed: Computed, *, date: str) -> Path:
     target = writes.make_folder(issued_folder(workbook.root) / revision)
     results = canonical_bytes(computed.results)
     spec = workbook.text.encode("utf-8")
+    files = {RESULTS: results, SPEC: spec, **(record or {})}
     digests = {
         "schema": SCHEMA,
         "document": {**computed.results["document"], "issued": date},
-        "files": {RESULTS: sha256(results), SPEC: sha256(spec)},
+        "files": {name: sha256(content) for name, content in files.items()},
         "outputs": output_digests(folder),
         "calculations": {entry.planned.id: _calculation(entry) for entry in computed.done},
         "code": dict(keys.surroundings().code),
         "supersedes": _superseded(workbook),
     }
-    writes.write_bytes(target / RESULTS, results)
-    writes.write_bytes(target / SPEC, spec)
+    for name, content in files.items():
+        writes.make_folder((target / name).parent)
+        writes.write_bytes(target / name, content)
     writes.write_json(target / DIGESTS, digests)  # last: an issue without it is none
     return target
 

@@ -16,6 +16,7 @@ from trunnion.calculations.compute import Computed, compute
 from trunnion.calculations.store import revision_folder
 from trunnion.cli import packaging, screen
 from trunnion.cli.exits import ExitCode
+from trunnion.records import signoff
 from trunnion.spec import load_workbook
 
 
@@ -47,7 +48,8 @@ def once(
 
     with screen.progress(shown=look.chatty) as tell:
         run: Callable[..., Computed] = trials.trial if trial else compute
-        computed = run(loaded, tell=tell, then=bind, **options)
+        signed = {} if trial else {"signatures": signoff.sheet_rows}
+        computed = run(loaded, tell=tell, then=bind, approved=signoff.approved(loaded), **signed, **options)
     screen.show_computed(computed, bound[0], as_json=look.as_json, quiet=look.quiet)
     if computed.failed or bound[0].error:
         return ExitCode.FAILED

@@ -38,7 +38,10 @@ COMMANDS = (
     Entry("revise", "Open the next revision.", CHANGE),
     Entry("handover", "Hand a convention over with reference attitudes and source code.", HAND_OVER),
     Entry("bind", "Bind the package again from stored results.", HAND_OVER),
-    Entry("issue", "Freeze the revision.", RECORD),
+    Entry("finding", "Add, answer, close and list findings.", RECORD),
+    Entry("sign", "Sign as prepared, checked or approved.", RECORD),
+    Entry("status", "Who has signed what, what has fallen, what is missing.", RECORD),
+    Entry("issue", "Freeze the revision, once it is signed.", RECORD),
 )
 
 

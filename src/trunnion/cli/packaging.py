@@ -14,10 +14,10 @@ from trunnion.calculations import store, writes
 from trunnion.calculations.baselines import issued_baseline
 from trunnion.calculations.compute import FAILED, MISSING, Computed, Done
 from trunnion.calculations.digest import sha256, sha256_json
-from trunnion.calculations.impact import without_source
 from trunnion.calculations.issue import issue_date
 from trunnion.calculations.judgement import Judgement
 from trunnion.errors import BindingError
+from trunnion.records import signoff
 
 RECORD = "bound.json"
 _STATES = {FAILED: p.SheetState.FAILED, MISSING: p.SheetState.MISSING}
@@ -35,22 +35,25 @@ class Bound:
 
 def package_input(computed: Computed, *, status: str = "draft", date: str = "") -> p.PackageInput:
     """Everything the package of a computed workbook shows."""
-    workbook = computed.workbook
+    workbook, signed = computed.workbook, signoff.sign_off(computed)
     return p.PackageInput(
         document=_document(computed, status, date),
-        sheets=tuple(_sheet(entry) for entry in computed.done),
+        sheets=tuple(_sheet(entry, signed) for entry in computed.done),
         people=tuple(p.Person(who.id, who.name, ", ".join(who.signs_as or ())) for who in workbook.people),
-        signatures=tuple(p.Signature(role) for role in ("prepared", "checked", "approved")),
-        requirements=tuple(_requirement(entry, workbook) for entry in computed.judgements),
+        signatures=signed.signatures,
+        requirements=tuple(_requirement(entry, workbook, signed) for entry in computed.judgements),
         decisions=tuple(_decision(decision, computed) for decision in workbook.decisions),
         assumptions=tuple(p.Assumption(a.id, a.text, a.status, a.owner) for a in workbook.assumptions),
-        findings=tuple(_findings(computed)),
-        deviations=tuple(p.Deviation(d.id, d.requirement, d.reason, d.limits, d.expires) for d in workbook.deviations),
+        findings=(*signed.findings, *_failed_checks(computed)),
+        deviations=tuple(
+            p.Deviation(d.id, d.requirement, d.reason, d.limits, d.expires, signed.deviations[d.id])
+            for d in workbook.deviations
+        ),
         revisions=tuple(p.Revision(r.revision, r.date or "", r.reason) for r in workbook.revisions),
         inputs=tuple(_inputs(computed)),
         changes=tuple(p.Change(*row) for row in changes_since_superseded(computed)),
         summary=_summary(computed),
-        cautions=tuple(_cautions(computed)),
+        cautions=(*signed.cautions, *_cautions(computed)),
         environment=tuple(_environment(computed)),
         spec_text=workbook.text,
     )
@@ -107,15 +110,16 @@ def _package_key(computed: Computed, pdf: bool, status: str, date: str) -> str:
             "house": sha256(house.read_bytes()) if house is not None else None,
             "superseded": dict(baseline.results) if baseline is not None else None,
             "program": binder_digest(),
+            "signed": signoff.sign_off(computed).plain(),
             "asked": [pdf, status, date],
         }
     )
 
 
 def binder_digest() -> str:
-    """SHA-256 over the source files of the binder and of this room."""
+    """SHA-256 over the source files of the binder, of the records and of this room."""
     package = Path(__file__).parents[1]
-    files = [path for room in ("binding", "cli") for path in (package / room).rglob("*.py")]
+    files = [path for room in ("binding", "records", "cli") for path in (package / room).rglob("*.py")]
     return sha256_json({path.relative_to(package).as_posix(): sha256(path.read_bytes()) for path in files})
 
 
@@ -152,7 +156,7 @@ def _document(computed: Computed, status: str, date: str) -> p.Document:
     )
 
 
-def _sheet(entry: Done) -> p.Sheet:
+def _sheet(entry: Done, signed: signoff.SignOff) -> p.Sheet:
     planned = entry.planned
     return p.Sheet(
         id=planned.id,
@@ -166,10 +170,11 @@ def _sheet(entry: Done) -> p.Sheet:
         key=planned.key,
         digest=entry.digest,
         local_template=planned.template.local,
+        signatures=signed.sheets[planned.id],
     )
 
 
-def _requirement(entry: Judgement, workbook: Any) -> p.RequirementRow:
+def _requirement(entry: Judgement, workbook: Any, signed: signoff.SignOff) -> p.RequirementRow:
     asked = entry.asked
     requirement = workbook.part("requirements", asked.requirement)
     of_decision = asked.of != entry.candidate
@@ -186,6 +191,7 @@ def _requirement(entry: Judgement, workbook: Any) -> p.RequirementRow:
         basis_asked=asked.basis.value,
         evidence=tuple(_evidence(entry)),
         accepted=entry.deviation if entry.deviation_holds else "",
+        signature=signed.words(sorted({part.calculation for part in _evidence(entry)})),
         why=entry.why,
     )
 
@@ -213,20 +219,14 @@ def _decision(decision: Any, computed: Computed) -> p.Decision:
     )
 
 
-def _findings(computed: Computed) -> list[p.Finding]:
-    """What calculations record, checks that do not agree, and inputs that cite no source."""
-    found = []
-    for entry in computed.done:
-        if entry.recorded is None:
-            continue
-        against = entry.planned.id
-        for finding in entry.recorded.findings:
-            found.append(p.Finding(str(finding["id"]), str(finding["against"]), str(finding["text"])))
-        for name in entry.recorded.failed_checks:
-            found.append(p.Finding(name, against, "the independent check does not agree"))
-    for path in without_source(computed.workbook):
-        found.append(p.Finding(f"source:{path}", path, "this input cites no source"))
-    return found
+def _failed_checks(computed: Computed) -> list[p.Finding]:
+    """Independent checks that do not agree: no finding to be answered, but a calculation to be mended."""
+    return [
+        p.Finding(name, entry.planned.id, "the independent check does not agree")
+        for entry in computed.done
+        if entry.recorded is not None
+        for name in entry.recorded.failed_checks
+    ]
 
 
 def _inputs(computed: Computed) -> list[p.InputFile]:
