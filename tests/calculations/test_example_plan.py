@@ -28,7 +28,7 @@ def keys_of(workbook: Path) -> dict[str, str]:
         ("axes: {x: up, y: starboard, z: forward}", "axes: {x: up, y: port, z: aft}", {"C03"}),
         ("bank: [-45 deg, 45 deg]", "bank: [-50 deg, 50 deg]", {"C02", "C03"}),
         ("half angle: 10 deg", "half angle: 12 deg", {"C02", "C03"}),
-        ("[nose right, starboard down, nose up]", "[nose right, starboard up, nose up]", {"C01", "C02"}),
+        ("{about: starboard, angle: 40 deg}", "{about: starboard, angle: 35 deg}", {"C02"}),
         ("at least: 20 deg", "at least: 25 deg", set()),
         ("title: Attitude convention", "title: Convention", set()),
         ("name: Maren Oakhollow", "name: M. Oakhollow", set()),
