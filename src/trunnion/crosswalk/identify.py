@@ -112,7 +112,7 @@ def identify_angles(
     noise: largest standard deviation per axis (rad) to allow for, None when it is not known.
     Raises AttitudeError for no samples, numbers that are not finite, or attitudes that are no rotations.
     """
-    written, R = _samples(numbers, truth)
+    written, R = checked_samples(numbers, truth)
     chains = _class_chains() if constants is Constants.BOTH else all_chains()
     some = _well_spread(written) if len(R) > 2 * _SPREAD else np.arange(len(R))
     fitted = fit(_attitudes(chains, written[some]), R[some], constants)
@@ -123,9 +123,9 @@ def identify_angles(
         left = np.union1d(left, np.argsort(fitted.scores, kind="stable")[:2])
         chosen = [chains[index] for index in left]
         fitted = fit(np.array([chain.matrix(written) for chain in chosen]), R, constants)
-    readings = [_chain_reading(chain, constants, names) for chain in chosen]
+    readings = [chain_reading(chain, constants, names) for chain in chosen]
     tried = len(chains) * (24 if constants is Constants.RELABELLED else 1)
-    found = _decide(readings, fitted, constants, noise, tried)
+    found = decide(readings, fitted, constants, noise, tried)
     return _with_reasons(found, written, R, names)
 
 
@@ -140,7 +140,7 @@ def identify_attitudes(
     R = require_rotation(np.asarray(truth, dtype=float), "a known attitude")
     A = np.array([np.asarray(attitudes, dtype=float) for _, attitudes in readings])
     made = [Reading(words, (words,), key=words) for words, _ in readings]
-    return _decide(made, fit(A, R, constants), constants, noise, len(readings))
+    return decide(made, fit(A, R, constants), constants, noise, len(readings))
 
 
 def quaternion_readings(components: ArrayLike) -> list[tuple[str, Array]]:
@@ -177,7 +177,8 @@ def matrix_readings(entries: ArrayLike) -> list[tuple[str, Array]]:
     ]
 
 
-def _samples(numbers: ArrayLike, truth: ArrayLike) -> tuple[Array, Array]:
+def checked_samples(numbers: ArrayLike, truth: ArrayLike) -> tuple[Array, Array]:
+    """Numbers (N, 3) and R_rb (N, 3, 3) that go together; AttitudeError says what does not."""
     written = np.atleast_2d(np.asarray(numbers, dtype=float))
     R = np.asarray(truth, dtype=float)
     R = R[None] if R.ndim == 2 else R
@@ -201,7 +202,7 @@ def _attitudes(chains: tuple[Chain, ...], written: Array) -> Array:
 def _class_chains() -> tuple[Chain, ...]:
     """One chain for each of the 48 classes that two unknown constants leave: columns, unit, and four kinds of axes."""
     return tuple(
-        Chain(sequence.axes, signs, columns, unit)  # type: ignore[arg-type]
+        Chain(sequence.axes, signs, columns, unit)
         for unit in (True, False)
         for sequence in (Sequence.XYZ, Sequence.XYX)
         for signs in ((1, 1, 1), (1, 1, -1))
@@ -209,7 +210,8 @@ def _class_chains() -> tuple[Chain, ...]:
     )
 
 
-def _chain_reading(chain: Chain, constants: Constants, names: tuple[str, str, str]) -> Reading:
+def chain_reading(chain: Chain, constants: Constants, names: tuple[str, str, str]) -> Reading:
+    """A chain with its names in words; under two unknown constants the class it stands for."""
     if constants is not Constants.BOTH:
         said = tuple(reading.words(names) for reading in chain.readings())
         return Reading(said[0], said, chain, chain)
@@ -246,9 +248,10 @@ def _bound(noise: float, count: int) -> float:
     return float(noise * np.sqrt(quantile / count))
 
 
-def _decide(
+def decide(
     readings: list[Reading], fitted: Fitted, constants: Constants, noise: float | None, tried: int
 ) -> Identification:
+    """The answer for candidates that were fitted: which fit, which is next, which samples are false."""
     order = np.argsort(fitted.scores, kind="stable")
     count = fitted.residuals.shape[1]
     best = float(fitted.scores[order[0]])

@@ -23,8 +23,8 @@ from trunnion.attitude.sequences import Sense, Sequence
 Array = NDArray[np.float64]
 Triple = tuple[int, int, int]
 
-COLUMN_ORDERS: tuple[Triple, ...] = tuple(itertools.permutations(range(3)))  # type: ignore[assignment]
-SIGNS: tuple[Triple, ...] = tuple(itertools.product((1, -1), repeat=3))  # type: ignore[assignment]
+COLUMN_ORDERS: tuple[Triple, ...] = tuple((i, j, k) for i, j, k in itertools.permutations(range(3)))
+SIGNS: tuple[Triple, ...] = tuple((i, j, k) for i, j, k in itertools.product((1, -1), repeat=3))
 
 
 @dataclass(frozen=True, order=True)

@@ -79,13 +79,14 @@ class CrossWalk:
                 f"'{self.second.name}' is at lock, where its angle rates do not exist",
                 remedy="exchange the angular velocity instead",
             )
-        return np.linalg.solve(
-            convention_rate_matrix(self.second, stated), self.R_bq.T @ convention_rate_matrix(self.first, angles)
+        second = convention_rate_matrix(self.second, stated)
+        return np.asarray(
+            np.linalg.solve(second, self.R_bq.T @ convention_rate_matrix(self.first, angles)), dtype=float
         )
 
     def amplification(self, angles: ArrayLike) -> Array:
         """Largest growth (...) of a small error of the first triple into the second: 2-norm of `rate_matrix`."""
-        return np.linalg.norm(self.rate_matrix(angles), ord=2, axis=(-2, -1))
+        return np.asarray(np.linalg.norm(self.rate_matrix(angles), ord=2, axis=(-2, -1)), dtype=float)
 
 
 def frame_rotation(source: Frame, target: Frame) -> Array:
@@ -129,12 +130,10 @@ def _angle_map(walk: CrossWalk) -> AngleMap | None:
     whole = np.round(slopes)
     if np.max(np.abs(slopes - whole)) > 1e-7 or np.any(np.abs(whole).sum(axis=1) != 1):
         return None
-    columns = tuple(int(np.argmax(np.abs(row))) for row in whole)
-    signs = tuple(int(row[column]) for row, column in zip(whole, columns, strict=True))
-    constants = stated - np.array(signs) * start[list(columns)]
-    candidate = AngleMap(
-        columns, signs, tuple(float(np.remainder(value + np.pi, 2 * np.pi) - np.pi) for value in constants)
-    )  # type: ignore[arg-type]
+    i, j, k = (int(np.argmax(np.abs(row))) for row in whole)
+    si, sj, sk = (int(row[column]) for row, column in zip(whole, (i, j, k), strict=True))
+    constants = np.remainder(stated - np.array([si, sj, sk]) * start[[i, j, k]] + np.pi, 2 * np.pi) - np.pi
+    candidate = AngleMap((i, j, k), (si, sj, sk), (float(constants[0]), float(constants[1]), float(constants[2])))
     points = walk.first.stated_from_chain(_GRID)
     miss = rotation_angle(walk.second.matrix(candidate(points)), walk.attitude(walk.first.matrix(points)))
     return candidate if float(np.max(miss)) <= EXACT_MAP else None

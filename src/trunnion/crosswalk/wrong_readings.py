@@ -118,11 +118,13 @@ def single_readings(convention: Convention) -> list[WrongReading]:
         ),
         WrongReading("matrix", "transposed: rows taken for columns", lambda rows: rows.truth.transpose(0, 2, 1)),
     ]
-    found += [
-        WrongReading("constants", words, lambda rows, other=other: other.matrix(rows.angles))
-        for words, other in _other_constants(convention)
-    ]
+    found += [WrongReading("constants", words, _carried_out(other)) for words, other in _other_constants(convention)]
     return found
+
+
+def _carried_out(other: Convention) -> Callable[[Rows], Array]:
+    """What another convention makes of the rows' angles."""
+    return lambda rows: other.matrix(rows.angles)
 
 
 def _from_quaternion(rows: Rows, order: tuple[int, int, int, int], sense: float) -> Array:
@@ -134,16 +136,18 @@ def _other_constants(convention: Convention) -> list[tuple[str, Convention]]:
     """The convention with a constant or an offset left out, transposed, or put on the other side."""
     left, right, none = convention.left, convention.right, np.eye(3)
     found: list[tuple[str, Convention]] = []
-    for side, matrix in (("reference", left), ("body", right)):
-        if np.allclose(matrix, none, rtol=0, atol=1e-12):
-            continue
-        name = "left" if side == "reference" else "right"
-        found.append((f"constant on the {side} side left out", replace(convention, **{name: none})))
-        found.append((f"constant on the {side} side transposed", replace(convention, **{name: matrix.T})))
+    if not np.allclose(left, none, rtol=0, atol=1e-12):
+        found.append(("constant on the reference side left out", replace(convention, left=none)))
+        found.append(("constant on the reference side transposed", replace(convention, left=left.T)))
+    if not np.allclose(right, none, rtol=0, atol=1e-12):
+        found.append(("constant on the body side left out", replace(convention, right=none)))
+        found.append(("constant on the body side transposed", replace(convention, right=right.T)))
     if not np.allclose(left, right, rtol=0, atol=1e-12):
         found.append(("constants of the two sides exchanged", replace(convention, left=right, right=left)))
     if any(convention.offsets):
-        flipped = tuple(-offset for offset in convention.offsets)
+        first, second, third = (-offset for offset in convention.offsets)
         found.append(("offsets left out", replace(convention, offsets=(0.0, 0.0, 0.0), ranges=None)))
-        found.append(("offsets taken with the other sign", replace(convention, offsets=flipped, ranges=None)))
+        found.append(
+            ("offsets taken with the other sign", replace(convention, offsets=(first, second, third), ranges=None))
+        )
     return found

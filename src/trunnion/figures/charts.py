@@ -28,6 +28,8 @@ from trunnion.figures.style import (
 
 Floats = NDArray[np.float64]
 
+_NAMED_RUNS = 24  # more names than this do not fit under the axis
+
 
 @house_look
 def ranking_chart(
@@ -57,8 +59,10 @@ def ranking_chart(
 
 
 @house_look
-def margin_histogram(edges: Floats, shares: Mapping[str, Floats], *, limit: float | None = None) -> str:
-    """Share of samples against lock margin. `edges` (n+1,) deg, each of `shares` (n,) in percent."""
+def margin_histogram(
+    edges: Floats, shares: Mapping[str, Floats], *, limit: float | None = None, of: str = "samples"
+) -> str:
+    """Share of samples (or `of` the time) against lock margin. `edges` (n+1,) deg, each of `shares` (n,) in percent."""
     figure = new_figure(height_mm=64)
     axes = new_axes(figure)
     for index, (name, share) in enumerate(shares.items()):
@@ -73,7 +77,7 @@ def margin_histogram(edges: Floats, shares: Mapping[str, Floats], *, limit: floa
     axes.set_xlim(float(edges[0]), float(edges[-1]))
     axes.set_ylim(bottom=0.0)
     axes.set_xlabel("lock margin, deg")
-    axes.set_ylabel("share of samples, %")
+    axes.set_ylabel(f"share of {of}, %")
     _limit_line(axes, limit, vertical=True)
     axes.legend(loc="best")
     return to_svg(figure)
@@ -142,6 +146,35 @@ def margin_against_time(
     axes.set_ylim(0.0, 92.0)
     axes.set_xlabel("time, s")
     axes.set_ylabel("lock margin, deg")
+    _limit_line(axes, limit, vertical=False)
+    axes.legend(loc="best", ncols=min(3, max(1, len(margins))))
+    return to_svg(figure)
+
+
+@house_look
+def run_margins(runs: Sequence[str], margins: Mapping[str, Sequence[float]], *, limit: float | None = None) -> str:
+    """Least lock margin (deg) of each run, one mark a convention; runs are named while there is room for names."""
+    figure = new_figure(height_mm=76)
+    axes = new_axes(figure)
+    places = np.arange(1, len(runs) + 1)
+    for index, (name, values) in enumerate(margins.items()):
+        axes.plot(
+            places,
+            values,
+            label=label(name),
+            color=COLOURS[index % len(COLOURS)],
+            linestyle="none",
+            marker="osD^vP"[index % 6],
+            markersize=5 if len(runs) <= _NAMED_RUNS else 2.5,
+            clip_on=False,
+            markerfacecolor="none" if index % 2 else COLOURS[index % len(COLOURS)],
+        )
+    if len(runs) <= _NAMED_RUNS:
+        axes.set_xticks(places, [label(run) for run in runs], rotation=45, ha="right")
+    else:
+        axes.set_xlabel("run, in order of its least margin")
+    axes.set_ylim(0.0, 92.0)
+    axes.set_ylabel("least lock margin, deg")
     _limit_line(axes, limit, vertical=False)
     axes.legend(loc="best", ncols=min(3, max(1, len(margins))))
     return to_svg(figure)

@@ -8,7 +8,7 @@ from __future__ import annotations
 import functools
 import io
 from collections.abc import Callable
-from typing import Any, ParamSpec
+from typing import Any, ParamSpec, cast
 
 import matplotlib as mpl
 from matplotlib.axes import Axes
@@ -36,10 +36,16 @@ DASHES: tuple[Any, ...] = (
 HATCHES = ("", "////", "....", "xxxx", "----", "\\\\\\\\")
 
 # One symbol for one thing in every figure.
-LOCK = {"marker": "x", "color": INK, "markersize": 8, "markeredgewidth": 2.0, "linestyle": "none"}
-WORST = {"marker": "D", "color": COLOURS[1], "markeredgecolor": INK, "markersize": 6.5, "linestyle": "none"}
-LIMIT = {"color": INK, "linestyle": (0, (6, 2.5)), "linewidth": 1.1}
-REGION = {"edgecolor": INK, "linewidth": 1.3, "fill": False}
+LOCK: dict[str, Any] = {"marker": "x", "color": INK, "markersize": 8, "markeredgewidth": 2.0, "linestyle": "none"}
+WORST: dict[str, Any] = {
+    "marker": "D",
+    "color": COLOURS[1],
+    "markeredgecolor": INK,
+    "markersize": 6.5,
+    "linestyle": "none",
+}
+LIMIT: dict[str, Any] = {"color": INK, "linestyle": (0, (6, 2.5)), "linewidth": 1.1}
+REGION: dict[str, Any] = {"edgecolor": INK, "linewidth": 1.3, "fill": False}
 
 _RC: dict[str, Any] = {
     "font.family": ["DejaVu Sans"],
@@ -80,7 +86,7 @@ def house_look(draw: Callable[_Arguments, str]) -> Callable[_Arguments, str]:
 
     @functools.wraps(draw)
     def drawn(*arguments: _Arguments.args, **options: _Arguments.kwargs) -> str:
-        with mpl.rc_context(_RC):
+        with mpl.rc_context(cast(Any, _RC)):
             return draw(*arguments, **options)
 
     return drawn
