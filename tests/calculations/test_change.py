@@ -306,6 +306,7 @@ def test_the_comparison_page_is_one_file_with_figures_side_by_side(tmp_path: Pat
         }
         notebook = {"nbformat": 4, "nbformat_minor": 5, "metadata": {}, "cells": [cell]}
         (tmp_path / name / "C01-x.ipynb").write_text(json.dumps(notebook))
+        (tmp_path / name / "results.json").write_text(json.dumps({"calculations": [{"id": "C01", "template": "x"}]}))
         return tmp_path / name
 
     old = _results({"a<b>": (25.0, 25.5)}, "meets", "20 deg")

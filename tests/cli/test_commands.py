@@ -62,6 +62,17 @@ def test_a_file_that_is_not_yaml_is_a_message_and_code_2(tmp_path, capsys) -> No
     assert len(capsys.readouterr().err.splitlines()) < 24
 
 
+def test_a_defect_is_told_as_one_and_is_no_verdict(monkeypatch, capsys) -> None:
+    import trunnion.cli.schema
+
+    def broken(*_: object, **__: object) -> None:
+        raise ZeroDivisionError
+
+    monkeypatch.setattr(trunnion.cli.schema.command, "callback", broken)
+    assert outcome(["schema"]) is ExitCode.FAILED
+    assert "This is a defect of Trunnion" in capsys.readouterr().err
+
+
 def test_compute_and_its_exit_codes(workbook: Path, capsys) -> None:
     arguments = ["compute", str(workbook), "--no-pdf", "--allow-local-templates"]
     assert outcome([*arguments, "--json"]) is ExitCode.OK

@@ -7,6 +7,7 @@ from collections.abc import Iterable, Sequence
 from html import escape
 from pathlib import Path
 
+from trunnion.calculations.baselines import RESULTS, read_json
 from trunnion.calculations.compare import Comparison, change_rows
 from trunnion.calculations.notebooks import joined, read_notebook
 from trunnion.errors import StoreError
@@ -62,17 +63,16 @@ def _picture(svg: str | None, name: str) -> str:
 
 
 def _figures(folder: Path) -> dict[str, str]:
-    """Figures of the sheets in a folder as SVG text, by `calculation figure`."""
+    """Figures of the sheets in a folder as SVG text, by `calculation figure`; none where sheets are not held."""
     found = {}
-    for path in sorted(folder.glob("*.ipynb")):
+    for entry in read_json(folder / RESULTS).get("calculations", []):
         try:
-            notebook = read_notebook(path)
+            notebook = read_notebook(folder / f"{entry['id']}-{entry['template']}.ipynb")
         except StoreError:
             continue
         for cell in notebook["cells"]:
             for output in cell.get("outputs", []):
                 payload = output.get("data", {}).get(MIME)
                 if isinstance(payload, dict) and payload.get("kind") == "figure":
-                    name = f"{path.name.partition('-')[0]} {payload['id']}"
-                    found[name] = joined(output["data"].get("image/svg+xml", ""))
+                    found[f"{entry['id']} {payload['id']}"] = joined(output["data"].get("image/svg+xml", ""))
     return found

@@ -41,7 +41,7 @@ class Evidence:
         self.started = started
         self.sockets: Path | None = None
         self.notebook: Any = None
-        self.cell = 0
+        self.cell: int | None = None  # none yet: the kernel has not started
         self.manager: AsyncKernelManager | None = None
 
     def kill_kernel(self) -> None:
@@ -83,7 +83,7 @@ class _Progress(NotebookExecutionManager):
     def cell_start(self, cell: Any, cell_index: int | None = None, **kwargs: Any) -> None:
         """Tell where the run is."""
         self.evidence.cell = cell_index or 0
-        self.evidence.started(self.evidence.cell, len(self.nb.cells))
+        self.evidence.started(cell_index or 0, len(self.nb.cells))
         super().cell_start(cell, cell_index, **kwargs)
 
 

@@ -113,6 +113,14 @@ def outcome(arguments: list[str] | None = None) -> ExitCode:
     except BrokenPipeError:
         sys.stderr.close()
         return ExitCode.FAILED
+    except Exception:
+        import traceback
+
+        traceback.print_exc()
+        click.echo(
+            "This is a defect of Trunnion, not of your workbook; please report it with the lines above.", err=True
+        )
+        return ExitCode.FAILED
     return ExitCode(code) if isinstance(code, int) else ExitCode.OK
 
 
