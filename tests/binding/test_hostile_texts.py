@@ -136,3 +136,12 @@ def test_pictures_that_do_more_than_draw_are_refused(material, tmp_path, svg):
     output = material.item("figure", "fig:a", {"image/svg+xml": svg}, caption="x", alt="y")
     with pytest.raises(BindingError, match=r"cell 1 \(c00\): image/svg\+xml: "):
         bind(material.one_cell(material.code("x", output)), tmp_path, pdf=False)
+
+
+def test_characters_of_figures_are_numbered_and_counted_too(material, tmp_path):
+    """A picture drawn with a character no vendored font has, and one drawn with its number already."""
+    for text in ("漢", "[U+6F22]"):
+        svg = material.TINY_SVG.replace("lock margin", text)
+        output = material.item("figure", "fig:a", {"image/svg+xml": svg}, caption="x", alt="y")
+        report = bind(material.one_cell(material.code("x", output)), tmp_path)
+        assert report.missing_glyphs == {"U+6F22": 1}

@@ -257,3 +257,11 @@ def test_an_unusable_folder_is_said_and_nothing_is_left(material, tmp_path):
 def test_another_folder_gives_the_same_page(material, tmp_path):
     pages = [bind(material.package(), tmp_path / name, pdf=False).html.read_bytes() for name in ("a", "b")]
     assert pages[0] == pages[1]
+
+
+def test_links_reach_other_calculations_and_requirements(material, tmp_path):
+    base = material.package()
+    second = material.notebook(material.markdown("as [there](#C01/eq:product), for [](#ATT-04), in [it](#C01)"))
+    sheets = (base.sheets[0], replace(base.sheets[1], notebook=second))
+    page = Page(bind(replace(base, sheets=sheets), tmp_path, pdf=False).html.read_text("utf-8"))
+    assert "as there (Eq. C01.1), for ATT-04, in it" in page.text

@@ -71,7 +71,7 @@ def calculation_part(sheet: Sheet, package: PackageInput, words: Words, registry
         head += [b.Heading(2, b.line(words("Requirements addressed"))), _addressed(addressed, words)]
     body: list[b.Block] = []
     if sheet.notebook is not None:
-        reader = NotebookReader(name, strict)
+        reader = NotebookReader(name, strict, words)
         body = reader.read(sheet.notebook)
         registry.faults += reader.faults
         registry.warnings += reader.warnings

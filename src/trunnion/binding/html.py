@@ -29,6 +29,7 @@ VERDICT_CLASS = {Verdict.MEETS: "v-meets", Verdict.DOES_NOT_MEET: "v-fails", Ver
 _MARKED = {"strong": "strong", "emph": "em", "strike": "s", "code": "code"}
 _MATHS = re.compile(r"<math.*?</math>", re.DOTALL)
 _ANNOTATION = re.compile(r"<annotation.*?</annotation>", re.DOTALL)
+_NUMBERED = re.compile(r"\[(U\+[0-9A-F]{4,6})\]")  # characters a figure shows by their code points
 _TAGS = re.compile(r"<[^>]*>", re.DOTALL)
 _ALWAYS = set(map(chr, range(32, 127))) | set("−–—…·°′″×≥≤±→↑↓●○✗✓■")
 
@@ -281,7 +282,10 @@ class _Writer:
             number = f"<b>{self.words('Figure')} {self.text(block.number)}</b> "
             words = self.line(unlinked(block.caption)) or self.text(block.alt)
             self.figures.append((anchor, f"{self.words('Figure')} {self.text(block.number)}: {words}"))
-        data = _with_font(block.data) if block.media == "image/svg+xml" else block.data
+        data = block.data
+        if block.media == "image/svg+xml":
+            self.missing.update(_NUMBERED.findall(data.decode("utf-8")))
+            data = _with_font(data)
         picture = f'<img alt="{self.text(block.alt)}" src="{_data_uri(block.media, data)}">'
         enlarge, back = self.words("Enlarge"), self.words("Back to the page")
         return (

@@ -14,7 +14,9 @@ from trunnion.binding.markdown import Refuse, read_line, read_markdown
 from trunnion.binding.maths import FormulaError, read_formula
 from trunnion.binding.numbers import number_text, quantity_text, result_value
 from trunnion.binding.package import ITEM_MIME, SHEET_TAG
+from trunnion.binding.words import Words
 from trunnion.errors import Fault, Place
+from trunnion.glyphs import visible_text
 
 _CAPTIONED = {"fig": "figure", "tbl": "table", "eq": "equation"}
 
@@ -25,6 +27,7 @@ class NotebookReader:
 
     name: str
     strict: bool = True
+    fixed: Words = field(default_factory=Words)
     faults: list[Fault] = field(default_factory=list)
     warnings: list[str] = field(default_factory=list)
     code: list[tuple[str, str]] = field(default_factory=list)  # (cell, source)
@@ -71,7 +74,7 @@ class NotebookReader:
             return [b.Code(_plain(text))] if text else []
         if kind == "error":
             words = f"{output.get('ename', 'Error')}: {output.get('evalue', '')}"
-            return [b.Callout("failed", "Failed", (b.Paragraph(b.line(_plain(words))),))]
+            return [b.Callout("failed", self.fixed("Failed"), (b.Paragraph(b.line(_plain(words))),))]
         data = output.get("data") or {}
         if ITEM_MIME in data:
             return self.item(data[ITEM_MIME], data)
@@ -84,7 +87,7 @@ class NotebookReader:
             return self.latex(_joined(data["text/latex"]))
         for media in ("image/svg+xml", "image/png"):
             if media in data:
-                words = f"Picture of {self.cell.split(' (')[0]}"
+                words = f"{self.fixed('Picture of cell')} {self.cell.split()[1]}"
                 return self.picture(media, data[media], words, b.line(words))
         if "text/markdown" in data:
             return read_markdown(_joined(data["text/markdown"]), self.refuse)
@@ -115,7 +118,7 @@ class NotebookReader:
 
     def picture(self, media: str, raw: Any, alt: str, caption: b.Line, anchor: str = "") -> list[b.Block]:
         try:
-            content = clean_svg(_joined(raw)) if media == "image/svg+xml" else _png(_joined(raw))
+            content = clean_svg(visible_text(_joined(raw))) if media == "image/svg+xml" else _png(_joined(raw))
         except ValueError as error:
             self.refuse(f"{media}: {error}", "draw it with the figure functions")
             return []
@@ -231,16 +234,16 @@ class NotebookReader:
         headers = [*headers, *[""] * (width - len(headers))]
         body = tuple(tuple(self.words(c) for c in [*row, *[""] * (width - len(row))]) for row in cells)
         head = tuple(b.line(str(h)[:1].upper() + str(h)[1:]) for h in headers)
-        caption = self.words(item.get("caption") or "Inputs")
+        caption = self.words(item.get("caption") or self.fixed("Inputs"))
         return [b.Table(head, body, "l" * width, caption, str(item.get("id", "")))]
 
     def finding(self, item: Mapping[str, Any], data: Mapping[str, Any]) -> list[b.Block]:
-        against = f" (against {item['against']})" if item.get("against") else ""
-        title = f"Finding {item['id']}{against}"
+        against = f" ({self.fixed('against')} {item['against']})" if item.get("against") else ""
+        title = f"{self.fixed('Finding')} {item['id']}{against}"
         return [b.Callout("finding", title, (b.Paragraph(self.words(item["text"])),))]
 
     def assumption(self, item: Mapping[str, Any], data: Mapping[str, Any]) -> list[b.Block]:
-        title = f"Assumption {item['id']} ({item.get('status', 'open')})"
+        title = f"{self.fixed('Assumption')} {item['id']} ({self.fixed.known(item.get('status', 'open'))})"
         return [b.Callout("assumption", title, (b.Paragraph(self.words(item["text"])),))]
 
 

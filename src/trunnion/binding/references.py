@@ -31,11 +31,9 @@ def _resolved(piece: b.Inline, part: b.Part, registry: Registry, change: Change)
         label = registry.labels.get(anchor)
         if label is None:
             continue
-        words = change(piece.parts)
+        words = change(piece.parts) or b.line(label)
         if piece.target.startswith(("eq:", "fig:", "tbl:")) or ("/" in piece.target and ":" in piece.target):
-            named = not words or label in _plain(words)
-            words = words or b.line(label)
-            words = words if named else (*words, *b.line(f" ({label})"))
+            words = words if label in _plain(words) else (*words, *b.line(f" ({label})"))
         return replace(piece, target=anchor, parts=words)
     name = part.calculation or part.title
     registry.faults.append(

@@ -12,6 +12,7 @@ from html import escape
 from trunnion.binding.maths import tree as t
 from trunnion.binding.maths.parse import Formula, kind_of
 from trunnion.binding.maths.symbols import INTEGRALS, styled
+from trunnion.glyphs import visible_text
 
 _ACCENTS = {
     "hat": "ˆ",
@@ -62,7 +63,7 @@ def mathml(formula: Formula, *, display: bool) -> str:
     """One `<math>` element, with the LaTeX source as its annotation (for copying and screen readers)."""
     body = _row(formula.tree, script=False)
     block = ' display="block"' if display else ""
-    source = escape(formula.latex, quote=False)
+    source = escape(visible_text(formula.latex), quote=False)
     return (
         f'<math xmlns="http://www.w3.org/1998/Math/MathML"{block}><semantics>{_single(body)}'
         f'<annotation encoding="application/x-tex">{source}</annotation></semantics></math>'

@@ -25,6 +25,7 @@ _MATRICES = {
     "smallmatrix": ("", ""),
 }
 MAX_DEPTH = 40
+_SUBSET = "use fractions, roots, matrices, cases, aligned, accents, alphabets and the usual signs"
 
 
 class FormulaError(ValueError):
@@ -288,7 +289,10 @@ class _Parser:
         method = _CONSTRUCTS.get(name)
         if method is None:
             cause = f"\\{name} is not in the subset typeset here"
-            raise FormulaError(cause, s.REFUSED.get(name, "write it with the commands the README lists"))
+            raise FormulaError(
+                cause,
+                s.REFUSED.get(name, _SUBSET),
+            )
         return method(self)
 
     def alphabet(self, variant: str) -> t.Node:

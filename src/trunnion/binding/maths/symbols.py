@@ -18,7 +18,7 @@ ORDINARY = _table(
     "hbar ℏ ell ℓ Re ℜ Im ℑ aleph ℵ nabla ∇ partial ∂ infty ∞ forall ∀ exists ∃ nexists ∄ emptyset ∅ "
     "varnothing ∅ angle ∠ measuredangle ∡ sphericalangle ∢ degree ° circledast ⊛ top ⊤ bot ⊥ neg ¬ lnot ¬ prime ′ "
     "% % & & # # $ $ _ _ dagger † ddagger ‡ square □ triangle △ star ⋆ checkmark ✓ imath ı jmath ȷ "
-    "Box □ bigstar ★ surd √ backslash \\ vdots ⋮"
+    "Box □ bigstar ★ backslash \\ vdots ⋮"
 )
 BINARY = _table(
     "pm ± mp ∓ times × div ÷ cdot ⋅ ast ∗ circ ∘ bullet ∙ oplus ⊕ ominus ⊖ otimes ⊗ oslash ⊘ odot ⊙ "

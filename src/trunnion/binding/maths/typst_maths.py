@@ -63,7 +63,10 @@ def _joined(parts: list[str]) -> str:
 
 
 def _char(char: str) -> str:
-    return "\\" + char if char.isascii() and not char.isalnum() else char
+    """One sign, spelled so that it stands for itself: brackets of all kinds, the root sign and others act in typst."""
+    if char.isalnum():
+        return char
+    return "\\" + char if char.isascii() else "".join(f"\\u{{{ord(c):x}}}" for c in char)
 
 
 def _row(row: t.Row) -> str:
