@@ -49,7 +49,7 @@ def test_the_units_own_angles_lock_in_level_cruise_and_not_in_hover(sedgewing) -
 
 
 def test_the_ordinary_convention_is_rejected_and_the_chosen_one_meets(sedgewing) -> None:
-    rows = {row["candidate"]: row for row in sedgewing.requirement("ATT-04")["candidates"]}
+    rows = {row["name"]: row for row in sedgewing.requirement("ATT-04")["candidates"]}
     assert rows["ordinary"]["verdict"] == "does not meet"
     assert not rows["ordinary"]["counts"]
     assert rows["wing-last"]["verdict"] == "meets"
