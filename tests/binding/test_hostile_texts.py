@@ -22,6 +22,7 @@ HOSTILE = (
     "]] --> <!-- </style></title></svg> &lt; &amp; &#0;",
     "שלום עליכם مرحبا abc",
     "emoji 🚀 漢字 \u202egnp.exe \u200b zero \x07 bell",
+    "lines\u2028#panic(1)\u0085#panic(2)\x0b#panic(3)\r#panic(4)\u2029#panic(5)\n#panic(6)",
     "a" * 10_000,
     "word " * 2_000,
 )  # fmt: skip

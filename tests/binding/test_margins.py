@@ -93,10 +93,10 @@ def hard_to_fit(material) -> p.PackageInput:
 
 
 @pytest.mark.needs("pdftoppm")
-@pytest.mark.parametrize("paper", ["A4", "Letter"])
-def test_margins_are_clean_on_every_page(material, tmp_path, paper):
+@pytest.mark.parametrize(("paper", "language"), [("A4", "en"), ("Letter", "de")])
+def test_margins_are_clean_on_every_page(material, tmp_path, paper, language):
     for name, package in (("usual", material.package()), ("hard", hard_to_fit(material))):
-        report = bind(package, tmp_path / name, house=House(paper=paper))
+        report = bind(package, tmp_path / name, house=House(paper=paper, language=language))
         pages = rendered(report.pdf, tmp_path / f"{name}-pages")
         assert len(pages) == report.pages
         require_clean_margins(pages)

@@ -209,7 +209,7 @@ def test_letter_paper_german_words_and_house_fields(material, tmp_path):
     for words in (
         "Berechnungsdokument",
         "● erfüllt",
-        "nicht nachgewiesen",
+        "nicht gezeigt",
         "Vertrag",
         "V-7",
         "Sedge Werke",

@@ -317,5 +317,5 @@ def plain(parts: b.Line) -> str:
         elif isinstance(part, b.Break):
             out.append("\n")
         elif isinstance(part, b.Badge):
-            out.append(part.verdict.value)
+            out.append("●\u00a0" + part.verdict.value.replace(" ", "\u00a0"))
     return "".join(out)

@@ -40,7 +40,7 @@ _TERMS: dict[str, tuple[tuple[str, str], ...]] = {
         ("measured", "aus Messdaten; genügt nur einer Anforderung, die danach fragt"),
         ("erfüllt", "die Schranke liegt innerhalb der Grenze, auf ausreichender Grundlage"),
         ("nicht erfüllt", "eine Lage wurde erreicht, die die Grenze verletzt"),
-        ("nicht nachgewiesen", "keines von beiden: der Nachweis reicht nicht oder fehlt"),
+        ("nicht gezeigt", "keines von beiden: der Nachweis reicht nicht oder fehlt"),
         ("Abweichung", "eine zugelassene Ausnahme; das Urteil bleibt, wie es berechnet wurde"),
         ("R_rb", "die Matrix, die Körperkomponenten in Bezugskomponenten überführt: v_r = R_rb v_b"),
         ("c, s vor einem Index", "kurz für Kosinus und Sinus des im Index genannten Winkels"),

@@ -34,9 +34,9 @@ def chopped(word: str, every: int) -> str:
 
 def columns_of(block: b.Table) -> tuple[str, float]:
     """Column widths and letter size: as wide as needed when all fits, else shares that hold every word whole."""
-    if block.widths:
-        return "".join(f"{width}fr, " for width in block.widths), TABLE_SIZE
     longest, words = _measured(block)
+    if block.widths:
+        return _given(block.widths, words), TABLE_SIZE
     per_em = TABLE_SIZE * 0.3528
     room = (TEXT_WIDTH_MM - 2.9 * len(longest)) / per_em  # in em, cell insets taken off
     if sum(longest) <= room:
@@ -88,6 +88,18 @@ def _withcolumns_of(block: b.Table, columns: list[int], *, first: bool) -> b.Tab
         align="".join(block.align[c] for c in columns) if block.align else "",
         row_anchors=block.row_anchors if first else (),
     )
+
+
+def _given(widths: tuple[float, ...], words: list[float]) -> str:
+    """Stated shares of the line, columns that could not hold their longest word widened at the others' cost."""
+    total = TEXT_WIDTH_MM / sum(widths)
+    least = [word * TABLE_SIZE * 0.3528 + 3.2 for word in words]
+    wished = [width * total for width in widths]
+    short = sum(max(0.0, need - wish) for need, wish in zip(least, wished, strict=True))
+    spare = sum(max(0.0, wish - need) for need, wish in zip(least, wished, strict=True))
+    given = min(1.0, short / spare) if spare else 0.0
+    shares = [need if wish < need else wish - given * (wish - need) for need, wish in zip(least, wished, strict=True)]
+    return "".join(f"{share:.2f}fr, " for share in shares)
 
 
 def _measured(block: b.Table) -> tuple[list[float], list[float]]:

@@ -181,7 +181,7 @@ class _Writer:
             kicker = self.text(self.words("Appendix")) if part.number.isalpha() else "none"
             head = f"#part-head({kicker}, {self.text(part.number)}, {title}, {anchor}, flows: {str(flows).lower()})"
         blocks = self.joined(part.blocks)
-        where = part.title.replace("\n", " ")
+        where = re.sub(r"[^ -~]", "?", part.title)  # a comment: nothing in it may end its line
         return f"// {where}\n{head}\n{blocks}"
 
     def logo(self) -> str:
