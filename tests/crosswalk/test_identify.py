@@ -10,6 +10,7 @@ import numpy as np
 import pytest
 from scipy.spatial.transform import Rotation
 
+from trunnion.attitude.right_angles import right_angle_rotations
 from trunnion.crosswalk.fitting import Constants
 from trunnion.crosswalk.identify import (
     Answer,
@@ -20,7 +21,6 @@ from trunnion.crosswalk.identify import (
 )
 from trunnion.crosswalk.next_measurement import next_measurement
 from trunnion.crosswalk.readings import Chain, all_chains
-from trunnion.crosswalk.wrong_readings import right_angle_rotations
 from trunnion.errors import AttitudeError
 
 NOISE = np.radians(0.1)

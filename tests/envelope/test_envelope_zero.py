@@ -5,6 +5,7 @@ import pytest
 from scipy.optimize import minimize
 from scipy.spatial.transform import Rotation
 
+from trunnion.attitude.right_angles import right_angle_rotations
 from trunnion.attitude.rotations import about, rotation_angle
 from trunnion.envelope.farthest import farthest_line, line_margin
 from trunnion.envelope.margins import lock_margin
@@ -13,7 +14,6 @@ from trunnion.envelope.zero import (
     Side,
     best_right_angle_zero,
     best_zero,
-    right_angle_rotations,
     rule_of_thumb,
     sampled_zero_upper,
 )

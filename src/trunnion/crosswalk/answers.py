@@ -8,9 +8,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from trunnion.attitude.right_angles import right_angle_rotations
 from trunnion.attitude.rotations import matrix_from_quaternion, require_rotation, rotation_angle
 from trunnion.crosswalk.reference import ReferenceSet
-from trunnion.crosswalk.wrong_readings import ChainFamily, Rows, right_angle_rotations, single_readings
+from trunnion.crosswalk.wrong_readings import ChainFamily, Rows, single_readings
 from trunnion.errors import AttitudeError
 
 Array = NDArray[np.float64]

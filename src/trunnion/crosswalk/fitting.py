@@ -15,7 +15,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from trunnion.crosswalk.wrong_readings import right_angle_rotations
+from trunnion.attitude.right_angles import right_angle_rotations
 
 Array = NDArray[np.float64]
 

@@ -10,32 +10,17 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, replace
-from functools import cache
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from trunnion.attitude.conventions import Convention
+from trunnion.attitude.right_angles import right_angle_rotations
 from trunnion.attitude.rotations import matrix_from_quaternion
 from trunnion.attitude.words import vector_text
 from trunnion.crosswalk.readings import Chain, all_chains, chain_matrices
 
 Array = NDArray[np.float64]
-
-
-@cache
-def right_angle_rotations() -> tuple[Array, ...]:
-    """The 24 rotations (3, 3) that carry coordinate axes onto coordinate axes, identity first."""
-    import itertools
-
-    found = []
-    for order in itertools.permutations(range(3)):
-        for signs in itertools.product((1.0, -1.0), repeat=3):
-            matrix = np.zeros((3, 3))
-            matrix[range(3), order] = signs
-            if np.linalg.det(matrix) > 0:
-                found.append(matrix)
-    return tuple(sorted(found, key=lambda m: -float(np.trace(m))))
 
 
 @dataclass(frozen=True)

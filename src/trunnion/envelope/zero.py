@@ -19,6 +19,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from trunnion.attitude.conventions import Convention
+from trunnion.attitude.right_angles import right_angle_rotations
 from trunnion.attitude.rotations import about, rotation_angle
 from trunnion.envelope.farthest import facets, farthest_line, flat_normal, line_margin
 from trunnion.envelope.margins import lock_margin, ranges_of, spread_of
@@ -100,21 +101,6 @@ def best_right_angle_zero(region: Region, convention: Convention, side: Side) ->
     best = max(choice.margin.least.lo for choice in choices)
     choices = [replace(c, upper=best, gap=best - c.margin.least.lo) for c in choices]
     return sorted(choices, key=lambda c: (-round(c.margin.least.lo, 12), c.turn))
-
-
-def right_angle_rotations() -> list[Array]:
-    """The 24 rotations that permute the axes up to sign."""
-    found = []
-    for i in range(3):
-        for k in range(3):
-            for s in (1.0, -1.0):
-                for t in (1.0, -1.0):
-                    if i != k:
-                        rows = np.zeros((3, 3))
-                        rows[0, i], rows[1, k] = s, t
-                        rows[2] = np.cross(rows[0], rows[1])
-                        found.append(rows)
-    return found
 
 
 class _Problem:

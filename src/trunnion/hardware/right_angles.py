@@ -1,4 +1,4 @@
-"""The 24 right-angle mounts: the rotation group of the cube, built from permutations.
+"""The 24 right-angle mounts, in words, and the one nearest to a mount.
 
 Letters: `b` host (body), `s` sensor. A right-angle mount R_bs has one entry of plus or minus one in every
 row and column and determinant +1; 48 signed permutations exist, half of them mirror.
@@ -7,37 +7,13 @@ row and column and determinant +1; 48 signed permutations exist, half of them mi
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import cache
-from itertools import permutations, product
 
 import numpy as np
 
 from trunnion.attitude.frames import Frame
+from trunnion.attitude.right_angles import right_angle_mirrors, right_angle_rotations
 from trunnion.attitude.rotations import rotation_angle, rotation_vector
 from trunnion.hardware.vectors import Array
-
-
-@cache
-def _signed_permutations(handed: int) -> tuple[Array, ...]:
-    found = []
-    for order in permutations(range(3)):
-        for signs in product((1.0, -1.0), repeat=3):
-            M = np.zeros((3, 3))
-            M[list(order), range(3)] = signs
-            if round(float(np.linalg.det(M))) == handed:
-                M.setflags(write=False)
-                found.append(M)
-    return tuple(found)
-
-
-def right_angle_rotations() -> tuple[Array, ...]:
-    """The 24 proper signed permutation matrices (3, 3), the identity first."""
-    return tuple(sorted(_signed_permutations(1), key=lambda M: -float(np.trace(M))))
-
-
-def right_angle_mirrors() -> tuple[Array, ...]:
-    """The 24 signed permutation matrices of determinant -1: what exchanged or inverted channels look like."""
-    return tuple(sorted(_signed_permutations(-1), key=lambda M: -float(np.trace(M))))
 
 
 def axes_in_words(P: Array, host: Frame, sensor_axes: tuple[str, str, str] = ("x", "y", "z")) -> str:
@@ -91,3 +67,13 @@ def nearest_right_angle(
         axes_in_words(group[second], host, sensor_axes),
         float(away[second]),
     )
+
+
+__all__ = [
+    "NearestRightAngle",
+    "axes_in_words",
+    "nearest_right_angle",
+    "right_angle_mirrors",
+    "right_angle_rotations",
+    "turn_in_words",
+]
