@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 
 @dataclass(frozen=True)
@@ -45,6 +46,16 @@ class TrunnionError(Exception):
     def __init__(self, cause: str, *, remedy: str = "", place: Place | None = None) -> None:
         self.fault = Fault(cause, remedy, place or Place())
         super().__init__(str(self.fault))
+
+    def __reduce__(self) -> tuple[Any, ...]:
+        """Errors travel whole from one process to another."""
+        return _remade, (type(self), self.args, self.__dict__)
+
+
+def _remade(kind: type[TrunnionError], words: tuple[Any, ...], fields: dict[str, Any]) -> TrunnionError:
+    error = kind.__new__(kind, *words)
+    error.__dict__.update(fields)
+    return error
 
 
 class FaultsError(TrunnionError):

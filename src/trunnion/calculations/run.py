@@ -54,13 +54,15 @@ class Job:
 
 @dataclass(frozen=True)
 class Progress:
-    """Where a calculation is: cell `cell` of `of` (from 0), or over (`state` done or failed), after `elapsed` s."""
+    """Where a calculation is: cell `cell` of `of` (from 0), or over (`state` done or failed), after `elapsed` s; `note`
+    is what a long cell tells of itself."""
 
     calculation: str
     state: str
     cell: int = 0
     of: int = 0
     elapsed: float = 0.0
+    note: str = ""
 
 
 @dataclass(frozen=True)
@@ -151,11 +153,11 @@ class _Crew:
     def _one(self, worker: _Worker, job: Job) -> None:
         began = time.monotonic()
 
-        def progress(state: str, cell: int = 0, of: int = 0) -> None:
-            self._events.put(Progress(job.calculation, state, cell, of, time.monotonic() - began))
+        def progress(state: str, cell: int = 0, of: int = 0, note: str = "") -> None:
+            self._events.put(Progress(job.calculation, state, cell, of, time.monotonic() - began, note))
 
         progress("started")
-        outcome = worker.run(job, lambda event: progress("running", event["cell"], event["of"]))
+        outcome = worker.run(job, lambda event: progress("running", event["cell"], event["of"], event["note"]))
         progress("done" if outcome.done else "failed", outcome.cell or 0, outcome.of)
         self._events.put(outcome)
 
@@ -185,10 +187,15 @@ class _Worker:
             self._process.stdin.flush()  # type: ignore[union-attr]
         except OSError:
             return self._lost(job)
+        at: dict[str, Any] = {"cell": 0, "of": 0}
         for line in self._process.stdout:  # type: ignore[union-attr]
             event = json.loads(line)
             if event["event"] == "cell":
-                cell(event)
+                at = event
+                cell({**at, "note": ""})
+                continue
+            if event["event"] == "note":
+                cell({**at, "note": event["text"]})
                 continue
             kept = {name: value for name, value in event.items() if name in Outcome.__dataclass_fields__}
             return Outcome(done=event["event"] == "done", **kept)

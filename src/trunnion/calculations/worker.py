@@ -13,7 +13,7 @@ import shutil
 import sys
 import tempfile
 import threading
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from queue import SimpleQueue
@@ -25,8 +25,10 @@ from trunnion.calculations.writes import write_bytes
 from trunnion.errors import TrunnionError
 from trunnion.sheet.items import MIME
 from trunnion.sheet.parameters import INPUTS_VARIABLE
+from trunnion.sheet.sharing import PROGRESS_VARIABLE
 
 _QUOTED_LINES = 12
+_LOOK_EVERY = 0.5  # seconds between two looks at how far a cell is
 _MARKER = "papermill-error-cell-tag"  # cells papermill adds to a notebook that failed
 _current: Any = None  # the evidence of the running notebook, for the thread that watches the input
 
@@ -46,8 +48,13 @@ def _watch_input(stream: IO[bytes], jobs: SimpleQueue[dict[str, Any]]) -> None:
         jobs.put(json.loads(line))
     if _current is not None:
         _current.kill_kernel()
-    shutil.rmtree(Path(os.environ["IPYTHONDIR"]).parent, ignore_errors=True)  # the run's scratch folder
+    shutil.rmtree(_scratch(), ignore_errors=True)
     os._exit(0)
+
+
+def _scratch() -> Path:
+    """The scratch folder of the run, removed when it ends, however it ends."""
+    return Path(os.environ["IPYTHONDIR"]).parent
 
 
 def _serve(job: dict[str, Any], events: IO[str]) -> None:
@@ -55,9 +62,36 @@ def _serve(job: dict[str, Any], events: IO[str]) -> None:
         events.write(json.dumps({"event": event, "calculation": job["calculation"], **fields}) + "\n")
 
     try:
-        tell("done", **_run(job, lambda cell, of: tell("cell", cell=cell, of=of)))
+        with _followed(lambda text: tell("note", text=text)):
+            fields = _run(job, lambda cell, of: tell("cell", cell=cell, of=of))
+        tell("done", **fields)
     except Exception as err:
         tell("failed", **_failure(job, err))
+
+
+@contextmanager
+def _followed(tell: Callable[[str], None]) -> Iterator[None]:
+    """Pass on what a long cell tells of its progress; it stays out of the notebook."""
+    with tempfile.TemporaryDirectory(prefix="progress-", dir=_scratch()) as folder:
+        path, ended = Path(folder) / "told", threading.Event()
+
+        def follow() -> None:
+            last = ""
+            while not ended.wait(_LOOK_EVERY):
+                text = path.read_text(encoding="utf-8") if path.exists() else ""
+                if text and text != last:
+                    tell(text)
+                    last = text
+
+        thread = threading.Thread(target=follow, daemon=True)
+        os.environ[PROGRESS_VARIABLE] = str(path)
+        thread.start()
+        try:
+            yield
+        finally:
+            ended.set()
+            thread.join()
+            del os.environ[PROGRESS_VARIABLE]
 
 
 def _run(job: dict[str, Any], started: Any) -> dict[str, Any]:
@@ -86,7 +120,7 @@ def _inputs_elsewhere(files: dict[str, str]) -> Iterator[None]:
     if not files:
         yield
         return
-    with tempfile.TemporaryDirectory(prefix="trunnion-inputs-") as folder:
+    with tempfile.TemporaryDirectory(prefix="inputs-", dir=_scratch()) as folder:
         for name, origin in files.items():
             try:
                 os.symlink(origin, Path(folder) / name)

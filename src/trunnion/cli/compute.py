@@ -28,6 +28,7 @@ from trunnion.cli.exits import ExitCode
     metavar="PATH=VALUE",
     help="A trial value, as in 'requirements.R1.at least=25 deg'.",
 )
+@click.option("--scheduler", metavar="ADDRESS", help="Hand campaign runs to the Dask cluster at this address.")
 @click.option("--vary", metavar="PATH=VALUES", help="Sweep a value in trial runs: '10 deg .. 30 deg in 5', or a list.")
 def command(
     workbook: Path,
@@ -41,14 +42,17 @@ def command(
     trial: bool,
     values: tuple[str, ...],
     vary: str | None,
+    scheduler: str | None,
 ) -> ExitCode:
-    """Compute WORKBOOK: run every calculation that is out of date, judge the requirements, bind the package.
+    """Compute WORKBOOK: run what is out of date, judge the requirements, bind the package.
 
     Exit code 0 when every requirement that counts is met or has an approved deviation, 1 when one is not met or not
     shown, 2 when the spec is wrong or a calculation failed.
     """
     from trunnion.cli import computing
+    from trunnion.sheet import sharing
 
+    sharing.set_scheduler(scheduler)
     options: dict[str, Any] = {"output": output, "workers": jobs, "allow_local": allow_local_templates}
     look = computing.Look(as_json=as_json, quiet=quiet)
     if vary is not None:

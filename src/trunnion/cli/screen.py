@@ -161,7 +161,7 @@ def _running(rows: dict[str, tuple[Progress, float]]) -> Table:
         done = event.state in ("done", "failed")
         elapsed = event.elapsed if done else event.elapsed + time.monotonic() - told
         where = event.state if done else f"cell {event.cell + 1} of {event.of}" if event.of else "starting kernel"
-        table.add_row(event.calculation, where, f"{elapsed:.1f} s")
+        table.add_row(event.calculation, Text(f"{where}: {event.note}" if event.note else where), f"{elapsed:.1f} s")
     return table
 
 

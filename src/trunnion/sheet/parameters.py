@@ -60,9 +60,16 @@ def mount(plain: Mapping[str, Any]) -> Any:
 
 def open_table(plain: Mapping[str, Any]) -> Any:
     """Read the attitude table a plain statement describes, from the copied input file it names."""
-    from trunnion.tables import read_table, statement_from_plain
+    from trunnion.tables import read_table
+
+    return read_table(table_statement(plain), input_path(plain["table"]).parent)
+
+
+def table_statement(plain: Mapping[str, Any]) -> Any:
+    """The statement of a table's file from its plain keys (`table`, `columns`, `scalar`, …)."""
+    from trunnion.tables import statement_from_plain
 
     written = plain.get("convention")
     built = convention(written) if isinstance(written, Mapping) else None
     stated = {**plain, "convention": built.name} if built is not None else dict(plain)
-    return read_table(statement_from_plain(stated, built), input_path(plain["table"]).parent)
+    return statement_from_plain(stated, built)
