@@ -150,3 +150,17 @@ def issued(issued_once: Desk, tmp_path: Path) -> Desk:
     """A copy of the issued workbook."""
     shutil.copytree(issued_once.workbook.parent, tmp_path, dirs_exist_ok=True)
     return Desk(tmp_path / "miniature", issued_once.keys)
+
+
+@pytest.fixture(scope="session")
+def archived_once(issued_once: Desk, tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The folder with the archive of the issued workbook, folder and zip; copy it, do not write into it."""
+    folder = tmp_path_factory.mktemp("archive")
+    assert issued_once.run("archive", issued_once.workbook, "--key", issued_once.keys / "a1", "--into", folder) == 0
+    return folder
+
+
+@pytest.fixture
+def bag_folder(archived_once: Path, tmp_path: Path) -> Path:
+    """A copy of the archive's folder to be tampered with."""
+    return Path(shutil.copytree(archived_once / "MIN-001-A", tmp_path / "MIN-001-A"))

@@ -10,7 +10,8 @@ from __future__ import annotations
 import errno
 import json
 import os
-from collections.abc import Callable
+import shutil
+from collections.abc import Callable, Mapping
 from pathlib import Path
 from typing import Any
 
@@ -39,6 +40,30 @@ def write_bytes(path: Path, content: bytes) -> None:
     except OSError as err:
         temporary.unlink(missing_ok=True)
         raise store_error(err, path) from err
+
+
+def write_tree(folder: Path, files: Mapping[str, bytes]) -> None:
+    """Write a new folder with files by relative path, whole or not at all: under a temporary name, then renamed."""
+    temporary = folder.with_name(f".{folder.name}{TEMPORARY}{os.getpid()}")
+    shutil.rmtree(temporary, ignore_errors=True)
+    try:
+        for name, content in files.items():
+            path = temporary / name
+            path.parent.mkdir(parents=True, exist_ok=True)
+            _step("write", path)
+            with path.open("wb") as stream:
+                stream.write(content)
+                stream.flush()
+                os.fsync(stream.fileno())
+        for inner in sorted({(temporary / name).parent for name in files}):
+            sync_folder(inner)
+        _step("rename", folder)
+        temporary.rename(folder)
+        _step("sync folder", folder)
+        sync_folder(folder.parent)
+    except OSError as err:
+        shutil.rmtree(temporary, ignore_errors=True)
+        raise store_error(err, folder) from err
 
 
 def write_text(path: Path, text: str) -> None:
@@ -82,7 +107,10 @@ def remove(path: Path) -> None:
 def sweep(folder: Path) -> None:
     """Remove what a killed process left half-written in `folder` (the caller holds the lock)."""
     for leftover in folder.glob(f".*{TEMPORARY}*"):
-        remove(leftover)
+        if leftover.is_dir() and not leftover.is_symlink():
+            shutil.rmtree(leftover, ignore_errors=True)
+        else:
+            remove(leftover)
 
 
 def sync_folder(folder: Path) -> None:

@@ -26,12 +26,15 @@ class Entry:
     module: str = ""
 
 
-WORK, CHANGE, HAND_OVER, RECORD = "Work", "Change", "Hand over", "Record"
+WORK, DATA, CHANGE, HAND_OVER, RECORD = "Work", "Data", "Change", "Hand over", "Record"
 COMMANDS = (
     Entry("start", "Write a new workbook that computes as it stands.", WORK),
     Entry("readback", "Say the spec back in plain sentences; nothing is run.", WORK),
     Entry("compute", "Run what is out of date, judge it, bind the package.", WORK),
     Entry("templates", "List the templates: what each takes and records.", WORK),
+    Entry("inspect", "Say what attitude data a file holds.", DATA),
+    Entry("identify", "Find which convention a file's numbers are in.", DATA),
+    Entry("convert", "State a log in another convention, margins along the way.", DATA),
     Entry("schema", "Print the JSON Schema of workbook.yaml.", WORK),
     Entry("impact", "Say what a change touches and why; nothing is run.", CHANGE),
     Entry("compare", "Compare two revisions or folders, verdict flips first.", CHANGE),
@@ -42,6 +45,9 @@ COMMANDS = (
     Entry("sign", "Sign as prepared, checked or approved.", RECORD),
     Entry("status", "Who has signed what, what has fallen, what is missing.", RECORD),
     Entry("issue", "Freeze the revision, once it is signed.", RECORD),
+    Entry("archive", "Write the archive of an issued revision.", RECORD),
+    Entry("audit", "Check an archive: whole, signed, by the rules.", RECORD),
+    Entry("withdraw", "Sign a notice that a revision must not be used.", RECORD),
 )
 
 
@@ -75,7 +81,7 @@ class _Commands(click.Group):
 
     def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
         """One section for each thing people do."""
-        for group in (WORK, CHANGE, HAND_OVER, RECORD):
+        for group in (WORK, DATA, CHANGE, HAND_OVER, RECORD):
             rows = [(entry.name, entry.summary) for entry in COMMANDS if entry.group == group]
             if rows:
                 with formatter.section(group):
