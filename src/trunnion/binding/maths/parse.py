@@ -274,7 +274,7 @@ class _Parser:
         if name in s.LIMIT_FUNCTIONS:
             return t.Operator(s.LIMIT_FUNCTIONS[name], limits=True)
         if name in s.ACCENTS:
-            return t.Accent(self.argument(), name, s.ACCENTS[name])
+            return self.accent(name)
         if name in s.ALPHABETS:
             return self.alphabet(s.ALPHABETS[name])
         if name in s.TEXTS:
@@ -294,6 +294,14 @@ class _Parser:
                 s.REFUSED.get(name, _SUBSET),
             )
         return method(self)
+
+    def accent(self, name: str) -> t.Node:
+        body = self.argument()
+        if name == "widetilde":  # browsers do not widen it, and a small one over the middle would mislead
+            if len(body.items) != 1 or not isinstance(body.items[0], t.Letter):
+                raise FormulaError("\\widetilde over more than one letter", "use \\overline{…}")
+            name = "tilde"
+        return t.Accent(body, name, s.ACCENTS[name])
 
     def alphabet(self, variant: str) -> t.Node:
         before, self.variant = self.variant, variant
