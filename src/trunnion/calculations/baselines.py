@@ -109,7 +109,7 @@ def read_json(path: Path) -> dict[str, Any]:
         raise StoreError(
             f"{path} can't be read ({err.strerror})", remedy="compute or issue the workbook again"
         ) from err
-    except ValueError as err:
+    except (ValueError, RecursionError) as err:
         raise StoreError(f"{path} is damaged: {err}", remedy="take it from version control, or compute again") from err
     if not isinstance(value, dict):
         raise StoreError(f"{path} is no JSON object", remedy="take it from version control, or compute again")

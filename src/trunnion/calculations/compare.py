@@ -7,8 +7,9 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
-from trunnion.calculations.baselines import RESULTS, issued_folder, read_json
+from trunnion.calculations.baselines import RESULTS, issued_folder
 from trunnion.calculations.reasons import value_text
+from trunnion.calculations.results_file import read_results
 from trunnion.errors import StoreError
 
 NUMBERS = ("lo", "hi", "attained")
@@ -146,7 +147,7 @@ def find_results(what: str | Path, workbook: Path | None = None) -> Path:
 
 def compare(old: Path, new: Path) -> Comparison:
     """Compare two `results.json` files."""
-    return compare_results(read_json(old), read_json(new), str(old.parent), str(new.parent))
+    return compare_results(read_results(old), read_results(new), str(old.parent), str(new.parent))
 
 
 def compare_results(old: Mapping[str, Any], new: Mapping[str, Any], old_name: str, new_name: str) -> Comparison:

@@ -33,7 +33,9 @@ def read_notebook(path: Path, *, error: type[TemplateError] | type[StoreError] =
         raise error(f"{path} can't be read ({err.strerror})", remedy="look at its rights") from err
     except ValueError as err:
         raise error(f"{path} is no notebook: {err}", remedy="open it in Jupyter and save it again") from err
-    if not _is_notebook(notebook):
+    except RecursionError as err:
+        raise error(f"{path} is nested too deeply to be a notebook", remedy="take it from version control") from err
+    if not is_notebook(notebook):
         raise error(f"{path} is no version 4 notebook", remedy="open it in Jupyter and save it as nbformat 4")
     for cell in notebook["cells"]:
         cell["source"] = joined(cell.get("source", ""))
@@ -62,15 +64,45 @@ def items(notebook: Mapping[str, Any]) -> Iterator[tuple[dict[str, Any], dict[st
         if SHEET_TAG in tags(cell):
             continue
         for output in cell.get("outputs", []):
-            payload = output.get("data", {}).get(MIME)
+            data = output.get("data")
+            payload = data.get(MIME) if isinstance(data, dict) else None
             if isinstance(payload, dict):
                 yield payload, cell
 
 
-def _is_notebook(value: Any) -> bool:
+def is_notebook(value: Any) -> bool:
+    """Whether a JSON value has the shape of a version 4 notebook, as far as reading records relies on it."""
     return (
         isinstance(value, dict)
         and value.get("nbformat") == 4
         and isinstance(value.get("cells"), list)
-        and all(isinstance(cell, dict) and "cell_type" in cell for cell in value["cells"])
+        and isinstance(value.get("metadata", {}), dict)
+        and all(_is_cell(cell) for cell in value["cells"])
     )
+
+
+def _is_cell(cell: Any) -> bool:
+    """Whether a cell has the shape the rest relies on; nbformat's own schema is applied where cells are made."""
+    if not isinstance(cell, dict) or not isinstance(cell.get("cell_type"), str):
+        return False
+    source, metadata, outputs = cell.get("source", ""), cell.get("metadata", {}), cell.get("outputs", [])
+    tags = metadata.get("tags", []) if isinstance(metadata, dict) else None
+    return (
+        _is_text(source)
+        and isinstance(tags, list)
+        and all(isinstance(tag, str) for tag in tags)
+        and isinstance(outputs, list)
+        and all(isinstance(o, dict) and isinstance(o.get("output_type"), str) and _is_output(o) for o in outputs)
+    )
+
+
+def _is_output(output: dict[str, Any]) -> bool:
+    data = output.get("data", {})
+    if not isinstance(data, dict) or not isinstance(output.get("name", ""), str):
+        return False
+    shown = [value for mime, value in data.items() if not mime.endswith("json")]
+    return all(_is_text(text) for text in (output.get("text", ""), *shown))
+
+
+def _is_text(value: Any) -> bool:
+    return isinstance(value, str) or (isinstance(value, list) and all(isinstance(line, str) for line in value))

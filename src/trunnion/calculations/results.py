@@ -2,16 +2,26 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any
 
 from trunnion.attitude.basis import Basis
 from trunnion.calculations.digest import sha256
-from trunnion.calculations.notebooks import items, joined
+from trunnion.calculations.notebooks import is_notebook, items, joined
 from trunnion.calculations.verdicts import Bounds
 from trunnion.errors import StoreError
 from trunnion.sheet.items import MIME
+
+_NEEDED = {
+    "check": ("id", "agrees"),
+    "finding": ("id", "text", "against"),
+    "assumption": ("id", "text"),
+    "figure": ("id",),
+    "statement": ("paragraphs",),
+    "inputs": ("rows",),
+}
 
 
 @dataclass(frozen=True)
@@ -71,9 +81,18 @@ class Recorded:
 
 def recorded(calculation: str, body: Mapping[str, Any]) -> Recorded:
     """Collect the items of a body; StoreError for two results under one id or a payload that is none."""
+    if not is_notebook(body):
+        raise StoreError(f"the body of {calculation} is no notebook", remedy="compute it again")
     kinds: dict[str, list[dict[str, Any]]] = {}
     for payload, _ in items(body):
-        kinds.setdefault(str(payload.get("kind")), []).append(payload)
+        kind = str(payload.get("kind"))
+        lacking = [name for name in _NEEDED.get(kind, ()) if name not in payload]
+        if lacking or (kind == "inputs" and not isinstance(payload["rows"], list)):
+            raise StoreError(
+                f"{calculation} records a {kind} without its {', '.join(lacking) or 'rows'}",
+                remedy="record with the functions of trunnion.sheet",
+            )
+        kinds.setdefault(kind, []).append(payload)
     results = tuple(result_from_plain(calculation, payload) for payload in kinds.get("result", []))
     _require_different_ids(calculation, results)
     return Recorded(
@@ -91,22 +110,37 @@ def recorded(calculation: str, body: Mapping[str, Any]) -> Recorded:
 def result_from_plain(calculation: str, payload: Mapping[str, Any]) -> Result:
     """A result from its payload or from `results.json`; StoreError names what is missing."""
     try:
+        lo, hi, attained = (_number(payload[name]) for name in ("lo", "hi", "attained"))
         return Result(
             calculation=calculation,
-            id=str(payload["id"]),
-            quantity=str(payload["quantity"]),
-            of=str(payload["of"]),
-            over=payload["over"],
-            bounds=Bounds(payload["lo"], payload["hi"], payload["attained"], Basis(payload["basis"])),
-            unit=str(payload["unit"]),
+            id=_text(payload["id"]),
+            quantity=_text(payload["quantity"]),
+            of=_text(payload["of"]),
+            over=None if payload["over"] is None else _text(payload["over"]),
+            bounds=Bounds(lo, hi, attained, Basis(_text(payload["basis"]))),
+            unit=_text(payload["unit"]),
             witness=payload.get("witness"),
             note=str(payload.get("note", "")),
         )
-    except (KeyError, ValueError) as err:
+    except (KeyError, ValueError, OverflowError) as err:
         raise StoreError(
             f"{calculation} records a result that is none ({type(err).__name__}: {err})",
             remedy="record results with sheet.record(…)",
         ) from err
+
+
+def _text(value: Any) -> str:
+    if not isinstance(value, str):
+        raise ValueError(f"{value!r:.40} is no text")
+    return value
+
+
+def _number(value: Any) -> float | None:
+    if value is None:
+        return None
+    if isinstance(value, bool) or not isinstance(value, int | float) or not math.isfinite(value):
+        raise ValueError(f"{value!r:.40} is no finite number")
+    return float(value)
 
 
 def select(results: Iterable[Result], *, quantity: str, of: str, over: str | None) -> list[Result]:
@@ -127,7 +161,7 @@ def _figures(body: Mapping[str, Any]) -> Iterator[dict[str, str]]:
                 yield {
                     "id": str(payload["id"]),
                     "caption": str(payload.get("caption", "")),
-                    "sha256": sha256(svg.encode("utf-8")),
+                    "sha256": sha256(svg.encode("utf-8", "replace")),
                 }
 
 
