@@ -42,7 +42,7 @@ class ChainBox:
     def place(self, angles: Array) -> str:
         """The angles (3,) as people state them."""
         stated = angles * np.array(self.signs) + np.array(self.offsets)
-        return ", ".join(f"{name} {np.degrees(value):.6g} deg" for name, value in zip(self.names, stated, strict=True))
+        return ", ".join(f"{name} {_plain(value)} deg" for name, value in zip(self.names, stated, strict=True))
 
 
 def box_chain(box: Box) -> ChainBox:
@@ -100,3 +100,8 @@ def chain_matrices(chain: ChainBox, angles: Array) -> Array:
 
 def _places(chain: ChainBox, angles: Array) -> list[str]:
     return [chain.place(column) for column in angles.T]
+
+
+def _plain(angle: float) -> str:
+    """An angle (rad) in degrees without the dust of rounding: six digits, nothing below a billionth of a degree."""
+    return f"{round(float(np.degrees(angle)), 9) + 0.0:.6g}"

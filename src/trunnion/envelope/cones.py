@@ -83,7 +83,7 @@ def rolled_cone_box(cone: Cone) -> ChainBox:
 
 def _place(cone: Cone, R: Array) -> str:
     held = angle_between(cone.reference_axis, R @ cone.body_axis)
-    return f"held axis {np.degrees(held):.6g} deg from the cone's direction"
+    return f"held axis {round(float(np.degrees(held)), 9) + 0.0:.6g} deg from the cone's direction"
 
 
 def _any_perpendicular(d: Array) -> Array:
