@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import datetime
 import json
+from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -52,11 +53,32 @@ def package_input(computed: Computed, *, status: str = "draft", date: str = "") 
         revisions=tuple(p.Revision(r.revision, r.date or "", r.reason) for r in workbook.revisions),
         inputs=tuple(_inputs(computed)),
         changes=tuple(p.Change(*row) for row in changes_since_superseded(computed)),
+        statements=tuple(_statements(computed)),
         summary=_summary(computed),
         cautions=(*signed.cautions, *_cautions(computed)),
         environment=tuple(_environment(computed)),
         spec_text=workbook.text,
     )
+
+
+def _statements(computed: Computed) -> Iterator[p.StatementPage]:
+    """One page a convention of the workbook, to be handed over on its own."""
+    from trunnion.sheet.convention_page import page_drawing, stated_page
+    from trunnion.spec.build import convention_from_plain
+    from trunnion.spec.plain import plain_part
+
+    workbook = computed.workbook
+    derived = {
+        calculation.parameters.get("convention"): calculation.id
+        for calculation in workbook.calculations
+        if calculation.template == "convention-derivation"
+    }
+    for name in workbook.names("conventions"):
+        plain = plain_part(workbook, "conventions", name)
+        page = stated_page(plain)
+        svg, alt, caption = page_drawing(page, convention_from_plain(plain))
+        parts = tuple((part.title, part.paragraphs) for part in page.parts)
+        yield p.StatementPage(name, page.title, (), derived.get(name, ""), parts, svg, alt, caption)
 
 
 def changes_since_superseded(computed: Computed) -> list[tuple[str, str, str, str]]:
@@ -117,9 +139,10 @@ def _package_key(computed: Computed, pdf: bool, status: str, date: str) -> str:
 
 
 def binder_digest() -> str:
-    """SHA-256 over the source files of the binder, of the records and of this room."""
+    """SHA-256 over all files the package's look comes from: binder, records, this room, fonts and characters."""
     package = Path(__file__).parents[1]
-    files = [path for room in ("binding", "records", "cli") for path in (package / room).rglob("*.py")]
+    rooms = [path for room in ("binding", "records", "cli", "fonts") for path in (package / room).rglob("*")]
+    files = sorted(path for path in [*rooms, package / "glyphs.py"] if path.is_file() and path.suffix != ".pyc")
     return sha256_json({path.relative_to(package).as_posix(): sha256(path.read_bytes()) for path in files})
 
 
