@@ -12,6 +12,7 @@ from trunnion.binding.calculation import Registry, calculation_part, plain, sign
 from trunnion.binding.glossary import CONTENTS_NOTE, terms, usual_contents
 from trunnion.binding.house import House
 from trunnion.binding.markdown import read_line
+from trunnion.binding.notebook import clean_svg
 from trunnion.binding.package import (
     SHEET_TAG,
     Evidence,
@@ -19,11 +20,13 @@ from trunnion.binding.package import (
     RequirementRow,
     Sheet,
     SheetState,
+    StatementPage,
     Verdict,
 )
 from trunnion.binding.references import resolve
 from trunnion.binding.words import Words
 from trunnion.errors import BindingError, Fault, Place
+from trunnion.glyphs import visible_text
 
 ROW_CLASS = {Verdict.MEETS: "v-meets", Verdict.DOES_NOT_MEET: "v-fails", Verdict.NOT_SHOWN: "v-unshown"}
 
@@ -361,8 +364,14 @@ class _Composer:
         for page in self.package.statements:
             blocks.append(b.Heading(2, b.line(page.title), f"statement/{page.id}"))
             blocks += [b.Paragraph(self.prose(text, page.id)) for text in page.paragraphs]
+            for title, paragraphs in page.parts:
+                blocks.append(b.Heading(3, b.line(title)))
+                blocks += [b.Paragraph(self.prose(text, page.id)) for text in paragraphs]
+            if page.drawing:
+                blocks.append(_drawing(page))
             if page.calculation:
-                blocks.append(b.Paragraph((b.Link(page.calculation, b.line(page.calculation)),)))
+                way = (*b.line(f"{self.words('Calculation')} "), b.Link(page.calculation, b.line(page.calculation)))
+                blocks.append(b.Paragraph(way))
         return b.Part("statements", self.words("Convention statements"), tuple(blocks), number=self.numbered())
 
     def changes(self) -> b.Part | None:
@@ -472,3 +481,9 @@ def _attachment(sheet: Sheet) -> b.Attachment:
         text = json.dumps({**(sheet.notebook or {}), "cells": kept}, sort_keys=True, ensure_ascii=False, indent=1)
         data = (text + "\n").encode("utf-8")
     return b.Attachment(f"{sheet.id}-{sheet.template}.ipynb", data, f"{sheet.id} {sheet.title}")
+
+
+def _drawing(page: StatementPage) -> b.Figure:
+    """The drawing of a statement page, made safe like any picture."""
+    content = clean_svg(visible_text(page.drawing))
+    return b.Figure("image/svg+xml", content, page.drawing_alt, b.line(page.drawing_caption))

@@ -199,12 +199,19 @@ class Change:
 
 @dataclass(frozen=True)
 class StatementPage:
-    """A page of prose to hand over on its own (a convention statement). Paragraphs may hold `$…$`."""
+    """A page of prose to hand over on its own (a convention statement). Paragraphs may hold `$…$`.
+
+    `parts` are further headings with their paragraphs; `drawing` is SVG text, with its alternative text and caption.
+    """
 
     id: str
     title: str
     paragraphs: tuple[str, ...]
     calculation: str = ""
+    parts: tuple[tuple[str, tuple[str, ...]], ...] = ()
+    drawing: str = ""
+    drawing_alt: str = ""
+    drawing_caption: str = ""
 
 
 @dataclass(frozen=True)

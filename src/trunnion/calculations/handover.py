@@ -30,12 +30,13 @@ def convention_of(workbook: Any, name: str) -> Convention:
 
 def hand_over(workbook: Any, name: str, folder: Path) -> list[Path]:
     """Write the hand-over kit of one convention into `folder`: what was written, in order."""
+    from trunnion.sheet.convention_page import stated_page
+    from trunnion.spec.plain import plain_part
     from trunnion.symbolic.codegen import codegen
-    from trunnion.symbolic.statement import statement
 
     convention = convention_of(workbook, name)
     reference = reference_set(convention)
-    words = statement(convention)
+    words = stated_page(plain_part(workbook, "conventions", name))
     lines = words.paragraphs()
     rows = all_rows(reference)
     files = {

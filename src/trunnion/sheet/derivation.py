@@ -10,12 +10,14 @@ import numpy as np
 
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.words import degrees_text, number_text, singular_attitudes
-from trunnion.figures import charts, drawings
+from trunnion.figures import charts
 from trunnion.sheet import display, parameters
+from trunnion.sheet.convention_page import page_drawing, stated_page
 from trunnion.sheet.describe import convention_rows
 from trunnion.symbolic.checking import confirmation, independent_check
 from trunnion.symbolic.derivation import Derivation, derive
-from trunnion.symbolic.statement import ConventionStatement, statement
+from trunnion.symbolic.proofs import Proof
+from trunnion.symbolic.statement import ConventionStatement
 from trunnion.symbolic.steps import Step
 
 # The derivation's own sections, by the part of the notebook that shows them.
@@ -44,7 +46,7 @@ class ConventionDerivation:
     @cached_property
     def statement(self) -> ConventionStatement:
         """The convention in words, for the interface document."""
-        return statement(self.convention)
+        return stated_page(self._plain)
 
     def show_inputs(self) -> None:
         """The convention as the injected parameters state it."""
@@ -63,15 +65,8 @@ class ConventionDerivation:
 
     def show_turns(self) -> None:
         """The body axes before and after each turn, and the table of symbols."""
-        reference, body = self.convention.reference, self.convention.body
-        display.figure(
-            "fig:turns",
-            drawings.turns_drawing(
-                self.statement.stages, body.axes, self.statement.stage_captions, up=drawings.upward(reference.axes)
-            ),
-            caption=f"The axes of {body.name} at zero and after each turn of {self.convention.name}",
-            alt="Four drawings of the body axes: " + "; ".join(self.statement.stage_captions),
-        )
+        svg, alt, caption = page_drawing(self.statement, self.convention)
+        display.figure("fig:turns", svg, caption=caption, alt=alt)
         display.table(
             "tbl:notation",
             ["symbol", "means"],
@@ -158,6 +153,25 @@ class ConventionDerivation:
             align="lrrr",
         )
 
+    def show_proofs(self) -> None:
+        """Every identity shown above with the way it was proven and the largest difference to fifty digits."""
+        display.table(
+            "tbl:proofs",
+            ["identity", "exact", "points", "largest difference"],
+            [
+                [
+                    step.title,
+                    step.proof.exact,
+                    str(step.proof.points),
+                    f"{step.proof.largest} ({step.proof.digits} digits)",
+                ]
+                for step in self.derivation.steps
+                if step.proof is not None
+            ],
+            caption="How each identity of this derivation was proven",
+            align="llrl",
+        )
+
     def show_checks(self) -> None:
         """The derived formulas against scipy, at ordinary attitudes and at both singular ones."""
         for number, row in enumerate(independent_check(self.derivation), start=1):
@@ -211,8 +225,12 @@ class ConventionDerivation:
 
 
 def _show_step(step: Step) -> None:
-    """One step: its words, its formula, its proof."""
-    proof = f" Proof: {step.proof}." if step.proof is not None else ""
-    display.statement(f"step-{step.id}", step.prose + proof, title=step.title)
+    """One step: its words under its title, its formula, and below it in one quiet line that it was proven."""
+    display.statement(f"step-{step.id}", step.prose, title=step.title)
     if step.latex:
-        display.equation(f"eq:{step.id}", step.latex, step.title)
+        display.equation(f"eq:{step.id}", step.latex, _quiet(step.proof))
+
+
+def _quiet(proof: Proof | None) -> str:
+    """The proof of a step in a few words: `exact, and to 50 digits at 3 points`."""
+    return "" if proof is None else f"Proven exactly, and to {proof.digits} digits at {proof.points} random points."

@@ -16,7 +16,7 @@ import numpy as np
 from trunnion.attitude import words
 from trunnion.attitude.conventions import Convention
 from trunnion.spec import parts
-from trunnion.spec.parts.frames import GridNorth, MagneticNorth, WanderNorth
+from trunnion.spec.frame_words import carried_words, north_words, text_words
 from trunnion.spec.resolve import Resolver
 from trunnion.spec.standards import STANDARDS
 from trunnion.spec.values import Range
@@ -69,32 +69,15 @@ def _document(workbook: Workbook) -> Iterator[str]:
 def _frames(workbook: Workbook) -> Iterator[str]:
     for name, frame in workbook.frames.items():
         x, y, z = frame.axes
-        yield f"Frame {name}: x is {x}, y is {y}, z is {z}.{_north(frame.north)}{_carried(frame.carried)}"
+        said = (f"Frame {name}: x is {x}, y is {y}, z is {z}.", north_words(frame.north), carried_words(frame.carried))
+        yield " ".join(sentence for sentence in said if sentence)
         if frame.handed == "left":
             yield f"Frame {name} is left-handed; it is used only through its right-handed partner {frame.paired_with}."
-        for what, text in (("origin", frame.origin), ("lever arm", frame.lever_arm)):
-            if text:
-                yield f"Its {what} is {text} (carried as text: only attitude is computed)."
+        yield from text_words(frame)
     for name, link in workbook.links.items():
         by = "a constant rotation" if link.constant is not None else link.mount or link.attitude
         late = f", its time stamps off by {link.time_offset.text}" if link.time_offset else ""
         yield f"Link {name}: {link.of} is carried by {link.in_} through {by}{late}."
-
-
-def _north(north: Any) -> str:
-    if isinstance(north, MagneticNorth):
-        return f" North is magnetic, by {north.magnetic} for {north.date}."
-    if isinstance(north, GridNorth):
-        return f" North is that of grid {north.grid}; grid north lies {north.convergence.text} east of true north."
-    if isinstance(north, WanderNorth):
-        return f" Its azimuth wanders: {north.wander}."
-    return " North is true north." if north else ""
-
-
-def _carried(carried: str | None) -> str:
-    if carried is None:
-        return ""
-    return " It travels along." if carried == "along" else " It is fixed at a point."
 
 
 # --- conventions ---------------------------------------------------------------------------------------------------
