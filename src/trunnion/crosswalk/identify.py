@@ -7,6 +7,7 @@ Equal functions are never listed as separate findings: each finding carries all 
 from __future__ import annotations
 
 import enum
+from collections.abc import Sequence as Many
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -14,6 +15,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from trunnion.attitude.rotations import matrix_from_quaternion, require_rotation
 from trunnion.attitude.sequences import Sequence
+from trunnion.attitude.words import listed
 from trunnion.crosswalk.fitting import FEWEST_TO_TRIM, KEPT_SHARE, Constants, Fitted, fit, scores
 from trunnion.crosswalk.readings import COLUMN_ORDERS, Chain, all_chains, chain_matrices
 from trunnion.errors import AttitudeError
@@ -68,6 +70,7 @@ class Finding:
 class Identification:
     """The answer, the findings that fit, the best that does not, the noise (rad per axis), outlier rows, reasons.
 
+    second_best: where none fits, the candidate after the best.
     gap: how many times worse the next candidate is than the best.
     """
 
@@ -80,6 +83,7 @@ class Identification:
     outliers: tuple[int, ...]
     reasons: tuple[str, ...]
     tried: int
+    second_best: Finding | None = None
 
     @property
     def gap(self) -> float:
@@ -130,7 +134,7 @@ def identify_angles(
 
 
 def identify_attitudes(
-    readings: list[tuple[str, ArrayLike]],
+    readings: Many[tuple[str, ArrayLike]],
     truth: ArrayLike,
     *,
     constants: Constants = Constants.NONE,
@@ -278,6 +282,7 @@ def decide(
         _outliers(findings[0], limit),
         (),
         tried,
+        rest[1] if not fits and len(rest) > 1 else None,
     )
 
 
@@ -314,14 +319,14 @@ def poor_data(written: Array, R: Array, names: tuple[str, str, str]) -> list[str
         reasons.append("there is one sample only")
     still = [name for name, move in zip(names, moves, strict=True) if not move]
     if len(written) > 1 and still:
-        reasons.append(f"{' and '.join(still)} never change{'s' if len(still) == 1 else ''}")
+        reasons.append(f"{listed(still)} never change{'s' if len(still) == 1 else ''}")
     zero = [name for name, column in zip(names, written.T, strict=True) if not column.any()]
     if zero:
-        reasons.append(f"{' and '.join(zero)} {'is' if len(zero) == 1 else 'are'} always zero")
+        reasons.append(f"{listed(zero)} {'is' if len(zero) == 1 else 'are'} always zero")
     for i, k in ((0, 1), (1, 2), (0, 2)):
-        if np.allclose(np.abs(written[:, i]), np.abs(written[:, k]), rtol=0, atol=1e-9):
+        if written[:, i].any() and np.allclose(np.abs(written[:, i]), np.abs(written[:, k]), rtol=0, atol=1e-9):
             reasons.append(f"{names[i]} and {names[k]} are equal in size in every sample")
-    if len(written) > 1 and np.all((np.abs(written) > 1e-9).sum(axis=1) <= 1):
+    if np.all((np.abs(written) > 1e-9).sum(axis=1) <= 1):
         reasons.append("only one angle differs from zero at a time, which never shows the order of the turns")
     down = R[:, 2, :]
     if len(R) > 1 and np.ptp(down, axis=0).max() < 1e-6:

@@ -359,3 +359,25 @@ _INSPECTORS: dict[str, Callable[[Inspection, Limits], None]] = {
     "tum": _inspect_trajectory,
     "kitti": _inspect_trajectory,
 }
+
+
+def plain_of(report: Inspection) -> dict[str, object]:
+    """The report as JSON values."""
+    return {
+        "file": report.path.name,
+        "format": report.format,
+        "size": report.size,
+        "sha256": report.sha256,
+        "damage": list(report.troubles),
+        "remarks": list(report.remarks),
+        "series": [
+            {
+                "name": series.name,
+                "rows": series.rows,
+                "columns": {name: series.span(name) for name in series.columns},
+                "found": [{"what": f.what, "columns": list(f.columns), "ground": f.ground} for f in series.found],
+            }
+            for series in report.series
+        ],
+        "spec": list(report.spec_lines),
+    }

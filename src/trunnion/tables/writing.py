@@ -103,12 +103,16 @@ def convention_statement(convention: Convention) -> dict[str, Any]:
         "offsets deg": np.degrees(convention.offsets).tolist(),
         "constant on the reference side": convention.left.tolist(),
         "constant on the body side": convention.right.tolist(),
-        "in words": [
-            words.zero_sentence(convention),
-            *words.turn_sentences(convention),
-            words.mapping_sentence(convention),
-            words.range_sentence(convention),
-        ],
+        "in words": list(
+            dict.fromkeys(
+                [
+                    words.zero_sentence(convention),
+                    *words.turn_sentences(convention),
+                    words.mapping_sentence(convention),
+                    words.range_sentence(convention),
+                ]
+            )
+        ),
     }
 
 
