@@ -17,8 +17,8 @@ from trunnion.envelope.axis_dispersion import (
 )
 from trunnion.envelope.both_sides import best_zero_both_sides
 from trunnion.envelope.constrained import Constrained, constrained_clearance, constrained_margin
-from trunnion.envelope.margins import direction_clearance, lock_margin
-from trunnion.envelope.regions import Box, Cone, Dispersed, Poses
+from trunnion.envelope.margins import direction_clearance, entry_margin_table, lock_margin
+from trunnion.envelope.regions import Box, Cone, Dispersed, Mounted, Poses, Union
 from trunnion.envelope.sampling import sample_region
 from trunnion.envelope.zero import Side, best_zero
 from trunnion.errors import RegionError
@@ -198,3 +198,32 @@ def test_clearance_of_constrained_agrees_with_the_cone_alone():
     assert bracket.least.hi >= exact.least.lo - 1e-9
     assert bracket.largest.hi >= exact.largest.lo
     assert bracket.largest.lo <= exact.largest.hi + 1e-9
+
+
+def test_open_parts_inside_unions_and_balls(make_convention):
+    """A bracketed region may be a phase, be dispersed and be mounted like any other; all routes agree."""
+    convention = make_convention("3-1-2")
+    inner = Constrained(Cone([0, 0, 1], [0, 0, 1], 0.0, d(15.0)), (Cone([0, 1, 0], [0.3, 0.8, 0.2], 0.0, d(60.0)),))
+    alone, spread = constrained_margin(inner, convention), lock_margin(inner, convention)
+    assert spread.least.lo == pytest.approx(alone.least.lo, abs=d(0.03))
+    assert spread.largest.hi == pytest.approx(alone.largest.hi, abs=d(0.03))
+    ball = lock_margin(Dispersed(inner, d(2.0)), convention)
+    assert ball.least.lo == pytest.approx(spread.least.lo - d(2.0), abs=1e-12)
+    other = AxisDispersion(Cone([1, 0, 0], [1, 0, 0], 0.0, d(5.0)), np.eye(3)[1:2], np.array([d(3.0)]))
+    both = lock_margin(Union({"near": inner, "far": other}), convention).least
+    assert both.lo == min(spread.least.lo, lock_margin(other, convention).least.lo)
+    turned = lock_margin(Mounted(inner, np.eye(3)[[1, 0, 2]] * np.array([[1], [-1], [1]])), convention)
+    assert turned.least.hi - turned.least.lo <= d(0.05)
+    assert entry_margin_table(other).least.shape == (3, 3)
+
+
+def test_samples_of_open_parts_keep_their_limits():
+    inner = Constrained(Cone([0, 0, 1], [0, 0, 1], 0.0, d(15.0)), (Cone([0, 1, 0], [0, 1, 0], d(10.0), d(60.0)),))
+    held = sample_region(inner, 2048).matrices[:, 1, 1]
+    assert len(held) >= 200
+    assert (held <= np.cos(d(10.0)) + 1e-12).all()
+    assert (held >= np.cos(d(60.0)) - 1e-12).all()
+    nodding = AxisDispersion(Poses(np.eye(3)[None]), np.eye(3)[1:2], np.array([d(4.0)]))
+    turns = Rotation.from_matrix(sample_region(nodding, 64).matrices).as_rotvec(degrees=True)
+    assert np.abs(turns[:, [0, 2]]).max() < 1e-12
+    assert np.abs(turns[:, 1]).max() <= 4.0

@@ -2,6 +2,9 @@
 switched; the choice of zero; campaigns. numpy only when imported; scipy where a function needs it.
 """
 
+from trunnion.envelope.axis_dispersion import AxisDispersion, TurnSide
+from trunnion.envelope.clearance import Directions, clearance_along, clearance_to_any
+from trunnion.envelope.constrained import Constrained
 from trunnion.envelope.findings import region_findings
 from trunnion.envelope.margins import direction_clearance, entry_margin_table, lock_margin
 from trunnion.envelope.ranking import rank_sequences
@@ -25,9 +28,12 @@ from trunnion.envelope.zero import Side, best_right_angle_zero, best_zero
 
 __all__ = [
     "AngleRange",
+    "AxisDispersion",
     "Between",
     "Box",
     "Cone",
+    "Constrained",
+    "Directions",
     "Dispersed",
     "Extreme",
     "MarginRange",
@@ -38,10 +44,13 @@ __all__ = [
     "Roll",
     "Side",
     "Track",
+    "TurnSide",
     "Union",
     "Witness",
     "best_right_angle_zero",
     "best_zero",
+    "clearance_along",
+    "clearance_to_any",
     "direction_clearance",
     "entry_margin_table",
     "lock_margin",

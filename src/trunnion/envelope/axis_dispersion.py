@@ -11,6 +11,7 @@ from __future__ import annotations
 
 import enum
 from dataclasses import dataclass
+from functools import lru_cache
 from itertools import product
 
 import numpy as np
@@ -31,10 +32,16 @@ from trunnion.envelope.results import (
     Extreme,
     Spread,
     Witness,
+    spread_from,
     witness_angles,
 )
 from trunnion.envelope.vectors import Array
 from trunnion.errors import RegionError
+
+TOLERANCE = np.radians(0.05)
+"""rad; how narrow a bracket is asked for."""
+SECONDS = 10.0
+"""Time a pair may take before its bracket is stated as wide as it is."""
 
 
 class TurnSide(enum.Enum):
@@ -45,7 +52,7 @@ class TurnSide(enum.Enum):
 
 
 @dataclass(frozen=True, eq=False)
-class AxisDispersion:
+class AxisDispersion(Region):
     """`region` followed by turns limited along `axes` (K, 3) to `limits` (K,) rad either way; K at most 3."""
 
     region: Region
@@ -73,6 +80,18 @@ def axis_dispersed_margin(
     u, v = convention.lock_axes
     least = _bracket(region, u, v, LEAST_LINE, tolerance, 0.5 * seconds)
     return AngleRange(least, _bracket(region, u, v, LARGEST_LINE, tolerance, 0.5 * seconds))
+
+
+def axis_dispersed_spread(region: AxisDispersion, u: Array, v: Array) -> Spread:
+    """The four extremes of M pairs u, v (3, M), each bracketed as in `axis_dispersed_margin`."""
+    return spread_from([_pair_extremes(region, tuple(u[:, m]), tuple(v[:, m])) for m in range(u.shape[1])])
+
+
+@lru_cache(maxsize=256)
+def _pair_extremes(region: AxisDispersion, u: tuple[float, ...], v: tuple[float, ...]) -> tuple[Extreme, ...]:
+    """The four extremes of one pair; a sweep asks for the same pair several times."""
+    line, body = np.array(u), np.array(v)
+    return tuple(_bracket(region, line, body, which, TOLERANCE, 0.25 * SECONDS) for which in range(4))
 
 
 def axis_dispersed_clearance(

@@ -12,6 +12,7 @@ from __future__ import annotations
 import time
 from collections.abc import Callable
 from dataclasses import dataclass, replace
+from functools import lru_cache
 from itertools import combinations
 from typing import Any
 
@@ -23,18 +24,22 @@ from trunnion.attitude.conventions import Convention
 from trunnion.envelope.branching import Bounds, Bracket, Cells, least_value
 from trunnion.envelope.chains import ChainBox, box_chain, chain_matrices
 from trunnion.envelope.cones import rolled_cone_box
-from trunnion.envelope.regions import Box, Cone, Roll, as_pairs
-from trunnion.envelope.results import AngleRange, Extreme, Witness
+from trunnion.envelope.regions import Box, Cone, Region, Roll, as_pairs
+from trunnion.envelope.results import AngleRange, Extreme, Spread, Witness, spread_from
 from trunnion.envelope.vectors import Array, cross, dot, turned
 from trunnion.errors import RegionError
 
 _ROUNDING = 1e-13
+TOLERANCE = np.radians(0.02)
+"""rad; how narrow a bracket is asked for."""
+SECONDS = 10.0
+"""Time a pair may take before its bracket is stated as wide as it is."""
 FEASIBLE = 1e-9
 """rad; an attitude this close to keeping a constraint is taken to keep it (said with every such result)."""
 
 
 @dataclass(frozen=True, eq=False)
-class Constrained:
+class Constrained(Region):
     """The attitudes of `region` (a box or a cone) that also keep every one of `cones` (any roll)."""
 
     region: Box | Cone
@@ -68,6 +73,21 @@ def constrained_margin(
     least = replace(least, lo=min(near.lo, far.lo))
     outward = _bracket(region, u, v, "square", tolerance, share)
     return AngleRange(least, _mirrored(outward, np.pi / 2))
+
+
+def constrained_spread(region: Constrained, u: Array, v: Array) -> Spread:
+    """The four extremes of M pairs u, v (3, M), each bracketed as in `constrained_margin`."""
+    return spread_from([_pair_extremes(region, tuple(u[:, m]), tuple(v[:, m])) for m in range(u.shape[1])])
+
+
+@lru_cache(maxsize=256)
+def _pair_extremes(region: Constrained, u: tuple[float, ...], v: tuple[float, ...]) -> tuple[Extreme, ...]:
+    """Least and largest angle, least and largest line angle; a sweep asks for the same pair several times."""
+    line, body = np.array(u), np.array(v)
+    near, far = (_bracket(region, side * line, body, "angle", TOLERANCE, SECONDS / 3.0) for side in (1.0, -1.0))
+    least = replace(near if near.hi <= far.hi else far, lo=min(near.lo, far.lo), hi=min(near.hi, far.hi))
+    outward = _bracket(region, line, body, "square", TOLERANCE, SECONDS / 3.0)
+    return near, _mirrored(far, np.pi), least, _mirrored(outward, np.pi / 2)
 
 
 def constrained_clearance(

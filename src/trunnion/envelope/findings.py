@@ -5,6 +5,8 @@ from __future__ import annotations
 import numpy as np
 
 from trunnion.attitude.sequences import Sense
+from trunnion.envelope.axis_dispersion import AxisDispersion
+from trunnion.envelope.constrained import Constrained
 from trunnion.envelope.margins import direction_clearance, lock_margin
 from trunnion.envelope.regions import Box, Dispersed, Mounted, Referred, Region, Track, Union
 from trunnion.envelope.results import ZERO_BELOW
@@ -20,8 +22,10 @@ def region_findings(region: Region) -> list[str]:
             return track_report(region).findings()
         case Union():
             return [f"{name}: {line}" for name, part in region.parts.items() for line in region_findings(part)]
-        case Dispersed() | Mounted() | Referred():
+        case Dispersed() | Mounted() | Referred() | AxisDispersion():
             return region_findings(region.region)
+        case Constrained(region=Box() as box):
+            return _box_findings(box)
     return []
 
 

@@ -17,6 +17,7 @@ from trunnion.attitude.sequences import Sense, Sequence
 from trunnion.envelope.balls import listed_spread, widened
 from trunnion.envelope.chains import box_chain, chain_spread
 from trunnion.envelope.cones import free_cone_spread, rolled_cone_box
+from trunnion.envelope.constrained import Constrained, constrained_spread
 from trunnion.envelope.regions import (
     Box,
     Cone,
@@ -67,6 +68,12 @@ def spread_of(region: Region, u: Array, v: Array) -> Spread:
             return _mounted(spread_of(region.region, u, region.R_bs @ v), region.R_bs)
         case Referred():
             return _referred(spread_of(region.region, region.R_qr.T @ u, v), region.R_qr)
+        case Constrained():
+            return constrained_spread(region, u, v)
+    from trunnion.envelope.axis_dispersion import AxisDispersion, axis_dispersed_spread  # which asks for inner spreads
+
+    if isinstance(region, AxisDispersion):
+        return axis_dispersed_spread(region, u, v)
     raise RegionError(f"{type(region).__name__} is no region known here")
 
 

@@ -210,6 +210,21 @@ def joined(parts: dict[str, Spread], *, named: bool = True) -> Spread:
     )
 
 
+def spread_from(pairs: list[tuple[Extreme, ...]]) -> Spread:
+    """The Spread of M pairs from the four extremes of each, in the order of the constants above."""
+    count = len(pairs)
+    matrices, times = np.full((4, count, 3, 3), np.nan), np.full((4, count), np.nan)
+    where, governing = empty_texts(count), no_names(count)
+    lo, hi = (np.array([[getattr(e, end) for e in pair] for pair in pairs], dtype=float).T for end in ("lo", "hi"))
+    for pair, extremes in enumerate(pairs):
+        for which, one in enumerate(extremes):
+            governing[which, pair] = one.governing
+            if one.witness is not None:
+                matrices[which, pair], where[which, pair] = one.witness.matrix, one.witness.where
+                times[which, pair] = np.nan if one.witness.time is None else one.witness.time
+    return Spread(lo, hi, matrices, times, where, governing, weakest(*(e.basis for pair in pairs for e in pair)))
+
+
 def witness_angles(spread: Spread, u: Array, v: Array) -> Array:
     """The angle at each witness, (4, M) rad, recomputed from its matrix; nan where there is none."""
     carried = np.einsum("xmij,jm->ixm", spread.matrices, v)

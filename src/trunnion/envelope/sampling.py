@@ -12,9 +12,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from trunnion.attitude.rotations import about, matrix_from_quaternion
+from trunnion.attitude.rotations import about, from_rotation_vector, matrix_from_quaternion
+from trunnion.envelope.axis_dispersion import AxisDispersion, TurnSide
 from trunnion.envelope.chains import ChainBox, box_chain, chain_matrices
 from trunnion.envelope.cones import rolled_cone_box
+from trunnion.envelope.constrained import Constrained
 from trunnion.envelope.regions import (
     Between,
     Box,
@@ -29,7 +31,7 @@ from trunnion.envelope.regions import (
 )
 from trunnion.envelope.tracks import pieces
 from trunnion.envelope.trajectories import matrices_at
-from trunnion.envelope.vectors import Array
+from trunnion.envelope.vectors import Array, angle_between
 from trunnion.errors import RegionError
 
 
@@ -60,6 +62,10 @@ def sample_region(region: Region, count: int = 16384, *, seed: int = 1) -> Sampl
         case Referred():
             inner = sample_region(region.region, count, seed=seed)
             return Samples(region.R_qr @ inner.matrices, inner.rule)
+        case Constrained():
+            return _constrained(region, count, seed)
+        case AxisDispersion():
+            return _axis_dispersed(region, count, seed)
     raise RegionError(
         "a union has no measure common to its parts", remedy="take the share of each part by itself, or of the time"
     )
@@ -86,6 +92,31 @@ def _cone(cone: Cone, count: int, seed: int) -> Samples:
     cosines = np.cos(cone.nearest) + t[:, 1] * (np.cos(cone.farthest) - np.cos(cone.nearest))
     angles[:, 1] = np.arccos(np.clip(cosines, -1.0, 1.0))
     return Samples(chain_matrices(chain, angles.T), "Sobol sequence, uniform in solid angle and roll")
+
+
+def _constrained(region: Constrained, count: int, seed: int) -> Samples:
+    """Those of the first region that keep every further constraint; more are drawn where few do."""
+    for more in (1, 16, 256):
+        drawn = sample_region(region.region, count * more, seed=seed)
+        kept = np.ones(len(drawn.matrices), dtype=bool)
+        for cone in region.cones:
+            held = drawn.matrices @ cone.body_axis
+            angle = angle_between(held.T, np.broadcast_to(cone.reference_axis[:, None], (3, len(held))))
+            kept &= (angle >= cone.nearest) & (angle <= cone.farthest)
+        if np.count_nonzero(kept) >= min(count, 200):
+            break
+    if not kept.any():
+        raise RegionError("no sample keeps all the constraints at once", remedy="look for a contradiction")
+    return Samples(drawn.matrices[kept][:count], f"{drawn.rule}, those that keep every constraint")
+
+
+def _axis_dispersed(region: AxisDispersion, count: int, seed: int) -> Samples:
+    inner = sample_region(region.region, count, seed=seed)
+    t = unit_cube(len(region.limits), len(inner.matrices), seed + 1)[: len(inner.matrices)]
+    turns = from_rotation_vector(((2.0 * t - 1.0) * region.limits) @ region.axes)
+    body = region.side is TurnSide.BODY
+    matrices = inner.matrices @ turns if body else turns @ inner.matrices
+    return Samples(matrices, f"{inner.rule}, then turns uniform within the limits of each axis")
 
 
 def _track(track: Track, count: int) -> Samples:
