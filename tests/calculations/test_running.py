@@ -134,3 +134,20 @@ def test_no_kernel_outlives_the_run_however_it_ends(slow: Path, sent: int) -> No
     process.wait(20)
     assert all(_gone(pid) for pid in pids)
     assert not list(slow.glob("[12].ipynb"))
+
+
+def test_a_home_that_cannot_be_written_changes_no_body(go, tmp_path, monkeypatch) -> None:
+    """Kernels need no home: sockets, profile and matplotlib's cache lie elsewhere, and leave no trace in the body."""
+    cell = (
+        "from trunnion.figures import charts\n"
+        "svg = charts.varied_value([0, 1], {'a': ([0, 1], [0, 1])}, x_label='x', y_label='y')\n"
+        "shown = len(svg)"
+    )
+    assert go(cell)[0].done
+    first = (tmp_path / "body.ipynb").read_bytes()
+    monkeypatch.setenv("HOME", "/proc/none")
+    monkeypatch.delenv("XDG_CACHE_HOME", raising=False)
+    monkeypatch.delenv("XDG_CONFIG_HOME", raising=False)
+    outcome, _ = go(cell)
+    assert outcome.done, outcome.error
+    assert (tmp_path / "body.ipynb").read_bytes() == first

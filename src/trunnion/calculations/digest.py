@@ -16,6 +16,12 @@ from typing import Any
 
 from trunnion.calculations.notebooks import INJECTED_TAG, joined, tags
 
+_NOISE = (
+    "Matplotlib is building the font cache",
+    "Matplotlib created a temporary cache directory",
+    "mkdir -p failed for path",
+)
+
 
 def content_digest(notebook: Mapping[str, Any]) -> str:
     """The SHA-256 of what the notebook says, in hexadecimal."""
@@ -84,11 +90,22 @@ def _mime(mime: str, value: Any) -> Any:
     return value if mime.endswith("json") or not isinstance(value, list) else joined(value)
 
 
+def _without_noise(output: Mapping[str, Any]) -> dict[str, Any] | None:
+    """An output without what matplotlib says about its own cache folder, once a machine; None if nothing is left."""
+    kept = dict(output)
+    if kept["output_type"] == "stream" and kept["name"] == "stderr":
+        lines = joined(kept["text"]).splitlines(keepends=True)
+        kept["text"] = "".join(line for line in lines if not any(noise in line for noise in _NOISE))
+        return kept if kept["text"].strip() else None
+    return kept
+
+
 def _stored_outputs(outputs: list[dict[str, Any]], count: int | None) -> list[dict[str, Any]]:
     """Outputs with the new count; neighbouring pieces of one stream (split by chance of timing) are joined."""
     stored: list[dict[str, Any]] = []
-    for output in outputs:
-        kept = {**output, **({"execution_count": count} if "execution_count" in output else {})}
+    for kept in filter(None, map(_without_noise, outputs)):
+        if "execution_count" in kept:
+            kept["execution_count"] = count
         last = stored[-1] if stored else {}
         if kept["output_type"] == "stream" and last.get("name") == kept["name"] and "text" in last:
             last["text"] = joined(last["text"]) + joined(kept["text"])
