@@ -69,8 +69,8 @@ class Desk:
         for role in TIMES:
             assert self.sign(role) == 0
 
-    def issue(self, day: str = DAY) -> int:
-        return self.run("issue", self.workbook, "--no-pdf", "--date", day)
+    def issue(self, day: str = DAY, *, pdf: bool = False) -> int:
+        return self.run("issue", self.workbook, *([] if pdf else ["--no-pdf"]), "--date", day)
 
     def edit(self, old: str, new: str, name: str = "workbook.yaml") -> None:
         path = self.workbook / name
@@ -141,7 +141,7 @@ def issued_once(computed_once: Path, tmp_path_factory: pytest.TempPathFactory, p
     shutil.copytree(computed_once, folder, dirs_exist_ok=True)
     made = Desk(folder / "miniature", people_keys)
     made.sign_all()
-    assert made.issue() == 0
+    assert made.issue(pdf=True) == 0
     return made
 
 

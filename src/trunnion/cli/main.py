@@ -47,6 +47,8 @@ COMMANDS = (
     Entry("issue", "Freeze the revision, once it is signed.", RECORD),
     Entry("archive", "Write the archive of an issued revision.", RECORD),
     Entry("audit", "Check an archive: whole, signed, by the rules.", RECORD),
+    Entry("recompute", "Run recorded calculations again and compare.", RECORD),
+    Entry("find", "Search many archives.", RECORD),
     Entry("withdraw", "Sign a notice that a revision must not be used.", RECORD),
 )
 

@@ -25,7 +25,7 @@ from trunnion.records.archive import plain_json
 from trunnion.records.casework import deviations_of, read_findings
 from trunnion.records.contents import contents
 from trunnion.records.keylist import LARGEST
-from trunnion.records.reading import opened
+from trunnion.records.reading import opened, wrong_path
 from trunnion.records.rules import Case
 from trunnion.records.verification import Keys, Outcome, Verified, verify
 from trunnion.records.withdrawal import Notice, notices
@@ -228,6 +228,7 @@ class _Auditor:
         if self.read("data/issued/results.json") != self.read("data/package/results.json"):
             wrong.append("the package holds other results than were issued")
         wrong += self._documents()
+        wrong += self._inputs()
         yield from _listed("issue record", wrong, f"issued on {self.day}; files as issued")
 
     def _documents(self) -> Iterator[str]:
@@ -240,6 +241,14 @@ class _Auditor:
             yield "record.json names another day of issue"
         if bag.info_of(self.root).get("External-Identifier") != f"{number} revision {revision}":
             yield "bag-info.txt names another document or revision"
+
+    def _inputs(self) -> Iterator[str]:
+        for entry in self.results["calculations"]:
+            for file in entry["inputs"]:
+                path = self.root / "data/workbook" / str(file["path"])
+                there = path.is_file() and not wrong_path(str(file["path"]))
+                if file["held"] is not None and not (there and bag.file_digest(path) == file["sha256"]):
+                    yield f"input {file['path']} of {entry['id']} is not the one that was read"
 
     def _bodies(self) -> Iterator[Row]:
         wrong: list[str] = []

@@ -48,8 +48,9 @@ def contents(results: Mapping[str, Any]) -> dict[str, Content]:
 
 
 def results_digest(entry: Mapping[str, Any]) -> str:
-    """Digest of what one calculation of `results.json` records."""
-    return sha256_json({name: entry[name] for name in ("results", "checks", "findings")})
+    """Digest of what one calculation of `results.json` records, and of the inputs it read."""
+    inputs = {file["path"]: file["sha256"] for file in entry["inputs"]}
+    return sha256_json({**{name: entry[name] for name in ("results", "checks", "findings")}, "inputs": inputs})
 
 
 def requirements_digest(results: Mapping[str, Any]) -> str:

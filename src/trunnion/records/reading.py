@@ -16,7 +16,7 @@ import unicodedata
 import zipfile
 import zlib
 from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
+from contextlib import ExitStack, contextmanager
 from pathlib import Path, PurePosixPath
 
 from trunnion.errors import RecordError
@@ -45,6 +45,14 @@ def opened(path: Path) -> Iterator[Path]:
         raise RecordError(f"there is no archive {path}", remedy="name the zip, or the folder it was unpacked to")
     with tempfile.TemporaryDirectory(prefix="trunnion-archive-") as scratch:
         yield _unpacked(path, Path(scratch))
+
+
+def archived_results(stack: ExitStack, path: Path) -> Path | None:
+    """`results.json` of the package in an archive, which stays open as long as `stack`; None if it is no archive."""
+    is_bag = path.is_dir() and (path / "bagit.txt").is_file()
+    if not is_bag and not (path.is_file() and zipfile.is_zipfile(path)):
+        return None
+    return stack.enter_context(opened(path)) / "data" / "package" / "results.json"
 
 
 def _unpacked(path: Path, scratch: Path) -> Path:
