@@ -231,7 +231,8 @@ class _Check:
             if not _made_of(requirement.of, subjects):
                 self._known((*steps, "of"), requirement.of, subjects, "part or decision")
             for index, name in enumerate(requirement.over or []):
-                self._known((*steps, "over", index), name, self.resolver.names("envelopes"), "envelope")
+                known = [*self.resolver.names("envelopes"), *self.resolver.names("passes")]
+                self._known((*steps, "over", index), name, known, "envelope")
 
     def _subjects(self) -> list[str]:
         """What a result may be of: named parts, decisions, and what calculations name in their own parameters."""

@@ -341,6 +341,7 @@ _add("table-needs", "{because}, and '{name}' is not said", "add `{example}`")
 _add("table-excess", "'{name}' is said, and {because}", "delete it")
 _add("refused", "{why}", "{remedy}")
 _add("empty-list", "no {what} are listed", "list at least one")
+_add("same-axis", "'{name}' lies along the same axis as '{other}'", "give each axis one limit")
 _add("roll-zero", "roll zero '{word}' lies along the cone's own axis", "name another body axis")
 _add("repeated-column", "the column '{name}' is named twice", "each number has its own column")
 _add(

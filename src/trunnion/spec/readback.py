@@ -129,6 +129,14 @@ def _constants(convention: Convention) -> Iterator[str]:
 
 def _envelope(part: Any) -> Iterator[str]:
     yield from _REGIONS[type(part)](part)
+    for further in getattr(part, "also", None) or ():
+        held = f"{_direction(further.axis)} axis stays {_cone_size(further)} of {_direction(further.around)}"
+        yield f"At the same time the {held}."
+    about = getattr(part, "dispersion_about", None)
+    if about is not None:
+        turns = words.listed([f"{axis} by up to {limit.text}" for axis, limit in about.limits.items()])
+        owner = "its own axes" if about.axes_of == "body" else "axes of the reference"
+        yield f"Each attitude may be followed by a turn about {owner}: {turns}, either way and all at once."
     if part.dispersion is not None:
         yield f"Each attitude may be followed by any turn of up to {part.dispersion.text}."
     if part.max_body_rate is not None:
@@ -155,17 +163,19 @@ def range_text(limits: Range) -> str:
 
 def _cone(part: parts.Cone) -> Iterator[str]:
     cone = part.cone
-    if cone.between is not None:
-        nearest, farthest = cone.between
-        size = f"no nearer than {nearest.text} and no farther than {farthest.text}"
-    else:
-        size = f"within {cone.half_angle}"
-    yield f"The {_direction(cone.axis)} axis stays {size} of {_direction(cone.around)}."
+    yield f"The {_direction(cone.axis)} axis stays {_cone_size(cone)} of {_direction(cone.around)}."
     if isinstance(cone.roll, str):
         yield "The turn about that axis may be anything."
     else:
         start = f"{_direction(cone.roll.zero)} points as near to {_direction(cone.around)} as it can"
         yield f"The turn about that axis is {range_text(cone.roll.range)}, counted from where {start}."
+
+
+def _cone_size(cone: Any) -> str:
+    if cone.between is None:
+        return f"within {cone.half_angle}"
+    nearest, farthest = cone.between
+    return f"no nearer than {nearest.text} and no farther than {farthest.text}"
 
 
 def _direction(value: str | list[float]) -> str:

@@ -22,6 +22,7 @@ from trunnion.spec.values import Range
 #: Opens a table: its plain statement to something with `times` (N,) s and `quaternions` (N, 4).
 OpenTable = Callable[[dict[str, Any]], Any]
 
+_RIGHT_ANGLE = math.pi / 2 * (1.0 + 1e-12)
 _HALF_TURN = math.pi * (1.0 + 1e-12)
 
 #: Keys of a table that are the statement of its file; the rest is the envelope's own.
@@ -34,24 +35,92 @@ STATEMENT_KEYS = (
 
 def check_envelope(ctx: Context, name: str, part: Any) -> bool:
     """Everything about an envelope that can be told without opening files. True when nothing is noted."""
-    if isinstance(part, Box):
-        return box_ranges(ctx, part) is not None
-    if isinstance(part, Cone):
-        return cone_numbers(ctx, part) is not None
-    if isinstance(part, Poses):
-        return pose_matrices(ctx, part) is not None
+    balls = _balls_fit(ctx, part)
+    if isinstance(part, Box | Cone | Poses):
+        numbers = {Box: box_ranges, Cone: cone_numbers, Poses: pose_matrices}[type(part)]
+        sound = numbers(ctx, part) is not None  # type: ignore[operator]
+        return balls and sound and further_cones(ctx, part) is not None and axis_limits(ctx, part) is not None
     if isinstance(part, Table | Campaign):
-        return check_statement(ctx, part)
+        return check_statement(ctx, part) and balls
     if isinstance(part, Product):
         host = ctx.part("envelopes", part.product.host, "product", "host")
         mount = ctx.part("mounts", part.product.mount, "product", "mount")
-        return host is not None and mount is not None
+        return host is not None and mount is not None and balls
     assert isinstance(part, Phases)
     if not part.phases:
         ctx.note("empty-list", "phases", what="phases")
         return False
     found = [ctx.part("envelopes", phase, "phases", step) for step, phase in _phases(part)]
-    return all(phase is not None for phase in found)
+    return all(phase is not None for phase in found) and balls
+
+
+def _balls_fit(ctx: Context, part: Any) -> bool:
+    """Balls of uncertainty of more than a right angle leave no margin in any convention: a slip of the unit."""
+    good = True
+    for key, what in (("dispersion", "a dispersion"), ("attitude_error", "an attitude error"), ("ball", "a ball")):
+        size = getattr(part, key, None)
+        if size is not None and size.value > _RIGHT_ANGLE:
+            ctx.note("too-large", key.replace("_", " "), what=what, text=size.text, limit="90 deg")
+            good = False
+    return good
+
+
+def own_frames(ctx: Context, part: Any, word: str) -> tuple[numeric.Frame, numeric.Frame] | None:
+    """(reference, body) of a box, by its convention, or of a cone or poses."""
+    if not isinstance(part, Box):
+        return frame_pair(ctx, part, word)
+    convention = ctx.part("conventions", part.convention, "convention")
+    return None if convention is None else (convention.reference, convention.body)
+
+
+def further_cones(ctx: Context, part: Any) -> list[dict[str, Any]] | None:
+    """Axis, direction (3,), nearest and farthest angle (rad) of each cone of `also`; empty where there is none."""
+    listed = getattr(part, "also", None)
+    if listed is None:
+        return []
+    if not listed:
+        ctx.note("empty-list", "also", what="further cones")
+        return None
+    pair = own_frames(ctx, part, "cone")
+    if pair is None:
+        return None
+    found = []
+    for number, shape in enumerate(listed):
+        inner = ctx.at("also", number)
+        axis, around = direction(inner, shape.axis, pair[1], "axis"), direction(inner, shape.around, pair[0], "around")
+        ends = _cone_ends(inner, shape)
+        if axis is None or around is None or ends is None:
+            return None
+        found.append({"body_axis": axis, "reference_axis": around, "nearest": ends[0], "farthest": ends[1]})
+    return found
+
+
+def axis_limits(ctx: Context, part: Any) -> dict[str, Any] | None:
+    """Axes (K, 3), limits (K,) rad and side of a dispersion about some axes; empty where there is none."""
+    stated = getattr(part, "dispersion_about", None)
+    if stated is None:
+        return {}
+    pair, inner = own_frames(ctx, part, "dispersion"), ctx.at("dispersion about", "limits")
+    if not stated.limits:
+        ctx.note("empty-list", "dispersion about", "limits", what="axes")
+    if pair is None or not stated.limits:
+        return None
+    frame = pair[1] if stated.axes_of == "body" else pair[0]
+    axes: dict[str, Any] = {}
+    for word, limit in stated.limits.items():
+        axis = direction(inner, word, frame, word)
+        if axis is None:
+            return None
+        same = next((other for other, known in axes.items() if abs(float(known @ axis)) > 1.0 - 1e-9), None)
+        if same is not None:
+            inner.note("same-axis", word, key=True, name=word, other=same)
+            return None
+        if limit.value > _RIGHT_ANGLE:
+            inner.note("too-large", word, what="a dispersion", text=limit.text, limit="90 deg")
+            return None
+        axes[word] = axis
+    limits = [limit.value for limit in stated.limits.values()]
+    return {"axes": np.array(list(axes.values())), "limits": np.array(limits), "side": stated.axes_of}
 
 
 def _phases(part: Phases) -> list[tuple[str | int, Any]]:
@@ -185,18 +254,11 @@ def pose_matrices(ctx: Context, part: Poses) -> list[Any] | None:
     pair = frame_pair(ctx, part, "pose")
     if not part.poses:
         ctx.note("empty-list", "poses", what="poses")
-    if pair is None or not part.poses or not _ball_fits(ctx, part):
+    if pair is None or not part.poses:
         return None
     ends = Ends(pair[1], pair[0], ("body",), ("reference",))
     made = [build_rotation(ctx.at("poses", index), pose, ends) for index, pose in enumerate(part.poses)]
     return None if any(matrix is None for matrix in made) else made
-
-
-def _ball_fits(ctx: Context, part: Poses) -> bool:
-    if part.ball is not None and part.ball.value > math.pi / 2:
-        ctx.note("too-large", "ball", what="a ball", text=part.ball.text, limit="90 deg")
-        return False
-    return True
 
 
 # --- tables
@@ -297,9 +359,16 @@ def table_frames(ctx: Context, part: Any) -> tuple[numeric.Frame, numeric.Frame]
 
 def build_region(ctx: Context, part: Any, open_table: OpenTable) -> Any:
     """The numerical region of an envelope; its tables are opened by `open_table`."""
-    from trunnion.envelope import regions
+    from trunnion.envelope import AxisDispersion, Constrained, TurnSide, regions
 
     region = _bare_region(ctx, part, open_table)
+    if getattr(part, "also", None):
+        cones = [regions.Cone(**numbers) for numbers in further_cones(ctx, part) or ()]
+        region = Constrained(region, tuple(cones))
+    limits = axis_limits(ctx, part)
+    if limits:
+        side = TurnSide.BODY if limits["side"] == "body" else TurnSide.REFERENCE
+        region = AxisDispersion(region, limits["axes"], limits["limits"], side)
     if part.dispersion is not None:
         region = regions.Dispersed(region, part.dispersion.value)
     return region

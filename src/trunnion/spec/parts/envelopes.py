@@ -37,11 +37,29 @@ class _Envelope(NamedPart):
     text: Text | None = None
 
 
+class FurtherCone(Part):
+    """A further body axis held near a reference direction at the same time; the turn about it is left free."""
+
+    axis: Direction
+    around: Direction
+    half_angle: Angle | None = None
+    between: list_of(Angle, 2, "the nearest and the farthest angle") | None = None
+
+
+class AxisLimits(Part):
+    """A dispersion about some axes only: the largest turn, either way, about each."""
+
+    axes_of: one_of("body", "reference")
+    limits: dict[Name, PositiveAngle]
+
+
 class Box(_Envelope):
-    """All attitudes whose three angles lie in ranges."""
+    """All attitudes whose three angles lie in ranges, and that hold the axes of `also`."""
 
     convention: Reference
     box: dict[str, AngleRange]
+    also: list[FurtherCone] | None = None
+    dispersion_about: AxisLimits | None = None
 
 
 class RollLimit(Part):
@@ -72,9 +90,11 @@ class ConeShape(Part):
 
 
 class Cone(_Envelope):
-    """All attitudes that hold a body axis near a reference direction."""
+    """All attitudes that hold a body axis near a reference direction, and those of `also`."""
 
     cone: ConeShape
+    also: list[FurtherCone] | None = None
+    dispersion_about: AxisLimits | None = None
     body: Reference | None = None
     reference: Reference | None = None
 
@@ -105,6 +125,7 @@ class Poses(_Envelope):
 
     poses: list[Pose]
     ball: PositiveAngle | None = None
+    dispersion_about: AxisLimits | None = None
     body: Reference | None = None
     reference: Reference | None = None
 
