@@ -328,3 +328,24 @@ def test_the_package_holds_the_changes_since_the_superseded_revision(computed: P
     rows = changes_since_superseded(run(computed))
     assert rows[0] == ("R1, ordinary", "meets", "does not meet", "limit at least 20 deg → at least 70 deg")
     assert ("input", "numbers") not in rows
+
+
+def test_a_sweep_of_a_parameter_brackets_the_flip_with_recorded_results(computed: Path, edit, set_cell) -> None:
+    set_cell(computed / "templates" / "tiny-margin.ipynb", 5, "# the check by hand holds for one value only")
+    values, unit = trials.parse_values("60 deg, 80 deg")
+    told = []
+    found = trials.vary(
+        lambda overrides: load_workbook(computed, overrides),
+        "calculations.C01.steepest",
+        values,
+        unit,
+        bisections=2,
+        allow_local=True,
+        tell=told.append,
+    )
+    (flip,) = found.flips  # the margin is 90 deg less the steepest, and 20 deg are asked for
+    assert (flip.before, flip.after) == ("meets", "does not meet")
+    assert flip.start <= 70.0 <= flip.end
+    assert flip.end - flip.start == 5.0
+    assert found.series("R1")["ordinary"][0] == [90.0 - step.number for step in found.steps]
+    assert not any(step.failed for step in found.steps)

@@ -177,19 +177,46 @@ def _elsewhere(folder: RevisionFolder, key: str) -> bytes | None:
 def _run(
     folder: RevisionFolder, due: Sequence[Planned], workers: int | None, tell: Callable[[Progress], None] | None
 ) -> dict[str, Outcome]:
-    jobs = [
-        Job(
-            calculation=entry.id,
-            template=entry.template.path,
-            parameters=entry.parameters,
-            folder=folder.path,
-            body=folder.body(entry.key),
-            failed=folder.failed(entry.id, entry.template.name),
-            not_held={file.held: file.origin for file in entry.inputs.values() if not file.copied},
-        )
-        for entry in due
-    ]
+    jobs = [_job(folder, entry) for entry in due]
     return run(jobs, workers=workers, tell=tell) if jobs else {}
+
+
+def _job(folder: RevisionFolder, entry: Planned, name: str = "") -> Job:
+    return Job(
+        calculation=entry.id,
+        template=entry.template.path,
+        parameters=entry.parameters,
+        folder=folder.path,
+        body=folder.body(entry.key),
+        failed=folder.failed(entry.id, entry.template.name),
+        not_held={file.held: file.origin for file in entry.inputs.values() if not file.copied},
+        name=name,
+    )
+
+
+def run_ahead(
+    workbooks: Sequence[Any],
+    *,
+    scratch: str,
+    output: Path | None = None,
+    workers: int | None = None,
+    allow_local: bool = False,
+    tell: Callable[[Progress], None] | None = None,
+) -> None:
+    """Run, all side by side, what trial workbooks lack in their common scratch folder.
+
+    What fails here fails again, and is told, when its workbook is computed.
+    """
+    folder = store.revision_folder(workbooks[0].root, scratch, output)
+    with folder.locked():
+        lacking: dict[str, Planned] = {}
+        for workbook in workbooks:
+            planned = plan(workbook, allow_local=allow_local)
+            _copy_inputs(folder, planned)
+            lacking |= {entry.key: entry for entry in _sort(folder, planned, ())[1]}
+        jobs = [_job(folder, entry, f"{entry.id}, {key[:8]}") for key, entry in lacking.items()]
+        if jobs:
+            run(jobs, workers=workers, tell=tell)
 
 
 def _done(folder: RevisionFolder, entry: Planned, kept: Mapping[str, bytes], outcomes: Mapping[str, Outcome]) -> Done:

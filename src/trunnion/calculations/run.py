@@ -44,6 +44,12 @@ class Job:
     body: Path
     failed: Path
     not_held: Mapping[str, Path] = field(default_factory=dict)  # inputs read where they lie: name to file
+    name: str = ""  # what it is called in progress and outcomes, where not by its calculation
+
+    @property
+    def label(self) -> str:
+        """What the job is called."""
+        return self.name or self.calculation
 
     def line(self) -> bytes:
         """The job as a worker reads it."""
@@ -90,7 +96,7 @@ def default_jobs() -> int:
 def run(
     jobs: Iterable[Job], *, workers: int | None = None, tell: Callable[[Progress], None] | None = None
 ) -> dict[str, Outcome]:
-    """Run all jobs, `workers` at a time; outcomes by calculation id. `tell` is called from this thread."""
+    """Run all jobs, `workers` at a time; outcomes by the jobs' labels. `tell` is called from this thread."""
     pending = list(jobs)
     crew = _Crew(pending, min(workers or default_jobs(), len(pending)))
     outcomes: dict[str, Outcome] = {}
@@ -98,10 +104,11 @@ def run(
         crew.start()
         while len(outcomes) < len(pending):
             event = crew.next_event()
-            if isinstance(event, Outcome):
-                outcomes[event.calculation] = event
-            elif tell is not None:
-                tell(event)
+            if isinstance(event, Progress):
+                if tell is not None:
+                    tell(event)
+            else:
+                outcomes[event[0]] = event[1]
     finally:
         crew.end()
     return outcomes
@@ -114,7 +121,7 @@ class _Crew:
         self._jobs: SimpleQueue[Job] = SimpleQueue()
         for job in jobs:
             self._jobs.put(job)
-        self._events: SimpleQueue[Progress | Outcome] = SimpleQueue()
+        self._events: SimpleQueue[Progress | tuple[str, Outcome]] = SimpleQueue()
         self._threads = [threading.Thread(target=self._work, daemon=True) for _ in range(size)]
         self._workers: set[_Worker] = set()
         self._ending = False
@@ -124,7 +131,7 @@ class _Crew:
         for thread in self._threads:
             thread.start()
 
-    def next_event(self) -> Progress | Outcome:
+    def next_event(self) -> Progress | tuple[str, Outcome]:
         return self._events.get()
 
     def end(self) -> None:
@@ -154,12 +161,12 @@ class _Crew:
         began = time.monotonic()
 
         def progress(state: str, cell: int = 0, of: int = 0, note: str = "") -> None:
-            self._events.put(Progress(job.calculation, state, cell, of, time.monotonic() - began, note))
+            self._events.put(Progress(job.label, state, cell, of, time.monotonic() - began, note))
 
         progress("started")
         outcome = worker.run(job, lambda event: progress("running", event["cell"], event["of"], event["note"]))
         progress("done" if outcome.done else "failed", outcome.cell or 0, outcome.of)
-        self._events.put(outcome)
+        self._events.put((job.label, outcome))
 
 
 class _Worker:

@@ -13,7 +13,7 @@ from itertools import pairwise
 from pathlib import Path
 from typing import Any
 
-from trunnion.calculations.compute import Computed, compute
+from trunnion.calculations.compute import Computed, compute, run_ahead
 from trunnion.calculations.judgement import Judgement
 from trunnion.calculations.run import Progress
 from trunnion.errors import TrunnionError
@@ -143,10 +143,15 @@ def vary(
         computed = trial(workbook, output=output, tell=tell, **options)
         return Step(number, text, computed.judgements, tuple(entry.planned.id for entry in computed.failed))
 
-    steps = {number: attempt(number, text) for number, text in values}
+    def attempt_all(wanted: Sequence[tuple[float, str]]) -> dict[float, Step]:
+        if wanted:
+            workbooks = [load([*fixed, (path, text)]) for _, text in wanted]
+            run_ahead(workbooks, scratch=SCRATCH, output=output, tell=tell, **options)
+        return {number: attempt(number, text) for number, text in wanted}
+
+    steps = attempt_all(values)
     for _ in range(bisections):
-        for middle in _middles(steps):
-            steps[middle] = attempt(middle, value_text(middle, unit))
+        steps |= attempt_all([(middle, value_text(middle, unit)) for middle in _middles(steps)])
     ordered = tuple(steps[number] for number in sorted(steps))
     return Sweep(path, unit, ordered, tuple(_flips(ordered, unit)))
 
