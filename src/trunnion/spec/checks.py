@@ -162,6 +162,10 @@ class _Check:
             node = self.tree.child(section)
             if node is not None:
                 yield from _words_in(node)
+        for calculation in self.model.calculations:
+            pair = [calculation.parameters.get(side) for side in ("reference", "body")]
+            if all(isinstance(name, str) for name in pair):  # a calculation on two frames joins them
+                yield from map(str, pair)
         for frame in self.model.frames.values():
             if frame.paired_with is not None:
                 yield frame.paired_with
