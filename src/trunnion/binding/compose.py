@@ -59,7 +59,7 @@ class _Composer:
         ]
         front = [self.cover(), self.history(), self.contents(), self.lists(), self.summary(calculations)]
         middle = [self.requirements(), self.decisions(), self.standing()]
-        back = [self.statements(), self.changes(), *self.appendices()]
+        back = [*self.statements(), self.changes(), *self.appendices()]
         parts = [part for part in (*front, *middle, *calculations, *back) if part is not None]
         state, standing = self.state(), self.standing_words()
         parts = [replace(part, state=" · ".join([part.state, *standing]) if part.state else state) for part in parts]
@@ -357,22 +357,22 @@ class _Composer:
         return b.Part("standing", title, tuple(blocks), number=self.numbered(), flows=True)
 
     # -- back --------------------------------------------------------------------------------------------
-    def statements(self) -> b.Part | None:
-        if not self.package.statements:
-            return None
-        blocks: list[b.Block] = []
-        for page in self.package.statements:
-            blocks.append(b.Heading(2, b.line(page.title), f"statement/{page.id}"))
-            blocks += [b.Paragraph(self.prose(text, page.id)) for text in page.paragraphs]
-            for title, paragraphs in page.parts:
-                blocks.append(b.Heading(3, b.line(title)))
-                blocks += [b.Paragraph(self.prose(text, page.id)) for text in paragraphs]
-            if page.drawing:
+    def statements(self) -> list[b.Part]:
+        """One part a statement, so that each begins a page and can be taken out."""
+        return [self._statement(page, index) for index, page in enumerate(self.package.statements)]
+
+    def _statement(self, page: StatementPage, index: int) -> b.Part:
+        blocks: list[b.Block] = [b.Paragraph(self.prose(text, page.id)) for text in page.paragraphs]
+        for place, (title, paragraphs) in enumerate(page.parts):
+            if page.drawing and place == _DRAWN_BEFORE:
                 blocks.append(_drawing(page))
-            if page.calculation:
-                way = (*b.line(f"{self.words('Calculation')} "), b.Link(page.calculation, b.line(page.calculation)))
-                blocks.append(b.Paragraph(way))
-        return b.Part("statements", self.words("Convention statements"), tuple(blocks), number=self.numbered())
+            told = tuple(b.Paragraph(self.prose(text, page.id)) for text in paragraphs)
+            blocks.append(b.Callout("statement", title, told))
+        if page.calculation:
+            way = (*b.line(f"{self.words('Calculation')} "), b.Link(page.calculation, b.line(page.calculation)))
+            blocks.append(b.Paragraph(way))
+        anchor = f"statements-{index + 1}" if index else "statements"
+        return b.Part(anchor, page.title, tuple(blocks), number=self.numbered())
 
     def changes(self) -> b.Part | None:
         if not self.package.changes:
@@ -481,6 +481,9 @@ def _attachment(sheet: Sheet) -> b.Attachment:
         text = json.dumps({**(sheet.notebook or {}), "cells": kept}, sort_keys=True, ensure_ascii=False, indent=1)
         data = (text + "\n").encode("utf-8")
     return b.Attachment(f"{sheet.id}-{sheet.template}.ipynb", data, f"{sheet.id} {sheet.title}")
+
+
+_DRAWN_BEFORE = 2  # the drawing follows the frames and the turns
 
 
 def _drawing(page: StatementPage) -> b.Figure:

@@ -201,7 +201,8 @@ class Change:
 class StatementPage:
     """A page of prose to hand over on its own (a convention statement). Paragraphs may hold `$…$`.
 
-    `parts` are further headings with their paragraphs; `drawing` is SVG text, with its alternative text and caption.
+    `parts` are further headings with their paragraphs; `drawing` is SVG text, shown after the second
+    of them, with its alternative text and caption.
     """
 
     id: str

@@ -170,7 +170,7 @@ class _Writer:
         return f"#running({left}, {right}, {foot}, {mark}, {sheet})[\n{body}\n]"
 
     def part(self, part: b.Part, *, flows: bool) -> str:
-        self.inside = "" if part.anchor in ("decisions", "standing", "statements") else part.anchor
+        self.inside = "" if part.anchor.partition("-")[0] in ("decisions", "standing", "statements") else part.anchor
         anchor, title = quoted(part.anchor), self.text(part.title)
         if part.look == "cover":
             head = f"#cover-head({self.text(self.words('Calculation package'))}, {title}, {anchor}, {self.logo()})"

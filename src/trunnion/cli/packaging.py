@@ -76,7 +76,7 @@ def _statements(computed: Computed) -> Iterator[p.StatementPage]:
     for name in workbook.names("conventions"):
         plain = plain_part(workbook, "conventions", name)
         page = stated_page(plain)
-        svg, alt, caption = page_drawing(page, convention_from_plain(plain))
+        svg, alt, caption = page_drawing(page, convention_from_plain(plain), columns=4)
         parts = tuple((part.title, part.paragraphs) for part in page.parts)
         yield p.StatementPage(name, page.title, (), derived.get(name, ""), parts, svg, alt, caption)
 
@@ -273,6 +273,9 @@ def _summary(computed: Computed) -> p.Summary:
         answer = f"{len(counting) - len(open_yet)} of {len(counting)} requirements are met; open: {words}."
     else:
         answer = f"All {len(counting)} requirements are met."
+    decisions = computed.workbook.decisions
+    asked = [decision.title for decision in decisions if decision.title]
+    chosen = [f"{decision.id}: {decision.chosen}." for decision in decisions]
     margins = tuple(
         (
             f"{entry.asked.quantity} of {entry.candidate}",
@@ -282,8 +285,8 @@ def _summary(computed: Computed) -> p.Summary:
         for entry in counting
     )
     return p.Summary(
-        question="Are the requirements met, and how near does each come to its limit?",
-        answer=answer,
+        question=" ".join([*asked, "Are the requirements met, and how near does each come to its limit?"]),
+        answer=" ".join([*chosen, answer]),
         margins=margins,
         figure=_figure(computed),
     )

@@ -59,15 +59,17 @@ def upward(axes: Sequence[str]) -> Floats:
 
 
 @house_look
-def turns_drawing(stages: Sequence[Floats], axis_words: Sequence[str], captions: Sequence[str], *, up: Floats) -> str:
+def turns_drawing(
+    stages: Sequence[Floats], axis_words: Sequence[str], captions: Sequence[str], *, up: Floats, columns: int = 2
+) -> str:
     """Vehicle axes before and after each turn, one panel a stage.
 
-    stages: (3, 3) matrices, columns the vehicle axes in reference components; captions: one line a panel.
+    stages: (3, 3) matrices, columns the vehicle axes in reference components; captions: one line a panel; columns:
+    panels side by side.
     """
     view = view_matrix(up)
-    columns = 2 if len(stages) % 2 == 0 else len(stages)
-    rows = len(stages) // columns
-    figure = new_figure(height_mm=62 * rows)
+    rows = -(-len(stages) // columns)
+    figure = new_figure(height_mm=(62 if columns <= 2 else 32) * rows)
     for number, (stage, caption) in enumerate(zip(stages, captions, strict=True), start=1):
         axes = bare_axes(figure, rows, columns, number)
         if number > 1:

@@ -23,13 +23,15 @@ def stated_page(plain: Mapping[str, Any]) -> ConventionStatement:
     )
 
 
-def page_drawing(page: ConventionStatement, convention: Convention) -> tuple[str, str, str]:
-    """(SVG, alternative text, caption) of the body axes at zero and after each turn."""
+def page_drawing(page: ConventionStatement, convention: Convention, *, columns: int = 2) -> tuple[str, str, str]:
+    """(SVG, alternative text, caption) of the body axes at zero and after each turn, `columns` panels side by side."""
+    captions = page.stage_captions if columns <= 2 else ("start", *page.stage_captions[1:])
     svg = drawings.turns_drawing(
         page.stages,
         convention.body.axes,
-        page.stage_captions,
+        captions,
         up=drawings.upward(convention.reference.axes),
+        columns=columns,
     )
     alt = "Four drawings of the body axes: " + "; ".join(page.stage_captions)
     return svg, alt, f"The axes of {convention.body.name} at zero and after each turn of {convention.name}"

@@ -95,15 +95,16 @@ def statement(
     worked = worked_vector(convention)
     quaternion = convention.stated_quaternion(convention.matrix(worked.angles))
     parts = [
-        Part("Frames", _frames(convention, frame_notes or {})),
-        Part("The three turns, as made with a model in the hand", tuple(turn_sentences(convention))),
-        Part("Ranges", (range_sentence(convention),)),
+        Part("Frames", (*_frames(convention, frame_notes or {}), _scope())),
+        Part(
+            "The three turns, as made with a model in the hand",
+            (*turn_sentences(convention), range_sentence(convention)),
+        ),
         Part("Singular attitudes", _singular(convention)),
         Part("The matrix", (mapping_sentence(convention),)),
         Part("The quaternion", _quaternion(convention)),
         Part("A worked triple", _worked(convention, worked.sentence, worked.matrix, quaternion)),
         Part("The same convention under another name", (_other_name(convention),)),
-        Part("What this covers", (_scope(),)),
     ]
     if standard is not None:
         parts.append(Part("Taken from a standard", _standard(standard, fixed_by_standard)))
@@ -173,7 +174,7 @@ def _quaternion(convention: Convention) -> tuple[str, ...]:
         source, target = target, source
     return (
         f"Four numbers, scalar first, (q0, q1, q2, q3), with Hamilton's product (i j = k), of the same map as "
-        f"{letter}: v_{target} = q v_{source} q*. For a turn by t about the unit vector n, (cos t/2, n sin t/2).",
+        f"{letter}: v_{target} = q v_{source} q*. For a turn by t about the unit vector n, (cos t/2, n sin t/2). "
         "The opposite of all four numbers is the same attitude; the one with positive scalar is given.",
     )
 
