@@ -116,9 +116,9 @@ def joint_history(
     angles: Mapping[str, Floats],
     *,
     stops: Mapping[str, tuple[float, float]] | None = None,
-    quantity: str = "joint angle, deg",
+    unit: str = "deg",
 ) -> str:
-    """Joint angles (deg) against time (s), one panel a joint, its stops dashed where they come into view.
+    """Angles (deg) against time (s), one panel an angle or joint, its stops dashed where they come into view.
 
     nan in an angle breaks the line, as where the mount unwinds.
     """
@@ -134,9 +134,9 @@ def joint_history(
                 axes.annotate(
                     "stop", (1.0, stop), xycoords=("axes fraction", "data"), ha="right", va="bottom", fontsize=6.5
                 )
-        axes.set_ylabel(label(name))
+        axes.set_ylabel(f"{label(name)}, {unit}")
         if row == len(angles):
-            axes.set_xlabel(f"time, s ({quantity})")
+            axes.set_xlabel("time, s")
     return to_svg(figure)
 
 

@@ -145,9 +145,7 @@ class FrameChainCheck:
         names = self.convention.angle_names
         display.figure(
             "fig:history",
-            sky.joint_history(
-                self.times, dict(zip(names, angles.T, strict=True)), quantity=f"angles of {self._name}, deg"
-            ),
+            sky.joint_history(self.times, dict(zip(names, angles.T, strict=True))),
             caption=f"Angles of {self._name}",
             alt="; ".join(
                 f"{name} {np.min(a):.1f} to {np.max(a):.1f} deg" for name, a in zip(names, angles.T, strict=True)

@@ -100,8 +100,9 @@ def locked_angles(chain: GimbalChain, line: Array) -> Array:
     inner = chain if len(chain.joints) < 4 else GimbalChain(chain.name, chain.joints[1:], chain.R_gp0)
     n1 = inner.axes[0]
     if len(inner.joints) == 2:
-        found = pointing_solutions(inner, n1[None], boresight_p=line).angles[0, 0]
-        return np.array([0.0, found[1]])
+        found = pointing_solutions(inner, np.array([n1, -n1]), boresight_p=line).angles[:, 0, 1]
+        lower, upper = inner.joints[1].travel
+        return np.array([0.0, min(found, key=lambda t: max(lower - t, t - upper, 0.0))])
     # carry the innermost axis as near to the outermost one as the axes allow
     n3 = inner.axes[2]
     cross = np.cross(n3, n1)

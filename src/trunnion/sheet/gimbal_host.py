@@ -7,8 +7,7 @@ reference's; two axes keep the boresight along one reference direction and leave
 from __future__ import annotations
 
 from functools import cached_property
-from itertools import product
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,9 +16,8 @@ from trunnion.attitude.frames import Frame
 from trunnion.attitude.rotations import matrix_from_quaternion, rotation_angle
 from trunnion.attitude.words import degrees_text
 from trunnion.envelope.margins import direction_clearance
-from trunnion.envelope.regions import Box, Region, Track
+from trunnion.envelope.regions import Track
 from trunnion.envelope.results import AngleRange
-from trunnion.envelope.sampling import sample_region
 from trunnion.errors import HardwareError
 from trunnion.figures import sky
 from trunnion.hardware.joint_rates import JointRateBounds, largest_joint_rates, middle_axis_keep_out
@@ -35,6 +33,8 @@ from trunnion.hardware.redundancy import RedundantPlan, plan_redundant
 from trunnion.hardware.travel import TravelOver, plan_travel, stopping_room, travel_over
 from trunnion.sheet import display, gimbal_checks, hardware_parts
 from trunnion.sheet.rounding import ceiling_text, floor_text
+from trunnion.sheet.sampled import attitudes
+from trunnion.units import parse_quantity
 
 if TYPE_CHECKING:
     from trunnion.sheet.gimbal import GimbalTravel
@@ -42,7 +42,6 @@ if TYPE_CHECKING:
 Array = NDArray[np.float64]
 
 _LEVEL = Frame("level", ("north", "east", "down"))
-_SAMPLES = 4096
 
 
 class HostWork:
@@ -88,14 +87,25 @@ class HostWork:
         }
 
     @cached_property
+    def turning(self) -> dict[str, float]:
+        """Largest turning rate (rad/s) of the host over each region: that of the calculation, else the region's own."""
+        if self.gimbal.host_rate is not None:
+            return dict.fromkeys(self.regions, self.gimbal.host_rate)
+        stated = {name: plain.get("max body rate") for name, plain in self.gimbal.plain["envelopes"].items()}
+        return {name: parse_quantity(text, kind="angular rate").value for name, text in stated.items() if text}
+
+    @cached_property
     def rates(self) -> dict[str, JointRateBounds]:
-        """Certified largest joint rates over each region for the stated host rate."""
-        assert self.gimbal.host_rate is not None
+        """Certified largest joint rates over each region whose turning rate is stated."""
         return {
             name: largest_joint_rates(
-                self.chain, self.gimbal.host_rate, found.least.lo, found.largest.hi, boresight_p=self.gimbal.boresight
+                self.chain,
+                rate,
+                self.angles[name].least.lo,
+                self.angles[name].largest.hi,
+                boresight_p=self.gimbal.boresight,
             )
-            for name, found in self.angles.items()
+            for name, rate in self.turning.items()
         }
 
     def solutions(self, R_rb: Array) -> Solutions:
@@ -150,7 +160,7 @@ class HostWork:
         if not self.regions or self.axes == 4:
             display.statement("host-rates", "No joint rates of a moving host are worked out here.")
             return
-        if self.gimbal.host_rate is None:
+        if not self.turning:
             display.statement("host-rates", "No turning rate of the host is stated, so no joint rates are worked out.")
             return
         rows = []
@@ -163,7 +173,8 @@ class HostWork:
             "tbl:host-rates",
             ["region", "axis", "largest rate, deg/s", "limit, deg/s", ""],
             rows,
-            caption=f"Joint rates while the host turns at up to {np.degrees(self.gimbal.host_rate):g} deg/s",
+            caption="Joint rates while the host turns at up to its stated rate",
+            notes=[f"{name}: host at up to {np.degrees(rate):g} deg/s." for name, rate in self.turning.items()],
             align="llrrl",
         )
         self._show_keep_out()
@@ -176,10 +187,10 @@ class HostWork:
             )  # fmt: skip
 
     def _show_keep_out(self) -> None:
-        if self.axes != 3 or self.gimbal.reaction_time is None or self.gimbal.host_rate is None:
+        if self.axes != 3 or self.gimbal.reaction_time is None or not self.turning:
             return
         acceleration = self.chain.joints[1].acceleration
-        found = middle_axis_keep_out(self.gimbal.host_rate, self.gimbal.reaction_time, acceleration=acceleration)
+        found = middle_axis_keep_out(max(self.turning.values()), self.gimbal.reaction_time, acceleration=acceleration)
         display.statement(
             "keep-out",
             f"Middle axis (common practice, no published source): with {self.gimbal.reaction_time:g} s to react it "
@@ -326,22 +337,11 @@ class HostWork:
         for name, found in self.clearances.items():
             basis = self.angles[name].least.basis.value
             rows.append(["gimbal clearance", name, f"{floor_text(float(np.degrees(found.least)))}°", basis])
-            if self.gimbal.host_rate is not None:
+            if name in self.turning:
                 largest = float(np.degrees(np.max(self.rates[name].rate)))
                 text = "unbounded" if not np.isfinite(largest) else f"{ceiling_text(largest)} deg/s"
                 rows.append(["largest joint rate", name, text, "certified bound"])
         return rows
-
-
-def attitudes(region: Region) -> Any:
-    """Host attitudes (N, 3, 3) of a region: its corners if it is a box, and samples."""
-    if isinstance(region, Track):
-        return matrix_from_quaternion(region.quaternions)
-    samples = sample_region(region, _SAMPLES).matrices
-    if isinstance(region, Box):
-        corners = np.array(list(product(*region.ranges)))
-        return np.concatenate([region.convention.matrix(corners), samples])
-    return samples
 
 
 def _rate(value: float) -> str:

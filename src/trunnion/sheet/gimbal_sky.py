@@ -126,8 +126,8 @@ class SkyWork:
 
     def show_sky(self) -> None:
         """The sky seen from the mount."""
-        if len(self.chain.joints) != 2:
-            display.statement("sky", "More than two axes: no sky is drawn.")
+        if len(self.chain.joints) != 2 or not (self.passes or self.sectors or self.gimbal.sight_rate):
+            display.statement("sky", "No sky is drawn: it takes two axes and a pass, a sector or a line of sight rate.")
             return
         axis = self.chain.axes[0] if self.chain.axes[0][2] <= 0.0 else -self.chain.axes[0]
         centre = tuple(float(np.degrees(v)) for v in azimuth_elevation(axis))

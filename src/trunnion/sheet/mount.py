@@ -16,14 +16,15 @@ from trunnion.envelope.regions import Mounted, Region
 from trunnion.envelope.results import AngleRange
 from trunnion.errors import HardwareError
 from trunnion.figures import drawings
-from trunnion.hardware.bench import BenchTable, bench_table
+from trunnion.hardware.bench import BenchTable
+from trunnion.hardware.misalignment import AngleErrors
 from trunnion.hardware.mount_check import MountCheck as MatrixCheck
 from trunnion.hardware.mount_check import check_matrix, numbers_to_enter
 from trunnion.hardware.mounts import Mount
 from trunnion.hardware.ranking import RankedMount, rank_mounts, rank_right_angle_mounts
 from trunnion.hardware.right_angles import right_angle_rotations
-from trunnion.sheet import display, mount_checks, parameters, region_checks
-from trunnion.sheet.describe import angles_text, mount_rows, region_rows
+from trunnion.sheet import display, mount_bench, mount_checks, mount_tolerance, parameters, region_checks
+from trunnion.sheet.describe import angles_text, mount_rows, region_rows, words
 from trunnion.sheet.rounding import floor_text
 
 Array = NDArray[np.float64]
@@ -32,8 +33,17 @@ Array = NDArray[np.float64]
 class MountCheck:
     """One mount and the host's regions; each `show_…` displays one part and records what it finds."""
 
-    def __init__(self, *, mount: Mapping[str, Any], envelopes: Mapping[str, Any]) -> None:
-        self._plain = {"mount": dict(mount), "envelopes": dict(envelopes)}
+    def __init__(
+        self,
+        *,
+        mount: Mapping[str, Any],
+        envelopes: Mapping[str, Any],
+        drawing: Mapping[str, Any] | None = None,
+        bench_field: Mapping[str, Any] | None = None,
+    ) -> None:
+        self._plain = {"mount": dict(mount), "envelopes": dict(envelopes), "drawing": dict(drawing or {})}
+        self._field = dict(bench_field or {})
+        self.drawing: Mount | None = parameters.mount(drawing) if drawing else None
         self.mount: Mount = parameters.mount(mount)
         self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
 
@@ -41,7 +51,7 @@ class MountCheck:
     def matrix_check(self) -> MatrixCheck:
         """The check of the matrix as it is used."""
         typed = self.mount.R_bs if self.mount.typed is None else self.mount.typed
-        return check_matrix(typed, self.mount.host, sensor_axes=self.mount.sensor_axes)
+        return check_matrix(typed, self.mount.host, sensor_axes=self.mount.sensor_axes, drawing=self.drawing)
 
     @cached_property
     def margins(self) -> dict[str, AngleRange]:
@@ -56,11 +66,15 @@ class MountCheck:
     @cached_property
     def table(self) -> BenchTable:
         """The bench table: six static poses and three turns."""
-        return bench_table(self.mount)
+        return mount_bench.table_of(self.mount, self._field)
 
     def show_inputs(self) -> None:
         """The mount and the regions as the injected parameters state them."""
         rows = mount_rows(self.mount.name, self._plain["mount"])
+        if self.drawing is not None:
+            rows += mount_rows(f"{self.drawing.name} (drawing)", self._plain["drawing"])
+        if self._field:
+            rows.append({"input": "field at the bench", "stated": words(self._field), "source": "bench"})
         display.inputs(
             rows + [row for name, plain in self._plain["envelopes"].items() for row in region_rows(name, plain)]
         )
@@ -211,43 +225,37 @@ class MountCheck:
 
     def show_bench_table(self) -> None:
         """Poses and turns with the reading each axis must show and the largest deviation to accept."""
-        axes = self.mount.sensor_axes
-        for name, values in self.table.expected.items():
-            tolerance = getattr(self.table.tolerance, name)
-            scale, unit = _SHOWN_IN[name]
-            rows = [
-                [
-                    row.words,
-                    *(
-                        f"{_signed(scale * value)} ± {scale * allowed:.2f}"
-                        for value, allowed in zip(line, around, strict=True)
-                    ),
-                ]
-                for row, line, around in zip(self.table.rows_of(name), values, tolerance, strict=True)
-            ]
-            heads = axes if len(values[0]) == 3 else self.mount.tilt_axes or axes[: len(values[0])]
-            display.table(
-                f"tbl:bench-{name.replace('_', '-')}",
-                ["put the vehicle so", *(f"{axis}, {unit}" for axis in heads)],
-                rows,
-                caption=f"{name.replace('_', ' ').capitalize()}: expected readings",
-                align="l" + "r" * len(heads),
-            )
+        mount_bench.show_table(self.table)
+
+    def show_evidence(self) -> None:
+        """What the bench table can show, and what level or planar poses alone would hide."""
+        mount_bench.show_evidence(self.table)
+
+    @cached_property
+    def errors(self) -> dict[str, AngleErrors]:
+        """Errors of the sensor's own angles from the misalignment, region by region."""
+        return mount_tolerance.errors_over(self.mount, self.regions, self.margins)
 
     def show_tolerance(self) -> None:
-        """What the stated misalignment costs at most: in every margin its own size, in the outer angles more."""
+        """What the stated misalignment costs: in the vehicle's attitude, in every margin, in every angle."""
+        mount_tolerance.show_vehicle(self.mount)
+        self._show_margins_left()
+
+    def show_angle_errors(self) -> None:
+        """The sensor's own angles: linear, certified worst and Monte Carlo side by side."""
+        mount_tolerance.show_errors(self.mount, self.errors)
+
+    def show_growth(self) -> None:
+        """How the error of the outer angles grows towards lock."""
+        mount_tolerance.show_growth(self.mount, self.margins)
+
+    def _show_margins_left(self) -> None:
         largest = self.mount.tolerance.largest_turn
-        if largest is None:
-            display.statement("tolerance", "No bound of the misalignment is stated.")
+        if largest is None or not self.margins:
             return
         rows = []
         for over, found in self.margins.items():
             left = max(0.0, found.least.lo - largest)
-            reach = (
-                "unbounded"
-                if left <= 0.0
-                else f"{np.degrees(np.arcsin(min(1.0, np.sin(largest) / np.sin(left)))):.3f}°"
-            )
             display.record(
                 quantity="lock margin with misalignment",
                 of=self.mount.name,
@@ -257,19 +265,51 @@ class MountCheck:
                 unit="deg",
                 basis=found.least.basis,
             )
-            rows.append([over, degrees_text(largest, 3), f"{floor_text(float(np.degrees(left)))}°", reach])
+            rows.append([over, degrees_text(largest, 3), f"{floor_text(float(np.degrees(left)))}°"])
         display.table(
             "tbl:tolerance",
-            ["region", "misalignment at most", "margin left", "first angle moves at most"],
+            ["region", "misalignment at most", "margin left"],
             rows,
-            caption="What a misalignment within the stated tolerance costs",
-            align="lrrr",
+            caption="What a misalignment within the stated tolerance leaves of the margin",
+            align="lrr",
         )
+
+    def show_comparison(self) -> None:
+        """Against the drawing: boresight and clocking apart, and whether another reading of the matrix fits better."""
+        check = self.matrix_check
+        if self.drawing is None:
+            display.statement("comparison", "No drawing is named that the mount could be compared with.")
+            return
+        errors = check.against_drawing
+        texts = []
+        if errors is not None:
+            line = self.drawing.boresight or self.drawing.sensor_axes[2]
+            clocking = "without meaning here" if errors.clocking is None else degrees_text(errors.clocking, 4)
+            texts.append(
+                f"Against the drawing {self.drawing.name} the sensor is turned by {degrees_text(errors.total, 4)} in "
+                "all: its "
+                f"boresight {line} is off by {degrees_text(errors.boresight, 4)} (boresight error), and it is turned "
+                "about "
+                f"that line by {clocking} (clocking error)."
+            )
+            self._record("boresight error", float(np.degrees(errors.boresight)), "deg", "exact")
+            if errors.clocking is not None:
+                self._record("clocking error", abs(float(np.degrees(errors.clocking))), "deg", "exact")
+        readings = ", ".join(f"{name} {away:.4f}" for name, away in check.readings)
+        texts.append(f"Distance of the matrix from the drawing, read in each way (Frobenius norm): {readings}.")
+        if check.better is not None:
+            display.finding(
+                f"{self.mount.name}:reading",
+                f"the matrix fits the drawing far better {check.better} than as given",
+                against=self.mount.name,
+            )
+        display.statement("comparison", texts)
 
     def show_checks(self) -> None:
         """The mount, the margins and the readings again by scipy."""
         mount_checks.check_mount(self.mount, self._plain["mount"])
         mount_checks.check_readings(self.table)
+        mount_tolerance.check_errors(self.mount, self.errors)
         for over, found in self.margins.items():
             assert self.mount.angles_as is not None
             region_checks.check_least_margin(
@@ -308,16 +348,3 @@ class MountCheck:
         display.record(
             quantity=quantity, of=self.mount.name, over=None, lo=value, hi=value, unit=unit, basis=basis, attained=value
         )
-
-
-_SHOWN_IN: dict[str, tuple[float, str]] = {
-    "accelerometer": (1.0, "g"),
-    "gyro": (float(np.degrees(1.0)), "deg/s"),
-    "clinometer": (float(np.degrees(1.0)), "deg"),
-    "magnetometer": (1.0, "field"),
-    "star_tracker": (1.0, "1"),
-}
-
-
-def _signed(value: float) -> str:
-    return f"{round(float(value), 2) + 0.0:+.2f}".replace("-", "−")
