@@ -16,7 +16,7 @@ from numpy.typing import ArrayLike, NDArray
 from trunnion.attitude.rotations import matrix_from_quaternion, require_rotation
 from trunnion.attitude.sequences import Sequence
 from trunnion.attitude.words import listed
-from trunnion.crosswalk.fitting import FEWEST_TO_TRIM, KEPT_SHARE, Constants, Fitted, fit, scores
+from trunnion.crosswalk.fitting import FEWEST_TO_TRIM, KEPT_SHARE, Constants, Fitted, fit, nearest_rotations, scores
 from trunnion.crosswalk.readings import COLUMN_ORDERS, Chain, all_chains, chain_matrices
 from trunnion.errors import AttitudeError
 
@@ -27,6 +27,9 @@ ROUNDING = 1e-6
 
 LARGEST_NOISE = np.radians(1.0)
 """rad per axis; where no noise is stated, a best fit worse than this noise would give is called a miss."""
+
+PRINTED = 5e-3
+"""Entries of M^T M of a matrix with three printed decimals may miss the identity's by this; common practice."""
 
 RATIO = 2.0
 """Where no noise is stated, readings within this factor of the best fit are not told apart."""
@@ -174,11 +177,19 @@ def matrix_readings(entries: ArrayLike) -> list[tuple[str, Array]]:
             "every matrix has determinant −1: one of the two frames is left-handed",
             remedy="reverse one axis of that frame (one row or one column) and state it as left-handed",
         )
-    require_rotation(M, "a matrix")
+    M = printed_rotations(M, "a matrix")
     return [
         ("entries by rows, maps body to reference", M),
         ("entries by columns, or by rows and maps reference to body", np.swapaxes(M, -1, -2)),
     ]
+
+
+def printed_rotations(matrices: ArrayLike, what: str) -> Array:
+    """The nearest rotations (N, 3, 3) to matrices as printed or logged: entries may be rounded to three decimals.
+
+    Raises AttitudeError for anything farther from a rotation, reflections named.
+    """
+    return nearest_rotations(require_rotation(np.asarray(matrices, dtype=float), what, PRINTED))
 
 
 def checked_samples(numbers: ArrayLike, truth: ArrayLike) -> tuple[Array, Array]:

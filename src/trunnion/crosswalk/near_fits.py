@@ -17,8 +17,15 @@ def difference(one: Chain, other: Chain, names: tuple[str, str, str]) -> str:
     """How `other` reads the numbers differently from `one`: the fewest mistakes that turn one into the other."""
     if one == other:
         return "the same reading"
+    if one.degrees is other.degrees and _turned(one) == _turned(other):
+        return f"the turns taken in the order {', '.join(names[column] for column in other.columns)}"
     pairs = itertools.product(one.readings(), other.readings())
     return listed(min((_mistakes(a, b, names) for a, b in pairs), key=len))
+
+
+def _turned(chain: Chain) -> set[tuple[int, int, int]]:
+    """Which signed axis each column turns about."""
+    return set(zip(chain.columns, chain.axes, chain.signs, strict=True))
 
 
 def explanations(found: Identification, names: tuple[str, str, str], most: int = 5) -> list[str]:
@@ -55,7 +62,7 @@ def in_common(found: Identification, names: tuple[str, str, str]) -> list[str]:
             lines.append(f"{name} turns about {'' if sign > 0 else '−'}{'xyz'[axis]}")
     first = {chain.columns for chain in chains}
     if len(first) == 1:
-        lines.append(f"the turns come in the order {listed([names[column] for column in chains[0].columns])}")
+        lines.append(f"the turns come in the order {', '.join(names[column] for column in chains[0].columns)}")
     return lines
 
 

@@ -87,7 +87,7 @@ class _Check:
 
     def everything(self) -> None:
         """Build everything that can be built; whatever keeps a part from meaning one thing is noted."""
-        for section in ("frames", "conventions", "mounts", "envelopes", "links", "gimbals", *HARDWARE):
+        for section in ("frames", "conventions", "forms", "mounts", "envelopes", "links", "gimbals", *HARDWARE):
             for name in getattr(self.model, section):
                 self.resolver.build(section, name)
         for name, frame in self.model.frames.items():
@@ -158,7 +158,7 @@ class _Check:
     def _joined_frames(self) -> Iterator[str]:
         """Frames mentioned by anything; read from the file itself, so that faults elsewhere do not add
         noise."""
-        for section in ("conventions", "mounts", "envelopes", "links", "gimbals", "surveys"):
+        for section in ("conventions", "forms", "mounts", "envelopes", "links", "gimbals", "surveys"):
             node = self.tree.child(section)
             if node is not None:
                 yield from _words_in(node)

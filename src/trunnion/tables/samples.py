@@ -17,7 +17,8 @@ from numpy.typing import NDArray
 
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.frames import Frame
-from trunnion.attitude.rotations import matrix_from_quaternion, require_rotation
+from trunnion.attitude.rotations import matrix_from_quaternion
+from trunnion.crosswalk.identify import printed_rotations
 from trunnion.crosswalk.known_attitudes import from_gravity_and_heading, from_poses
 from trunnion.crosswalk.study import Evidence
 from trunnion.errors import Fault, Place, TableError
@@ -262,7 +263,7 @@ def _truth(
         words = f"the quaternion, scalar {plain['scalar']}, {plain['maps']}"
     else:
         R = np.where(good[:, None, None], values.reshape(-1, 3, 3), np.eye(3))
-        R = require_rotation(R if plain["order"] == "rows" else np.swapaxes(R, 1, 2), "a known matrix")
+        R = printed_rotations(R if plain["order"] == "rows" else np.swapaxes(R, 1, 2), "a known matrix")
         words = f"the matrix by {plain['order']}, {plain['maps']}"
     return (R if plain["maps"] == "body to reference" else np.swapaxes(R, 1, 2)), words, good
 
