@@ -341,10 +341,12 @@ class DirectionRoll:
 class RotationVector:
     """Axis of the single turn from the reference to the body, times its angle: (x, y, z) rad, length in [0, pi].
 
-    The same components in both frames, since the turn leaves its axis alone.
+    The same components in both frames, since the turn leaves its axis alone. With `reverse` the numbers are those of
+    the inverse map (reference to body components): the opposite vector.
     """
 
     names: tuple[str, str, str] = ("x", "y", "z")
+    reverse: bool = False
 
     @property
     def singular_set(self) -> str:
@@ -353,11 +355,11 @@ class RotationVector:
 
     def rotation(self, values: ArrayLike) -> Array:
         """R (..., 3, 3) of vectors (..., 3) rad of any length."""
-        return from_rotation_vector(values)
+        return from_rotation_vector(-np.asarray(values, dtype=float) if self.reverse else values)
 
     def numbers(self, R: ArrayLike) -> FormNumbers:
         """Vectors (..., 3) rad of length at most pi; at half a turn the first non-zero component is positive."""
-        vector = rotation_vector(R)
+        vector = rotation_vector(np.swapaxes(np.asarray(R, dtype=float), -1, -2) if self.reverse else R)
         margin = self.margin(R)
         return FormNumbers(vector, margin, margin == 0.0, np.zeros(margin.shape, dtype=bool))
 

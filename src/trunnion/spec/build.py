@@ -35,6 +35,11 @@ def convention_from_plain(plain: Mapping[str, Any]) -> Convention:
     return convention
 
 
+def form_from_plain(plain: Mapping[str, Any]) -> Any:
+    """The `attitude.stated_forms.StatedForm` a plain part describes, its frames written out."""
+    return _find("forms", dict(plain), ())
+
+
 def mount_from_plain(plain: Mapping[str, Any]) -> Any:
     """The `hardware.mounts.Mount` a plain part describes, its host written out."""
     return _find("mounts", dict(plain), ())
@@ -97,6 +102,7 @@ def _adapter(section: str) -> TypeAdapter[Any]:
     kinds: dict[str, Any] = {
         "frames": parts.Frame,
         "conventions": parts.Convention,
+        "forms": parts.Form,
         "mounts": parts.Mount,
         "envelopes": parts.Envelope,
         "links": parts.Link,

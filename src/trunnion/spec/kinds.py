@@ -286,7 +286,7 @@ _add(
 _add(
     "repeated-angle",
     "two angles are both called '{name}'",
-    "give each of the three turns its own name, first turn first",
+    "give each of the three its own name, in their order",
 )
 _add("range-impossible", "these ranges are impossible: {why}", "{remedy}")
 _add("empty-range", "{angle} could take the value {text} only", "give two ends, or leave the range out")

@@ -16,6 +16,7 @@ from trunnion.spec.parts import (
     Deviation,
     Document,
     Envelope,
+    Form,
     Frame,
     Gimbal,
     Link,
@@ -38,6 +39,7 @@ NAMED_SECTIONS = {
     "frames": "frame",
     "links": "link",
     "conventions": "convention",
+    "forms": "form",
     "envelopes": "envelope",
     "mounts": "mount",
     "gimbals": "gimbal",
@@ -71,6 +73,7 @@ class WorkbookFile(Part):
     frames: dict[Name, Frame] = Field(default_factory=dict)
     links: dict[Name, Link] = Field(default_factory=dict)
     conventions: dict[Name, Convention] = Field(default_factory=dict)
+    forms: dict[Name, Form] = Field(default_factory=dict)
     envelopes: dict[Name, Envelope] = Field(default_factory=dict)
     mounts: dict[Name, Mount] = Field(default_factory=dict)
     gimbals: dict[Name, Gimbal] = Field(default_factory=dict)

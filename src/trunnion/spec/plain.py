@@ -30,6 +30,7 @@ def plain_part(workbook: Workbook, kind: str, name: str) -> dict[str, Any]:
     writers = {
         "conventions": _convention,
         "envelopes": _envelope,
+        "forms": _form,
         "mounts": _mount,
         "links": _link,
         "gimbals": _gimbal,
@@ -53,6 +54,11 @@ def _convention(workbook: Workbook, part: parts.Convention, made: dict[str, Any]
     for key in ("zero", "body turned by", "reference turned by"):
         if isinstance(made.get(key), dict):
             _inline(workbook, "conventions", made[key], "convention")
+
+
+def _form(workbook: Workbook, part: Any, made: dict[str, Any]) -> None:
+    for key in ("reference", "body"):
+        _inline(workbook, "frames", made, key)
 
 
 def _mount(workbook: Workbook, part: Any, made: dict[str, Any]) -> None:

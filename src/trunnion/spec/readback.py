@@ -15,6 +15,7 @@ import numpy as np
 
 from trunnion.attitude import words
 from trunnion.attitude.conventions import Convention
+from trunnion.attitude.stated_forms import StatedForm, form_sentences, worked_sentences
 from trunnion.spec import parts
 from trunnion.spec.frame_words import carried_words, north_words, text_words
 from trunnion.spec.resolve import Resolver
@@ -40,6 +41,8 @@ def read_back(workbook: Workbook) -> list[Section]:
     for name in workbook.conventions:
         lines = _convention(workbook.conventions[name], resolver.build("conventions", name))
         sections.append(Section(f"Convention {name}", tuple(lines)))
+    for name, form in workbook.forms.items():
+        sections.append(Section(f"Form {name}", tuple(_form(form, resolver.build("forms", name)))))
     for name, envelope in workbook.envelopes.items():
         sections.append(Section(f"Envelope {name}", tuple(_envelope(envelope))))
     for name, mount in workbook.mounts.items():
@@ -122,6 +125,15 @@ def _constants(convention: Convention) -> Iterator[str]:
         yield "A constant stands on the reference side: R = constant times the three turns, which come after it."
     if not np.allclose(convention.right, identity, atol=1e-12, rtol=0.0):
         yield "A constant stands on the body side: R = the three turns times constant, which is inside them all."
+
+
+def _form(part: Any, stated: StatedForm) -> Iterator[str]:
+    yield f"{stated.kind[0].upper()}{stated.kind[1:]}: {stated.body.name} relative to {stated.reference.name}."
+    yield from form_sentences(stated)
+    yield from worked_sentences(stated)
+    yield f"Singular: {stated.form.singular_set}."
+    if part.source:
+        yield f"Source: {part.source}."
 
 
 # --- envelopes -----------------------------------------------------------------------------------------------------

@@ -118,6 +118,12 @@ def _envelope(ctx: Context, name: str, part: Any) -> Any:
     return part if check_envelope(ctx, name, part) else None
 
 
+def _form(ctx: Context, name: str, part: Any) -> Any:
+    from trunnion.spec.meaning.forms import build_form
+
+    return build_form(ctx, name, part)
+
+
 def _link(ctx: Context, name: str, part: Any) -> Any:
     from trunnion.spec.meaning.links import check_link
 
@@ -144,6 +150,7 @@ BUILDERS: dict[str, Callable[[Context, str, Any], Any]] = {
     "budgets": _hardware("build_budget"),
     "frames": build_frame,
     "conventions": build_convention,
+    "forms": _form,
     "mounts": _mount,
     "envelopes": _envelope,
 }

@@ -11,6 +11,7 @@ from trunnion.errors import Fault, Place
 from trunnion.spec.fields import known_keys
 from trunnion.spec.kinds import KINDS, fault, nearest, suggestion
 from trunnion.spec.parts.envelopes import ENVELOPE_FORMS
+from trunnion.spec.parts.forms import FORMS
 from trunnion.spec.parts.hardware import PASS_FORMS, TERM_FORMS
 from trunnion.spec.parts.mounts import MOUNT_FORMS
 from trunnion.spec.tree import Node
@@ -41,6 +42,15 @@ _EXAMPLES = {
     "over": "over: [ordinary, wing-last]",
     "rests on": "rests on: [C02]",
     "result": "result: lock margin",
+}
+_FORM_EXAMPLES = {
+    "types": "types: [sine, sine]",
+    "heading from": "heading from: north",
+    "headings grow": "headings grow: clockwise",
+    "azimuth from": "azimuth from: north",
+    "azimuths grow": "azimuths grow: clockwise",
+    "roll": "roll: right-handed",
+    "maps": "maps: body to reference",
 }
 
 
@@ -153,6 +163,8 @@ def _missing_key(node: Node, key: str, taken: list[str | int], root: Node, file:
         return fault("no-reference", place, key=key, frames=names)
     if key == "maps" and in_convention:
         return fault("no-maps", place)
+    if taken[:1] == ["forms"] and key in _FORM_EXAMPLES:
+        return fault("missing-key", place, name=key, example=_FORM_EXAMPLES[key])
     return fault("missing-key", place, name=key, example=_EXAMPLES.get(key, f"{key}: …"))
 
 
@@ -176,6 +188,8 @@ def _forms_at(taken: list[str | int]) -> tuple[str, tuple[str, ...]]:
         return "mount", tuple(MOUNT_FORMS)
     if taken[0] == "passes":
         return "pass", tuple(PASS_FORMS)
+    if taken[0] == "forms":
+        return "form", tuple(FORMS)
     if taken[0] == "budgets":
         return "term", tuple(TERM_FORMS)
     if taken[-1] == "north":

@@ -18,6 +18,7 @@ from trunnion.spec.parts import (
     Deviation,
     Document,
     Envelope,
+    Form,
     Frame,
     Gimbal,
     Link,
@@ -82,6 +83,11 @@ class Workbook:
     def mounts(self) -> Mapping[str, Mount]:
         """Mounts by name."""
         return self.file.mounts
+
+    @property
+    def forms(self) -> Mapping[str, Form]:
+        """Forms that are no sequence, by name."""
+        return self.file.forms
 
     @property
     def gimbals(self) -> Mapping[str, Gimbal]:

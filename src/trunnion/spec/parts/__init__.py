@@ -13,6 +13,7 @@ from trunnion.spec.parts.envelopes import (
     Product,
     Table,
 )
+from trunnion.spec.parts.forms import Form, PointingForm, TiltForm, VectorForm
 from trunnion.spec.parts.frames import Frame
 from trunnion.spec.parts.hardware import Budget, CircularPass, Gimbal, Pass, Sector, Survey, TablePass
 from trunnion.spec.parts.mounts import AnglesAs, Mount, Tolerance
@@ -45,6 +46,7 @@ __all__ = [
     "Deviation",
     "Document",
     "Envelope",
+    "Form",
     "Frame",
     "Gimbal",
     "Link",
@@ -54,6 +56,7 @@ __all__ = [
     "Pass",
     "Person",
     "Phases",
+    "PointingForm",
     "Poses",
     "Product",
     "Requirement",
@@ -64,5 +67,7 @@ __all__ = [
     "Survey",
     "Table",
     "TablePass",
+    "TiltForm",
     "Tolerance",
+    "VectorForm",
 ]
