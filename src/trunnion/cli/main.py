@@ -39,6 +39,7 @@ COMMANDS = (
     Entry("impact", "Say what a change touches and why; nothing is run.", CHANGE),
     Entry("compare", "Compare two revisions or folders, verdict flips first.", CHANGE),
     Entry("revise", "Open the next revision.", CHANGE),
+    Entry("bench", "Print a mount's bench check sheet, or judge the readings filled in.", HAND_OVER),
     Entry("handover", "Hand a convention over with reference attitudes and source code.", HAND_OVER),
     Entry("bind", "Bind the package again from stored results.", HAND_OVER),
     Entry("finding", "Add, answer, close and list findings.", RECORD),
