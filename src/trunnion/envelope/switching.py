@@ -325,10 +325,11 @@ def rank_switched(
     tolerance: float = np.radians(0.05),
     seconds: float = 20.0,
 ) -> list[SwitchedSet]:
-    """All sets of `size` of the conventions, best guaranteed margin first."""
+    """All sets of `size` of the conventions, best margin first; sets no farther apart than the brackets are wide stay in
+    the order in which they are stated, whatever time the search had."""
     sets = list(combinations(conventions, size))
     if not sets:
         raise RegionError(f"{len(conventions)} conventions hold no set of {size}", remedy="name more conventions")
     share = seconds / len(sets)
     found = [SwitchedSet(s, switched_margin(region, s, tolerance=tolerance, seconds=share)) for s in sets]
-    return sorted(found, key=lambda item: -item.margin.lo)
+    return sorted(found, key=lambda item: -round(item.margin.hi / (2.0 * tolerance)))

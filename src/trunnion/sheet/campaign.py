@@ -263,10 +263,10 @@ class CampaignSweep:
 
     def _check_followed(self, name: str, least: Extreme) -> None:
         """The governing run followed by scipy's own slerp; other motions between rows have no such twin."""
-        if self.plan.between is not Between.SLERP or self.plan.longest_gap is not None:
+        if self.plan.between is not Between.SLERP:
             return
-        run = self._governing(least)
-        found = followed_least(self.runs[run], convention=self.conventions[name])
+        run, gap = self._governing(least), self.plan.longest_gap or np.inf
+        found = followed_least(self.runs[run], convention=self.conventions[name], longest_gap=gap)
         display.check(
             f"check:{name}:followed",
             f"least lock margin of {name} along {run}",

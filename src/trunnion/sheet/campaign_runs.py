@@ -94,12 +94,17 @@ def second_look(run: Run, *, conventions: Sequence[Convention], most_rows: int) 
     return SecondLook(run.name, rows, looked_at, least)
 
 
-def followed_least(run: Run, *, convention: Convention) -> float:
-    """The least lock margin (deg) of a whole run read as slerp, by scipy, part by part with the steps between parts."""
+def followed_least(run: Run, *, convention: Convention, longest_gap: float = np.inf) -> float:
+    """The least lock margin (deg) of a whole run read as slerp, by scipy, part by part with the steps between parts.
+
+    Rows further apart in time than `longest_gap` s are not joined.
+    """
     best = np.inf
     times, quaternions = np.empty(0), np.empty((0, 4))
     for next_times, next_quaternions in read_run(run):
         times = np.concatenate([times[-1:], next_times])
         quaternions = np.concatenate([quaternions[-1:], next_quaternions])
-        best = min(best, independent.track_margin_deg(convention, times, quaternions)[0])
+        cuts = np.flatnonzero(np.diff(times) > longest_gap) + 1
+        for moments, rows in zip(np.split(times, cuts), np.split(quaternions, cuts), strict=True):
+            best = min(best, independent.track_margin_deg(convention, moments, rows)[0])
     return best

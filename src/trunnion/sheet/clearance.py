@@ -11,23 +11,33 @@ import numpy as np
 from numpy.typing import NDArray
 
 from trunnion.attitude.frames import Frame
+from trunnion.envelope.clearance import Directions, clearance_along, clearance_to_any
 from trunnion.envelope.margins import direction_clearance
-from trunnion.envelope.regions import Region
+from trunnion.envelope.regions import Region, Track
 from trunnion.envelope.results import AngleRange, Extreme
+from trunnion.errors import CalculationError
 from trunnion.sheet import display, independent, parameters, region_checks
 from trunnion.sheet.describe import region_rows, words
 from trunnion.sheet.rounding import ceiling_text, floor_text
+from trunnion.spec.meaning.envelopes import STATEMENT_KEYS
+from trunnion.tables.directions import read_direction_table
 
 Array = NDArray[np.float64]
 
 
 @dataclass(frozen=True, eq=False)
 class _Pair:
-    """A body direction (3,) and the reference direction (3,) it is held against, with both in words."""
+    """A body direction (3,) and the reference direction it is held against, with both in words.
+
+    reference: (3,), or a table of directions that move; same_time: against it at the time of each row of a table of
+    attitudes, else against all of its directions whenever they are met. origin: s, of the directions' clock.
+    """
 
     body: Array
-    reference: Array
+    reference: Array | Directions
     words: str
+    same_time: bool = False
+    origin: float = 0.0
 
 
 class DirectionClearance:
@@ -49,11 +59,30 @@ class DirectionClearance:
     @cached_property
     def clearances(self) -> dict[tuple[str, str], AngleRange]:
         """Least and largest angle by (pair, region)."""
-        return {
-            (name, over): direction_clearance(region, pair.body, pair.reference)
-            for name, pair in self.pairs.items()
-            for over, region in self.regions.items()
-        }
+        return {(name, over): self._clearance(pair, over) for name, pair in self.pairs.items() for over in self.regions}
+
+    def _clearance(self, pair: _Pair, over: str) -> AngleRange:
+        region = self.regions[over]
+        if not isinstance(pair.reference, Directions):
+            return direction_clearance(region, pair.body, pair.reference)
+        if not pair.same_time:
+            return clearance_to_any(region, pair.body, pair.reference)
+        return clearance_along(self._track(over), pair.body, self._shifted(pair, over))
+
+    def _track(self, over: str) -> Track:
+        region = self.regions[over]
+        if not isinstance(region, Track):
+            raise CalculationError(
+                f"'{over}' is no table of attitudes, so that there is no same time for direction and attitude",
+                remedy="write `at: any time`, or give the table of a run",
+            )
+        return region
+
+    def _shifted(self, pair: _Pair, over: str) -> Directions:
+        """The directions on the clock of a region's table, whose times count from its own origin."""
+        assert isinstance(pair.reference, Directions)
+        origin = parameters.open_table(_statement(self._plain["envelopes"][over])).origin
+        return Directions(pair.reference.times + (pair.origin - origin), pair.reference.directions)
 
     def show_inputs(self) -> None:
         """The directions and the regions as the injected parameters state them."""
@@ -67,9 +96,20 @@ class DirectionClearance:
 
     def show_assumptions(self) -> None:
         """What the reference directions are taken to be."""
-        display.statement(
-            "assumptions", "The reference directions stand still in the reference frame while the body moves."
-        )
+        moving = [name for name, pair in self.pairs.items() if isinstance(pair.reference, Directions)]
+        still = [name for name in self.pairs if name not in moving]
+        texts = [f"The reference directions of {', '.join(still)} stand still in the reference frame."] if still else []
+        texts += [
+            f"Between the rows of its table the reference direction of {name} moves along the great circle at a "
+            "constant rate; it is compared "
+            + (
+                "with the attitude at the same time."
+                if self.pairs[name].same_time
+                else "with every attitude of the region, whenever either occurs."
+            )
+            for name in moving
+        ]
+        display.statement("assumptions", texts)
 
     def show_clearances(self) -> None:
         """Least and largest angle of every pair over every region, recorded, and where they are reached."""
@@ -95,15 +135,20 @@ class DirectionClearance:
         """Each least and largest angle again by scipy at its witness, and by searching the region built anew."""
         for (name, over), found in self.clearances.items():
             pair = self.pairs[name]
+            shifted = self._shifted(pair, over) if pair.same_time else None
             for which, extreme in (("least", found.least), ("largest", found.largest)):
-                _check_witness(f"check:{name}:{over}:{which}", f"{which} angle of {name} over {over}", pair, extreme)
-            searched = _searched(pair, self._plain["envelopes"][over], self.regions[over])
+                _check_witness(
+                    f"check:{name}:{over}:{which}", f"{which} angle of {name} over {over}", pair, extreme, shifted
+                )
+            searched = self._searched(pair, over)
             if searched is not None:
+                low, high = (float(np.degrees(end)) for end in (found.least.lo, found.least.hi))
                 display.check(
                     f"check:{name}:{over}:search",
                     f"least angle of {name} over {over}, searched",
-                    ours=float(np.degrees(found.least.lo)),
+                    ours=low,
                     theirs=searched,
+                    difference=max(0.0, low - searched, searched - high),
                     tolerance=region_checks.SEARCH_TOLERANCE_DEG,
                     unit="deg",
                     library=independent.OPTIMISER,
@@ -126,8 +171,29 @@ class DirectionClearance:
             align="lllrl",
         )
 
+    def _searched(self, pair: _Pair, over: str) -> float | None:
+        """Least angle (deg) found by scipy over the region built anew; None for a kind that has no sampler."""
+        plain, region = self._plain["envelopes"][over], self.regions[over]
+        if pair.same_time:
+            shifted, track = self._shifted(pair, over), self._track(over)
+            least = independent.least_along(
+                track.times, track.quaternions, shifted.times, shifted.directions, body=pair.body
+            )
+            return max(0.0, least - independent.degrees(plain.get("attitude error", "0 deg")))
+        sampler = region_checks.region_sampler(plain, region)
+        if sampler is None:
+            return None
+        if isinstance(pair.reference, Directions):
+            sampler = independent.seen_by(sampler, pair.reference.times, pair.reference.directions)
+            against = pair.reference.directions[0]
+        else:
+            against = pair.reference
+        least = independent.least_value(sampler, lambda attitudes: _angles(pair.body, against, attitudes))
+        return max(0.0, least - independent.degrees(plain.get("dispersion", "0 deg")))
+
     def _record(self, quantity: str, name: str, over: str, extreme: Extreme) -> None:
-        witness = extreme.witness
+        witness, slack = extreme.witness, 1e-9
+        reached = witness is not None and extreme.lo - slack <= witness.value <= extreme.hi + slack
         display.record(
             quantity=quantity,
             of=name,
@@ -136,44 +202,77 @@ class DirectionClearance:
             hi=float(np.degrees(extreme.hi)),
             unit="deg",
             basis=extreme.basis,
-            attained=None if witness is None else float(np.degrees(witness.value)),
+            attained=float(np.degrees(witness.value)) if witness is not None and reached else None,
             witness=None
             if witness is None
             else {"matrix": witness.matrix, "where": witness.where, "time": witness.time},
         )
 
 
+def _statement(plain: Mapping[str, Any]) -> dict[str, Any]:
+    return {key: plain[key] for key in STATEMENT_KEYS if key in plain}
+
+
 def _pair(name: str, plain: Mapping[str, Any], reference: Frame, body: Frame) -> _Pair:
-    carried, against = str(plain["body"]), str(plain["reference"])
-    text = f"{carried} of {body.name} against {against} of {reference.name}"
-    return _Pair(body.direction(carried), reference.direction(against), text)
+    stray = sorted(set(plain) - {"body", "reference", "at", "source"})
+    missing = [key for key in ("body", "reference") if key not in plain]
+    if stray or missing:
+        raise CalculationError(
+            f"direction '{name}' " + (f"knows no '{stray[0]}'" if stray else f"does not say its '{missing[0]}'"),
+            remedy="write {body: forward, reference: up}, or a table of directions as reference and `at: same time`",
+        )
+    carried, against = _direction(plain["body"], body), plain["reference"]
+    told = f"{words(plain['body'])} of {body.name} against "
+    if not isinstance(against, Mapping):
+        if "at" in plain:
+            raise CalculationError(f"direction '{name}' stands still and needs no `at`", remedy="leave it out")
+        return _Pair(carried, _direction(against, reference), f"{told}{words(against)} of {reference.name}")
+    at = plain.get("at", "any time")
+    if at not in ("any time", "same time"):
+        raise CalculationError(f"direction '{name}': '{at}' is no time", remedy="write `any time` or `same time`")
+    table = read_direction_table(against, parameters.input_path(str(against.get("table", ""))).parent)
+    moving = Directions(table.times, table.directions)
+    told += f"the direction in {against['table']}, components in {reference.name}, {at}"
+    return _Pair(carried, moving, told, at == "same time", table.origin)
 
 
-def _angles(pair: _Pair, attitudes: Any) -> Array:
+def _direction(value: Any, frame: Frame) -> Array:
+    if isinstance(value, str):
+        return frame.direction(value)
+    vector = np.array(value, dtype=float)
+    if vector.shape != (3,) or not np.linalg.norm(vector) > 0.0:
+        raise CalculationError(f"{value!r} is no direction", remedy="an axis word, or three numbers not all zero")
+    return vector / np.linalg.norm(vector)
+
+
+def _angles(body: Array, reference: Array, attitudes: Any) -> Array:
     """Angles (N,) deg between the carried direction and the reference direction, by scipy's own rotation."""
-    carried = np.atleast_2d(attitudes.apply(pair.body))
-    return np.degrees(np.arctan2(np.linalg.norm(np.cross(carried, pair.reference), axis=1), carried @ pair.reference))
+    return independent.angle_deg(np.atleast_2d(attitudes.apply(body)), reference)
 
 
-def _check_witness(identity: str, what: str, pair: _Pair, extreme: Extreme) -> None:
+def _at_witness(pair: _Pair, extreme: Extreme, shifted: Directions | None) -> Array:
+    """The reference direction (3,) at the time of a witness, by scipy's slerp of the turns between rows."""
+    if not isinstance(pair.reference, Directions):
+        return pair.reference
+    moving = pair.reference if shifted is None else shifted
+    assert extreme.witness is not None
+    assert extreme.witness.time is not None
+    return independent.moved(moving.times, moving.directions, np.array([extreme.witness.time]))[0]
+
+
+def _check_witness(identity: str, what: str, pair: _Pair, extreme: Extreme, shifted: Directions | None) -> None:
     from scipy.spatial.transform import Rotation
 
-    if extreme.witness is not None:
-        display.check(
-            identity,
-            f"{what}, at its witness",
-            ours=float(np.degrees(extreme.witness.value)),
-            theirs=float(_angles(pair, Rotation.from_matrix(extreme.witness.matrix))[0]),
-            tolerance=1e-9,
-            unit="deg",
-            library=independent.LIBRARY,
-        )
-
-
-def _searched(pair: _Pair, plain: Mapping[str, Any], region: Region) -> float | None:
-    sampler = region_checks.region_sampler(plain, region)
-    if sampler is None:
-        return None
-    least = independent.least_value(sampler, lambda attitudes: _angles(pair, attitudes))
-    dispersion = plain.get("dispersion")
-    return max(0.0, least - (independent.degrees(dispersion) if dispersion is not None else 0.0))
+    if extreme.witness is None:
+        return
+    display.check(
+        identity,
+        f"{what}, at its witness",
+        ours=float(np.degrees(extreme.witness.value)),
+        theirs=float(
+            _angles(pair.body, _at_witness(pair, extreme, shifted), Rotation.from_matrix(extreme.witness.matrix))[0]
+        ),
+        tolerance=1e-9 if not isinstance(pair.reference, Directions) else 1e-7,
+        unit="deg",
+        library=independent.LIBRARY,
+    )

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.frames import Frame
-from trunnion.envelope.regions import Region, Track
+from trunnion.envelope.regions import Between, Dispersed, Mounted, Poses, Region, Track, Union
 from trunnion.envelope.results import Extreme
 from trunnion.sheet import display, independent, parameters
 
@@ -49,11 +49,13 @@ def check_least_margin(
         )
     found = searched_least(convention, plain, region, R_bs)
     if found is not None:
+        low, high = (float(np.degrees(end)) for end in (claimed.lo, claimed.hi))
         display.check(
             f"{identity}:search",
             f"{what}, searched",
-            ours=float(np.degrees(claimed.lo)),
+            ours=low,
             theirs=found,
+            difference=max(0.0, low - found, found - high),
             tolerance=SEARCH_TOLERANCE_DEG,
             unit="deg",
             library=independent.OPTIMISER,
@@ -64,39 +66,94 @@ def searched_least(
     convention: Convention, plain: Mapping[str, Any], region: Region, R_bs: Array | None = None
 ) -> float | None:
     """Least margin (deg) found in the region rebuilt from its words; None for a kind that has no sampler."""
+    region = region.region if isinstance(region, Dispersed) else region
+    found = _searched(convention, plain, region, np.eye(3) if R_bs is None else R_bs)
+    dispersion = plain.get("dispersion")
+    if found is None or dispersion is None:
+        return found
+    return max(0.0, found - independent.degrees(dispersion))
+
+
+def _searched(convention: Convention, plain: Mapping[str, Any], region: Region, R_bs: Array) -> float | None:
     from scipy.spatial.transform import Rotation
 
-    mount = Rotation.from_matrix(np.eye(3) if R_bs is None else R_bs)
+    mount = Rotation.from_matrix(R_bs)
+    if isinstance(region, Union) and "phases" in plain:
+        parts = [searched_least(convention, plain["phases"][name], part, R_bs) for name, part in region.parts.items()]
+        known = [part for part in parts if part is not None]
+        return min(known) if len(known) == len(parts) else None
+    if isinstance(region, Mounted):
+        return searched_least(convention, plain["product"]["host"], region.region, region.R_bs @ R_bs)
+    if isinstance(region, Poses) and "dispersion about" not in plain:
+        listed = independent.lock_margin_deg(convention, Rotation.from_matrix(region.matrices) * mount)
+        return max(0.0, float(listed.min()) - independent.degrees(plain.get("ball", "0 deg")))
+    if isinstance(region, Track) and region.between is Between.RATE_LIMITED:
+        return None  # floors between rows have no twin that could be searched
     if isinstance(region, Track):
         q = region.quaternions
         carried = Rotation.from_quat(q[:, [1, 2, 3, 0]]) * mount
         rows = carried.as_quat()[:, [3, 0, 1, 2]]
-        least, _ = independent.track_margin_deg(convention, region.times, rows)
+        if region.between is Between.SAMPLES:
+            least = float(independent.lock_margin_deg(convention, carried).min())
+        else:
+            cuts = np.flatnonzero(np.diff(region.times) > (region.longest_gap or np.inf)) + 1
+            pieces = zip(np.split(region.times, cuts), np.split(rows, cuts), strict=True)
+            least = min(independent.track_margin_deg(convention, times, piece)[0] for times, piece in pieces)
         error = plain.get("attitude error")
         return max(0.0, least - (independent.degrees(error) if error is not None else 0.0))
     sampler = region_sampler(plain, region)
     if sampler is None:
         return None
-    margin = independent.least_value(
+    return independent.least_value(
         sampler, lambda attitudes: independent.lock_margin_deg(convention, attitudes * mount)
     )
-    dispersion = plain.get("dispersion")
-    return max(0.0, margin - (independent.degrees(dispersion) if dispersion is not None else 0.0))
 
 
 def region_sampler(plain: Mapping[str, Any], region: Region) -> independent.Sampler | None:
-    """The sampler of a box or of a cone with any roll, from the plain words."""
+    """The sampler of a box or a cone, with what it says of further cones and turns, from the plain words."""
+    del region
     if "box" in plain:
-        return independent.sampler(plain, parameters.convention(plain["convention"]))
-    cone = plain.get("cone")
-    if cone is None or cone.get("roll", "any") != "any":
+        stated = parameters.convention(plain["convention"])
+        found, frames = independent.sampler(plain, stated), (stated.reference, stated.body)
+    elif "cone" in plain:
+        frames = (_frame(plain["reference"]), _frame(plain["body"]))
+        found = _cone_sampler(plain["cone"], *frames)
+    else:
         return None
-    axis = _frame(plain["body"]).direction(cone["axis"])
-    around = _frame(plain["reference"]).direction(cone["around"])
-    if "half angle" in cone:
-        return independent.cone_sampler(axis, around, 0.0, independent.degrees(cone["half angle"]))
-    nearest, farthest = (independent.degrees(word) for word in cone["between"])
-    return independent.cone_sampler(axis, around, nearest, farthest)
+    about = plain.get("dispersion about")
+    if found is None or (about and "also" in plain):
+        return None
+    if "also" in plain:
+        found = independent.kept(found, [_cone_numbers(cone, *frames) for cone in plain["also"]])
+    if about:
+        of_body = about["axes of"] == "body"
+        axes = np.array([_direction(word, frames[1] if of_body else frames[0]) for word in about["limits"]])
+        limits = np.array([independent.degrees(limit) for limit in about["limits"].values()])
+        found = independent.followed_by_turns(found, axes, limits, of_body=of_body)
+    return found
+
+
+def _cone_sampler(cone: Mapping[str, Any], reference: Frame, body: Frame) -> independent.Sampler:
+    axis, around, nearest, farthest = _cone_numbers(cone, reference, body)
+    free = independent.cone_sampler(axis, around, nearest, farthest)
+    roll = cone.get("roll", "any")
+    if roll == "any":
+        return free
+    ends = np.array(independent.range_deg(roll["range"]))
+    return independent.rolled_cone_sampler(free, axis, around, _direction(roll["zero"], body), ends)
+
+
+def _cone_numbers(cone: Mapping[str, Any], reference: Frame, body: Frame) -> tuple[Array, Array, float, float]:
+    words = cone.get("between") or ["0 deg", cone["half angle"]]
+    nearest, farthest = (independent.degrees(word) for word in words)
+    return _direction(cone["axis"], body), _direction(cone["around"], reference), nearest, farthest
+
+
+def _direction(value: Any, frame: Frame) -> Array:
+    """A direction in words or three numbers, read here on purpose a second time."""
+    if isinstance(value, str):
+        return frame.direction(value)
+    return np.array(value, dtype=float) / np.linalg.norm(value)
 
 
 def _frame(plain: Mapping[str, Any]) -> Frame:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import replace
 from functools import cached_property
 from typing import Any
 
@@ -15,7 +16,7 @@ from trunnion.attitude.noise import linear_noise
 from trunnion.attitude.sequences import Sequence
 from trunnion.envelope.demand import peak_demand
 from trunnion.envelope.margins import entry_margin_table, lock_margin
-from trunnion.envelope.regions import Region, Track, Union
+from trunnion.envelope.regions import Dispersed, Mounted, Region, Track, Union
 from trunnion.envelope.results import AngleRange, Extreme
 from trunnion.envelope.shares import shares_near_lock
 from trunnion.envelope.subdivision import self_check
@@ -194,7 +195,7 @@ class EnvelopeSweep:
         """Shares of each region, or of the time of each table, within given distances of lock."""
         rows = []
         for name, convention in self.conventions.items():
-            for over, region in self.regions.items():
+            for over, region in self._measurable():
                 shares = shares_near_lock(region, convention, np.radians(_NEAR_LOCK_DEG))
                 display.record(
                     quantity=f"share within {_NEAR_LOCK_DEG[-1]:g} deg of lock",
@@ -319,6 +320,10 @@ class EnvelopeSweep:
         """Guaranteed least angle (3, 3) rad between reference axis i and body axis k over all regions together."""
         return entry_margin_table(Union(dict(self.regions))).least
 
+    def _measurable(self) -> list[tuple[str, Region]]:
+        """Regions that have a measure of their own: phases one by one, since they have none in common."""
+        return [found for over, region in self.regions.items() for found in _phases_apart(over, region)]
+
     def _tracks(self) -> dict[str, Track]:
         return {name: region for name, region in self.regions.items() if isinstance(region, Track)}
 
@@ -388,6 +393,14 @@ class EnvelopeSweep:
             return f"{over}: {err.fault.cause}."
         margin = ceiling_text(float(np.degrees(needed)))
         return f"{over}: a limit of {limit} on the outer angle rates needs a margin of {margin}°."
+
+
+def _phases_apart(name: str, region: Region) -> list[tuple[str, Region]]:
+    if isinstance(region, Union):
+        return [found for part, inner in region.parts.items() for found in _phases_apart(f"{name}, {part}", inner)]
+    if isinstance(region, Dispersed | Mounted):
+        return [(part, replace(region, region=inner)) for part, inner in _phases_apart(name, region.region)]
+    return [(name, region)]
 
 
 def _share_text(low: float, high: float) -> str:

@@ -11,9 +11,11 @@ from numpy.typing import NDArray
 
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.words import axis_words, degrees_text
+from trunnion.envelope.both_sides import BothSides, best_zero_both_sides
 from trunnion.envelope.margins import lock_margin
 from trunnion.envelope.regions import Region, Union
 from trunnion.envelope.zero import Side, ZeroChoice, best_right_angle_zero, best_zero
+from trunnion.errors import CalculationError
 from trunnion.sheet import display, parameters, region_checks
 from trunnion.sheet.describe import convention_rows, region_rows
 from trunnion.sheet.maps import region_samples
@@ -27,16 +29,24 @@ _SHOWN_RIGHT_ANGLES = 6
 class ZeroAttitude:
     """One convention and the regions it must serve; each `show_…` displays one part and records what it finds."""
 
-    def __init__(self, *, convention: Mapping[str, Any], envelopes: Mapping[str, Any]) -> None:
+    def __init__(
+        self, *, convention: Mapping[str, Any], envelopes: Mapping[str, Any], both_sides: bool | str = False
+    ) -> None:
         self._plain = {"convention": dict(convention), "envelopes": dict(envelopes)}
         self.convention: Convention = parameters.convention(convention)
         self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
         self.whole = Union(dict(self.regions))
+        self._wants_both = _yes(both_sides, "both sides")
 
     @cached_property
     def free(self) -> dict[Side, ZeroChoice]:
         """The best constant on each side, any rotation allowed."""
         return {side: best_zero(self.whole, self.convention, side) for side in Side}
+
+    @cached_property
+    def both(self) -> BothSides:
+        """The best constants found on both sides at once, with the bracket of what any pair could give."""
+        return best_zero_both_sides(self.whole, self.convention)
 
     @cached_property
     def right_angles(self) -> dict[Side, list[ZeroChoice]]:
@@ -101,14 +111,37 @@ class ZeroAttitude:
     def show_matrices(self) -> None:
         """The constants themselves, as rotations from today's."""
         for side, choice in self.free.items():
-            matrix = choice.convention.left if side is Side.REFERENCE else choice.convention.right
-            display.table(
-                f"tbl:constant-{side.name.lower()}",
-                ["row", "1", "2", "3"],
-                [[str(row + 1), *(f"{float(v):+.9f}".replace("-", "−") for v in matrix[row])] for row in range(3)],
-                caption=f"The constant on the {side.value} to state in the spec",
-                align="lrrr",
-            )
+            self._show_matrix(side.name.lower(), side, choice.convention, "to state in the spec")
+
+    def _show_matrix(self, identity: str, side: Side, convention: Convention, words: str) -> None:
+        matrix = convention.left if side is Side.REFERENCE else convention.right
+        display.table(
+            f"tbl:constant-{identity}",
+            ["row", "1", "2", "3"],
+            [[str(row + 1), *(f"{float(v):+.9f}".replace("-", "−") for v in matrix[row])] for row in range(3)],
+            caption=f"The constant on the {side.value} {words}",
+            align="lrrr",
+        )
+
+    def show_both_sides(self) -> None:
+        """Constants on both sides at once, if asked for: what is guaranteed, and what no pair can pass."""
+        if not self._wants_both:
+            display.statement("both-sides", "Constants on both sides at once were not asked for.")
+            return
+        least = self.both.margin.least
+        self._record("lock margin with best zero", "both sides", least.lo, self.both.upper, least.basis.value)
+        low, high = (float(np.degrees(end)) for end in (least.lo, self.both.upper))
+        gap = f"{ceiling_text(float(np.degrees(self.both.gap)), 3)}°"
+        display.statement(
+            "both-sides",
+            [
+                f"With the constants below on both sides the least margin is {floor_text(low)}°; no pair of constants "
+                f"gives more than {ceiling_text(high)}°. The gap of {gap} remains open: "
+                + ("it is as narrow as asked for." if self.both.finished else "the time ran out before it closed."),
+            ],
+        )
+        for side in Side:
+            self._show_matrix(f"both-{side.name.lower()}", side, self.both.convention, "with both sides chosen")
 
     def show_right_angles(self) -> None:
         """The right-angle choices, best first: they keep the familiar axes."""
@@ -158,15 +191,20 @@ class ZeroAttitude:
     def show_checks(self) -> None:
         """The margins with each chosen zero again by scipy."""
         for side, choice in self.free.items():
-            for over, region in self.regions.items():
-                region_checks.check_least_margin(
-                    f"check:{side.name.lower()}:{over}",
-                    f"least margin over {over} with the best constant on the {side.value}",
-                    convention=choice.convention,
-                    plain=self._plain["envelopes"][over],
-                    region=region,
-                    claimed=lock_margin(region, choice.convention).least,
-                )
+            self._check(side.name.lower(), f"with the best constant on the {side.value}", choice.convention)
+        if self._wants_both:
+            self._check("both", "with the best constants on both sides", self.both.convention)
+
+    def _check(self, identity: str, words: str, convention: Convention) -> None:
+        for over, region in self.regions.items():
+            region_checks.check_least_margin(
+                f"check:{identity}:{over}",
+                f"least margin over {over} {words}",
+                convention=convention,
+                plain=self._plain["envelopes"][over],
+                region=region,
+                claimed=lock_margin(region, convention).least,
+            )
 
     def show_results(self) -> None:
         """What was found, in one table."""
@@ -175,6 +213,9 @@ class ZeroAttitude:
         for side, choice in self.free.items():
             gap = f"{ceiling_text(float(np.degrees(choice.gap)), 3)}°"
             rows.append([f"best on the {side.value}", f"{floor_text(float(np.degrees(choice.margin.least.lo)))}°", gap])
+        if self._wants_both:
+            low, gap = self.both.margin.least.lo, f"{ceiling_text(float(np.degrees(self.both.gap)), 3)}°"
+            rows.append(["best found on both sides", f"{floor_text(float(np.degrees(low)))}°", gap])
         display.table(
             "tbl:results",
             ["zero", "guaranteed margin", "gap to the upper bound"],
@@ -196,3 +237,11 @@ class ZeroAttitude:
             unit="deg",
             basis=basis,
         )
+
+
+def _yes(value: bool | str, what: str) -> bool:
+    """`yes`/`no` as a spec has them, or true/false."""
+    words = {"yes": True, "no": False, "": False, True: True, False: False}
+    if value not in words:
+        raise CalculationError(f"'{value}' is no answer to '{what}'", remedy="write yes or no")
+    return words[value]
