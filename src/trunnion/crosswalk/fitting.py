@@ -117,10 +117,23 @@ def _both_sides(candidates: Array, truth: Array) -> tuple[Array, Array]:
     first = _aligned(candidates, truth)
     right = _robust_mean(np.swapaxes(first[:, None] @ candidates, -1, -2) @ truth)
     left = first
+    few = len(truth) < FEWEST_TO_TRIM
     for _ in range(_BOTH_ROUNDS):
-        left = _robust_mean(truth @ np.swapaxes(candidates @ right[:, None], -1, -2))
-        right = _robust_mean(np.swapaxes(left[:, None] @ candidates, -1, -2) @ truth)
+        placed = candidates @ right[:, None]
+        residuals = angle_between(left[:, None] @ placed, truth)
+        weights = np.ones_like(residuals) if few else 1.0 / np.maximum(residuals, _LEAST_RESIDUAL)
+        left = _weighted(weights, truth, placed)
+        right = np.swapaxes(
+            _weighted(weights, np.swapaxes(truth, -1, -2), np.swapaxes(left[:, None] @ candidates, -1, -2)), -1, -2
+        )
     return left, right
+
+
+def _weighted(weights: Array, truth: Array, placed: Array) -> Array:
+    """Left constant (K, 3, 3) that best carries placed (K, N, 3, 3) onto the truth (N, 3, 3) with weights (K, N)."""
+    one = (weights[..., None, None] * placed).transpose(0, 2, 1, 3).reshape(len(placed), 3, -1)
+    other = truth.transpose(1, 0, 2).reshape(3, -1)
+    return nearest_rotations(other @ np.swapaxes(one, -1, -2))
 
 
 def _aligned(candidates: Array, truth: Array) -> Array:

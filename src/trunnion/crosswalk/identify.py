@@ -36,7 +36,7 @@ RATIO = 2.0
 
 _SURE = 4.75  # normal deviate of one in a million
 _LESS_LIKELY = 2.0 * np.log(1e5)
-_SPREAD = 24  # samples that eliminate readings before all are used
+SPREAD = 24  # samples that eliminate readings before all are used
 _SEED = 3
 
 
@@ -121,7 +121,7 @@ def identify_angles(
     """
     written, R = checked_samples(numbers, truth)
     chains = _class_chains() if constants is Constants.BOTH else all_chains()
-    some = _well_spread(written) if len(R) > 2 * _SPREAD else np.arange(len(R))
+    some = well_spread(written) if len(R) > 2 * SPREAD else np.arange(len(R))
     fitted = fit(_attitudes(chains, written[some]), R[some], constants)
     chosen = list(chains)
     if len(some) < len(R):
@@ -242,7 +242,7 @@ def chain_reading(chain: Chain, constants: Constants, names: tuple[str, str, str
     return Reading(words, (words,), chain, chain)
 
 
-def _well_spread(written: Array) -> NDArray[np.intp]:
+def well_spread(written: Array) -> NDArray[np.intp]:
     """Indices of samples whose numbers are far from each other: each time the one farthest from those already taken.
 
     The numbers are looked at, not the known attitudes, whose false values would be taken first.
@@ -250,7 +250,7 @@ def _well_spread(written: Array) -> NDArray[np.intp]:
     scaled = written / np.maximum(np.ptp(written, axis=0), 1e-12)
     chosen = [0]
     distance = np.full(len(scaled), np.inf)
-    while len(chosen) < _SPREAD:
+    while len(chosen) < SPREAD:
         distance = np.minimum(distance, np.sum((scaled - scaled[chosen[-1]]) ** 2, axis=1))
         chosen.append(int(np.argmax(distance)))
     return np.array(chosen)

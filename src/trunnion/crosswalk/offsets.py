@@ -25,7 +25,9 @@ Array = NDArray[np.float64]
 
 _USED = 16  # samples that choose the candidates
 _SWEEPS = 5
-_REFINED = 48
+_REFINED = 64
+_REFINED_ON = 48
+_POLISHED = 6
 _STEPS = 12
 _SAME = 1e-6  # rad; predictions this near are one function
 _PROBES = np.random.default_rng(11).uniform(-3.0, 3.0, size=(6, 3))
@@ -38,6 +40,14 @@ class WithOffsets:
 
     chain: Chain
     offsets: tuple[float, float, float]
+
+    @property
+    def turns(self) -> tuple[float, float, float]:
+        """The offsets (rad) as turns of the three factors."""
+        first, second, third = (
+            sign * self.offsets[column] for sign, column in zip(self.chain.signs, self.chain.columns, strict=True)
+        )
+        return first, second, third
 
     def matrix(self, numbers: ArrayLike) -> Array:
         """R (..., 3, 3) of numbers (..., 3) as they stand in the file."""
@@ -63,8 +73,12 @@ def identify_with_offsets(
     for unit in units:
         rough += _rough(written[some], R[some], unit)
     rough.sort(key=lambda entry: entry[0])
-    refined = [_refine(chain, turns, written, R) for _, chain, turns in rough[: 4 * _REFINED]]
-    kept = _different(sorted(refined, key=lambda w: _miss(w, written, R)))[:_REFINED]
+    more = np.unique(np.linspace(0, len(R) - 1, _REFINED_ON).astype(int))
+    refined = [_refine(chain, turns, written[more], R[more]) for _, chain, turns in rough[:_REFINED]]
+    kept = _different(sorted(refined, key=lambda w: _miss(w, written, R)))
+    if len(more) < len(R):
+        best = [_refine(entry.chain, entry.turns, written, R) for entry in kept[:_POLISHED]]
+        kept = sorted([*best, *kept[_POLISHED:]], key=lambda w: _miss(w, written, R))
     readings = [_reading(entry, names) for entry in kept]
     residuals = np.array([angle_between(entry.matrix(written), R) for entry in kept])
     eye = np.broadcast_to(np.eye(3), (len(kept), 3, 3))

@@ -19,7 +19,15 @@ from trunnion.attitude.right_angles import right_angle_rotations
 from trunnion.attitude.rotations import from_rotation_vector
 from trunnion.attitude.words import vector_text
 from trunnion.crosswalk.fitting import Constants, Fitted, angle_between, fit
-from trunnion.crosswalk.identify import Finding, Identification, Reading, checked_samples, decide
+from trunnion.crosswalk.identify import (
+    SPREAD,
+    Finding,
+    Identification,
+    Reading,
+    checked_samples,
+    decide,
+    well_spread,
+)
 from trunnion.crosswalk.readings import COLUMN_ORDERS, SIGNS, Triple
 from trunnion.errors import AttitudeError
 
@@ -33,6 +41,7 @@ _SIDES: dict[Constants, tuple[bool, Constants]] = {
     Constants.LEFT: (False, Constants.LEFT),
     Constants.BOTH: (False, Constants.BOTH),
 }
+Entry = tuple["FormReading", Array, Array, Array, float]
 _KEPT = 64
 _SAME = 1e-6
 
@@ -84,10 +93,12 @@ def identify_other_forms(
     as `identify_angles` does.
     """
     written, R = checked_samples(numbers, truth)
-    forms, attitudes = _possible(written)
+    some = well_spread(written) if len(R) > 2 * SPREAD else np.arange(len(R))
+    forms, attitudes = _possible(written, some)
+    whole_truth, R = R, R[some]
     one_by_one, besides = _SIDES[constants]
     lefts = np.array(right_angle_rotations()) if one_by_one else np.eye(3)[None]
-    found: list[tuple[FormReading, Array, Array, Array, float]] = []
+    found: list[Entry] = []
     for left in lefts:
         fitted = fit(left @ attitudes, R, besides)
         for k in np.argsort(fitted.scores, kind="stable")[:_KEPT]:
@@ -97,6 +108,8 @@ def identify_other_forms(
     kept = _different(found[:_KEPT])
     readings = [_reading(form, left, right, names, constants) for form, left, right, _, _ in kept]
     merged = Fitted(*(np.array([entry[n] for entry in kept]) for n in (1, 2, 3, 4)))
+    if len(some) < len(whole_truth):
+        merged = _on_all(kept, written, whole_truth, besides)
     return decide(readings, merged, constants, noise, len(forms) * len(lefts))
 
 
@@ -110,24 +123,38 @@ def is_form(finding: Finding) -> bool:
     return isinstance(finding.reading.key, FormReading)
 
 
-def _possible(written: Array) -> tuple[list[FormReading], Array]:
-    """Forms under which every sample is an attitude, and those attitudes (K, N, 3, 3)."""
+def _on_all(kept: list[Entry], written: Array, R: Array, besides: Constants) -> Fitted:
+    """The forms that are left fitted again to all samples; the turn of the reference frame that was tried stays."""
+    rows = []
+    for form, left, right, _, _ in kept:
+        tried = left if besides in (Constants.RIGHT, Constants.RELABELLED) else np.eye(3)
+        free = besides if besides is not Constants.RELABELLED else Constants.NONE
+        after = right if besides is Constants.RELABELLED else np.eye(3)
+        fitted = fit((tried @ form.matrix(written) @ after)[None], R, free)
+        rows.append((fitted.left[0] @ tried, after @ fitted.right[0], fitted.residuals[0], fitted.scores[0]))
+    return Fitted(*(np.array([row[n] for row in rows]) for n in range(4)))
+
+
+def _possible(written: Array, some: NDArray[np.intp]) -> tuple[list[FormReading], Array]:
+    """Forms under which every sample is an attitude, and the attitudes (K, n, 3, 3) of some of them."""
     forms, attitudes = [], []
     for kind, unit in itertools.product(("sine", "tangent", "vector"), (True, False)):
         for columns, signs in itertools.product(COLUMN_ORDERS, SIGNS):
             form = FormReading(kind, columns, signs, unit)
             try:
-                attitudes.append(form.matrix(written))
+                if signs == SIGNS[0]:
+                    form.matrix(written)
+                attitudes.append(form.matrix(written[some]))
                 forms.append(form)
             except AttitudeError:
                 break  # signs do not matter to what is possible
     return forms, np.array(attitudes)
 
 
-def _different(entries: list[tuple[FormReading, Array, Array, Array, float]]) -> list:
+def _different(entries: list[Entry]) -> list[Entry]:
     """Of forms that predict the same attitudes the first by name."""
     probes = np.random.default_rng(12).uniform(-0.6, 0.6, size=(6, 3))
-    kept: list[tuple[Array, tuple]] = []
+    kept: list[tuple[Array, Entry]] = []
     for entry in sorted(entries, key=_plainness):
         form, left, right = entry[:3]
         made = left @ form.matrix(np.degrees(probes) if form.degrees else probes) @ right
@@ -142,7 +169,7 @@ def _columns(matrix: Array) -> str:
     return ", ".join(vector_text(matrix[:, n], 0) for n in range(3))
 
 
-def _plainness(entry: tuple[FormReading, Array, Array, Array, float]) -> tuple:
+def _plainness(entry: Entry) -> tuple[float, str, float, int, Triple]:
     """Least miss first, then the one whose frames are turned least and whose signs are positive."""
     form, left, right, _, miss = entry
     return round(miss, 9), form.kind, -round(float(np.trace(left) + np.trace(right)), 6), -sum(form.signs), form.columns

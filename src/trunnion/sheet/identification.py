@@ -100,7 +100,7 @@ class ConventionIdentification:
         lines = [*answer_lines(found), *(f"All that fit agree: {line}" for line in self._common())]
         display.statement("answer", [*lines, *self.study.remarks], title="Answer")
         if found.answer is not Answer.IDENTIFIED:
-            display.finding("answer", lines[0].capitalize(), against=self._over)
+            display.finding("not-identified", lines[0].capitalize(), against=self._over)
         if found.outliers:
             display.finding(
                 "outliers", f"samples {words(found.outliers)} do not belong to the others", against=self._over
