@@ -23,13 +23,20 @@ def build_form(ctx: Context, name: str, part: Any) -> StatedForm | None:
     if reference.name == body.name:
         ctx.note("self-link", "body", what="the form", frame=body.name)
         return None
-    makers = {parts.TiltForm: _tilts, parts.PointingForm: _pointing, parts.VectorForm: _vector}
     try:
-        form = makers[type(part)](ctx, part, reference, body)
+        form = _numeric(ctx, part, reference, body)
     except AttitudeError as err:
         ctx.note("refused", why=err.fault.cause, remedy=err.fault.remedy or "correct it")
         return None
     return None if form is None else StatedForm(name, reference, body, form)
+
+
+def _numeric(ctx: Context, part: Any, reference: numeric.Frame, body: numeric.Frame) -> Any:
+    if isinstance(part, parts.TiltForm):
+        return _tilts(ctx, part, reference, body)
+    if isinstance(part, parts.PointingForm):
+        return _pointing(ctx, part, reference, body)
+    return _vector(ctx, part, reference, body)
 
 
 def _directions(ctx: Context, part: Any, frames: dict[str, numeric.Frame]) -> dict[str, Any] | None:
