@@ -7,6 +7,11 @@ import shutil
 from pathlib import Path
 
 import pytest
+from hypothesis import settings
+
+# Fixed examples on every commit, and no deadlines: a busy machine must not decide a test.
+settings.register_profile("trunnion", deadline=None, derandomize=True)
+settings.load_profile("trunnion")
 
 NO_SKIP = os.environ.get("TRUNNION_NO_SKIP") == "1"
 FULL = os.environ.get("TRUNNION_FULL") == "1"
