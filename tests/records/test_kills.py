@@ -40,8 +40,8 @@ def operations(action: Callable[[], object], monkeypatch: pytest.MonkeyPatch) ->
 
 
 def some(total: int, count: Callable[[int], int]) -> list[int]:
-    """The operations at which to kill: each in the full run, a spread of a tenth and the last ones otherwise."""
-    wanted = count(total)
+    """The operations at which to kill: each in the full run, a spread and the last ones otherwise."""
+    wanted = total if count(total) == total else 4
     return sorted({*(number * total // wanted for number in range(wanted)), *range(max(0, total - 3), total)})
 
 

@@ -10,6 +10,7 @@ import pytest
 
 from trunnion.calculations import templates
 from trunnion.calculations.digest import sha256
+from trunnion.calculations.run import Outcome
 from trunnion.records import recompute
 from trunnion.records.find import INDEX, find
 from trunnion.records.recompute import DIFFERS, REPRODUCED, WITHIN, compare_result
@@ -56,7 +57,14 @@ def test_a_workbook_is_recomputed_and_the_check_says_so(desk, capsys) -> None:
     assert json.loads(path.read_text())["recomputed"]["summary"] == "2 reproduced"
 
 
-def test_a_stored_result_that_is_not_what_runs_differs(desk, capsys) -> None:
+def test_a_stored_result_that_is_not_what_runs_differs(desk, capsys, monkeypatch) -> None:
+    """The stored notebooks stand for what runs."""
+
+    def stored(folder, jobs, tell):
+        bodies = {job.id: json.loads((desk.outputs / "A" / "bodies" / f"{job.key}.ipynb").read_bytes()) for job in jobs}
+        return {name: Outcome(name, True) for name in bodies}, bodies
+
+    monkeypatch.setattr(recompute, "_run", stored)
     results = desk.outputs / "A" / "results.json"
     results.write_text(results.read_text().replace('"lo": 65.0', '"lo": 65.5'))
     assert desk.run("recompute", desk.workbook, *consents(desk)) == 1

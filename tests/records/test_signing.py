@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 import json
+import re
 import shutil
 import subprocess
+import sys
 from pathlib import Path
 
 import pytest
@@ -110,11 +112,16 @@ def test_a_check_states_method_and_reference(desk, capsys) -> None:
     assert "a check has a reference" in capsys.readouterr().err
 
 
-def test_a_changed_limit_or_body_takes_the_signature_and_a_title_does_not(desk) -> None:
+def test_a_changed_limit_or_body_takes_the_signature_and_a_title_does_not(desk, capsys) -> None:
     desk.sign("prepared")
     desk.edit("title: Miniature", "title: Another title")
     assert desk.run("compute", desk.workbook, "--no-pdf", "--quiet", "--allow-local-templates") == 0
     assert set(states(desk, "prepared").values()) == {State.SIGNED}
+    desk.edit("steepest: 25 deg", "steepest: 26 deg")
+    capsys.readouterr()
+    desk.run("impact", desk.workbook)
+    assert "signature that will fall: C01: prepared by Ada Mill, 2031-05-28" in capsys.readouterr().out
+    desk.edit("steepest: 26 deg", "steepest: 25 deg")
     desk.edit("at least: 20 deg", "at least: 21 deg")
     assert desk.run("compute", desk.workbook, "--no-pdf", "--quiet", "--allow-local-templates") == 0
     assert states(desk, "prepared") == {"C01": State.STALE, "C02": State.SIGNED}
@@ -251,3 +258,85 @@ def test_a_touched_statement_does_not_stand(desk, change: str) -> None:
         signature.unlink()
     found = standing(desk)
     assert all(mark.state is not State.SIGNED for mark in found.marks.values())
+
+
+@pytest.mark.needs("ssh-agent", "ssh-add")
+def test_an_agent_signs_with_the_public_half_alone(desk, tmp_path, monkeypatch) -> None:
+    """The private key is in the agent and nowhere on the disk; hardware keys go the same way."""
+    started = subprocess.run(["ssh-agent", "-s"], capture_output=True, text=True, check=True).stdout
+    found = dict(re.findall(r"(SSH_AUTH_SOCK|SSH_AGENT_PID)=([^;]+);", started))
+    for name, value in found.items():
+        monkeypatch.setenv(name, value)
+    try:
+        subprocess.run(["ssh-add", "-q", desk.keys / "p1"], check=True, capture_output=True)
+        shutil.copy(desk.keys / "p1.pub", tmp_path / "alone.pub")
+        command = ("sign", desk.workbook, "--as", "prepared", "--time", "2031-05-28T08:00:00Z")
+        assert desk.run(*command, "--key", tmp_path / "alone.pub") == 0
+    finally:
+        subprocess.run(["ssh-agent", "-k"], check=True, capture_output=True)
+    assert set(states(desk, "prepared").values()) == {State.SIGNED}
+
+
+def test_trunnion_opens_no_private_key(desk, monkeypatch) -> None:
+    """Of a key file only the public half is read, whatever reads it in this process."""
+    opened: list[str] = []
+    watching = [True]  # a hook stays for the life of the process
+
+    def hook(event: str, arguments: tuple) -> None:
+        if event == "open" and watching:
+            opened.append(str(arguments[0]))
+
+    sys.addaudithook(hook)
+    assert desk.sign("prepared") == 0
+    watching.clear()
+    assert str(desk.keys / "p1.pub") in opened
+    assert str(desk.keys / "p1") not in opened
+
+
+def test_findings_are_answered_by_the_preparer_and_closed_by_the_finder(desk, capsys) -> None:
+    def run(*words: str) -> int:
+        return desk.run("finding", words[0], desk.workbook, *words[1:])
+
+    assert run("add", "--against", "C09", "--text", "x", "--by", "c1") == 2
+    assert run("add", "--against", "C01 cell 4", "--text", "Which elevation?", "--by", "c1") == 0
+    assert run("add", "--against", "data/numbers.csv", "--text", "Whose file?", "--by", "a1") == 2
+    assert run("add", "--against", "R1", "--text", "Which edition?", "--by", "a1") == 0
+    assert run("close", "F1", "--by", "c1") == 2
+    assert "F1 is not answered yet" in capsys.readouterr().err
+    assert run("answer", "F1", "--text", "The steepest flown.", "--by", "c1") == 2
+    assert run("answer", "F1", "--text", "The steepest flown.", "--by", "p1") == 0
+    assert run("close", "F1", "--by", "a1") == 2
+    assert run("close", "F1", "--by", "c1", "--because", "Seen in the log.") == 0
+    capsys.readouterr()
+    run("list")
+    told = capsys.readouterr().out
+    assert "F1  closed" in told
+    assert "F2  open" in told
+    desk.run("bind", desk.workbook, "--no-pdf")
+    page = (desk.outputs / "A" / "package.html").read_text()
+    assert "Which edition?" in page
+    assert "Seen in the log." in page
+
+
+def test_an_input_without_a_source_is_a_finding_until_a_checker_closes_it(desk, capsys) -> None:
+    desk.edit(", source: SYS 2", "")
+    desk.run("compute", desk.workbook, "--no-pdf", "--quiet", "--allow-local-templates")
+    desk.sign("prepared")
+    desk.sign("checked")
+    assert desk.sign("approved") == 2
+    assert "finding source:requirements.R2 is open" in capsys.readouterr().err
+    desk.run("finding", "answer", desk.workbook, "source:requirements.R2", "--text", "House rule.", "--by", "p1")
+    assert desk.run("finding", "close", desk.workbook, "source:requirements.R2", "--by", "p1") == 2
+    assert desk.run("finding", "close", desk.workbook, "source:requirements.R2", "--by", "c1") == 0
+    assert desk.sign("approved") == 0
+
+
+def test_all_lasting_files_are_written_by_the_one_module() -> None:
+    """Records and commands write through `calculations.writes`; what they write else lies in temporary folders."""
+    temporary = {"verification.py", "reading.py", "scratch.py", "recompute.py"}  # scratch copies only
+    package = Path(layout.__file__).parents[1]
+    for path in [*(package / "records").glob("*.py"), *(package / "cli").glob("*.py")]:
+        text = path.read_text()
+        found = re.findall(r"\.write_(?:text|bytes)\(|\.open\(\"[wxa]|\bopen\([^)]*\"[wxa]|shutil\.(?:copy|move)", text)
+        through = len(re.findall(r"\bwrites\.write_(?:text|bytes)\(", text))
+        assert len(found) == through or path.name in temporary, path

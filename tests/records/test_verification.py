@@ -67,7 +67,8 @@ def test_both_routes_agree_or_the_fallback_says_that_it_can_not(signed, kind: st
     good = unverified = 0
     for principal, option in itertools.product(PRINCIPALS, OPTIONS.values()):
         listed = f"{principal} {option} {public}\n".replace("  ", " ").encode()
-        for revoked in (None, other.encode() + b"\n", public.encode() + b"\n"):
+        lists = (None, other.encode() + b"\n", public.encode() + b"\n")
+        for revoked in lists if principal in ("c1", "!c1,*") else lists[:1]:
             program, fallback = both(signature, Keys(listed, revoked))
             require_agreement(program, fallback)
             if revoked is not None and revoked.startswith(public.encode()):

@@ -127,7 +127,7 @@ def _entries(root: Path, results: Mapping[str, Any], record: Mapping[str, Any]) 
         yield "calculation", f"{entry['id']}: {entry['title']} ({entry['template']})"
         for result in entry["results"]:
             where = f" over {result['over']}" if result["over"] else ""
-            bounds = f"{result['lo']} … {result['hi']} {result['unit']} ({result['basis']})"
+            bounds = f"{_number(result['lo'])} … {_number(result['hi'])} {result['unit']} ({result['basis']})"
             yield "result", f"{entry['id']}: {result['quantity']} of {result['of']}{where}: {bounds}"
     for finding in plain_json(_bytes(root / "data/issued/record/findings.json")):
         yield "finding", f"{finding['id']} against {finding['against']}: {finding['text']}"
@@ -168,3 +168,7 @@ def _keep(folder: Path, archives: Mapping[str, Any]) -> None:
         writes.write_json(folder / INDEX, {"schema": SCHEMA, "archives": archives})
     except StoreError:
         return
+
+
+def _number(value: float | None) -> str:
+    return "—" if value is None else f"{float(value):.6g}"

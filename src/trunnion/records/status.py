@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -13,7 +13,7 @@ from trunnion.calculations.plan import plan
 from trunnion.errors import RecordError
 from trunnion.records import layout, rules
 from trunnion.records import statements as st
-from trunnion.records.casework import Trust, case_of, signature_files
+from trunnion.records.casework import Trust, case_of, signature_files, stored_results
 from trunnion.records.keylist import KeyList, parse_keys
 from trunnion.records.rules import Case, Standing
 
@@ -81,6 +81,20 @@ def _out_of_date(workbook: Any, results: Mapping[str, Any]) -> list[str]:
     computed = {entry["id"]: entry["key"] for entry in results["calculations"]}
     planned = plan(workbook, allow_local=True)
     return [f"{entry.id} is to be computed again" for entry in planned if computed.get(entry.id) != entry.key]
+
+
+def signatures_on(workbook: Any, calculations: Collection[str], output: Path | None = None) -> list[str]:
+    """Signatures that stand now and rest on some calculations, which they lose when these change."""
+    try:
+        results = stored_results(workbook, output)
+    except RecordError:
+        return []
+    marks = rules.judge(case_of(workbook, results)).marks.values()
+    return [
+        f"{mark.calculation}: {mark.role} by {mark.signed.person_name}, {mark.signed.time[:10]}"
+        for mark in marks
+        if mark.signed is not None and mark.state is rules.State.SIGNED and mark.calculation in calculations
+    ]
 
 
 def changes_since_issue(root: Path, case: Case) -> list[str]:
