@@ -18,6 +18,7 @@ from trunnion.crosswalk.identify import (
 )
 from trunnion.crosswalk.known_attitudes import from_pose
 from trunnion.crosswalk.study import Evidence, study
+from trunnion.errors import AttitudeError
 
 LETTERS = ("XYZ", "XZY", "YXZ", "YZX", "ZXY", "ZYX", "XYX", "XZX", "YXY", "YZY", "ZXZ", "ZYZ")
 NAMES = ("first", "second", "third")
@@ -213,3 +214,32 @@ def test_a_photo_straight_down_with_roll_180_is_one_camera() -> None:
     assert found.answer is Answer.AMBIGUOUS
     names = [name for finding in found.fits for name in finding.reading.names]
     assert any("3-2-1 about moving axes; turns: yaw, pitch, roll; deg; the matrix maps body" in name for name in names)
+
+
+@pytest.mark.parametrize("axis", range(3))
+@pytest.mark.parametrize("side", ["reference", "body"])
+def test_a_mirrored_axis_is_named_where_the_attitude_is_known(axis: int, side: str) -> None:
+    # Handedness mix-ups of survey packages and simulators (no numbers printed; attitudes by scipy).
+    truth = Rotation.random(5, random_state=4).as_matrix()
+    flip = np.diag([-1.0 if n == axis else 1.0 for n in range(3)])
+    written = flip @ truth if side == "reference" else truth @ flip
+    made = study(Evidence(matrix=written.reshape(5, 9), truth=truth))
+    assert [finding.reading.words for finding in made.found.fits] == [
+        f"entries by rows, the {side} frame left-handed: its {'xyz'[axis]} reversed"
+    ]
+    half = np.concatenate([written[:2], truth[2:]]).reshape(5, 9)
+    with pytest.raises(AttitudeError, match="some of the matrices are reflections"):
+        study(Evidence(matrix=half, truth=truth))
+
+
+def test_a_quaternion_between_relabelled_frames() -> None:
+    # mavlink/mavros and others: north-east-down, forward-starboard-down against east-north-up, forward-port-up.
+    truth = Rotation.random(6, random_state=8)
+    change = Rotation.from_matrix([[0, 1, 0], [1, 0, 0], [0, 0, -1.0]])
+    written = (change * truth * Rotation.from_matrix(np.diag([1.0, -1, -1]))).as_quat()
+    made = study(Evidence(quaternion=written, truth=truth.as_matrix()), constants=Constants.RELABELLED)
+    (finding,) = made.found.fits
+    assert "scalar last, maps body to reference" in finding.reading.words
+    predicted = finding.left @ quaternion_readings(written, two_sided=True)[1][1] @ finding.right
+    np.testing.assert_allclose(predicted, truth.as_matrix(), rtol=0, atol=1e-12)
+    assert identify_attitudes(quaternion_readings(written), truth.as_matrix()).answer is Answer.NONE_FITS

@@ -165,3 +165,9 @@ def test_quaternions_and_matrices_in_question(tmp_path: Path) -> None:
     plain = {"table": "s.csv", "quaternion": list("wxyz"), "in question": "quaternion", **known}
     made = study(evidence_of(plain, root))
     assert [f.reading.words for f in made.found.fits] == ["scalar first, maps body to reference"]
+
+
+def test_a_known_quaternion_read_wrongly_is_suspected(tmp_path: Path) -> None:
+    made = study(evidence_of({**ASKED, "scalar": "last"}, samples(tmp_path)))
+    assert made.answer is Answer.NONE_FITS
+    assert any("if the known quaternion is read otherwise" in line and "scalar first" in line for line in made.mistakes)

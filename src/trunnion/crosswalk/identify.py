@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import enum
 from collections.abc import Sequence as Many
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -18,6 +18,7 @@ from trunnion.attitude.sequences import Sequence
 from trunnion.attitude.words import listed
 from trunnion.crosswalk.fitting import FEWEST_TO_TRIM, KEPT_SHARE, Constants, Fitted, fit, nearest_rotations, scores
 from trunnion.crosswalk.readings import COLUMN_ORDERS, Chain, all_chains, chain_matrices
+from trunnion.crosswalk.wrong_readings import right_angle_rotations
 from trunnion.errors import AttitudeError
 
 Array = NDArray[np.float64]
@@ -147,11 +148,26 @@ def identify_attitudes(
     R = require_rotation(np.asarray(truth, dtype=float), "a known attitude")
     A = np.array([np.asarray(attitudes, dtype=float) for _, attitudes in readings])
     made = [Reading(words, (words,), key=words) for words, _ in readings]
+    if constants is Constants.RELABELLED:
+        return _both_relabelled(made, A, R, noise)
     return decide(made, fit(A, R, constants), constants, noise, len(readings))
 
 
-def quaternion_readings(components: ArrayLike) -> list[tuple[str, Array]]:
-    """Attitudes of four columns (N, 4) under every place of the scalar, direct and conjugated."""
+def _both_relabelled(readings: list[Reading], A: Array, R: Array, noise: float | None) -> Identification:
+    """Right-angle constants on both sides: chains absorb the one on the left, quaternions and matrices do not."""
+    lefts = np.array(right_angle_rotations())
+    turned = (lefts[:, None, None] @ A[None]).reshape(-1, *A.shape[1:])
+    fitted = fit(turned, R, Constants.RELABELLED)
+    fitted = replace(fitted, left=np.repeat(lefts, len(readings), axis=0))
+    return decide(readings * len(lefts), fitted, Constants.RELABELLED, noise, len(turned) * len(lefts))
+
+
+def quaternion_readings(components: ArrayLike, *, two_sided: bool = False) -> list[tuple[str, Array]]:
+    """Attitudes of four columns (N, 4) under every place of the scalar, direct and conjugated.
+
+    two_sided: constants on both sides are unknown. Then there are two functions, not four: with q = a + bi + cj + dk,
+    d + ai + bj + ck = u q* k u* for a right-angle u, so that the scalar last is the conjugate with the scalar first.
+    """
     q = np.asarray(components, dtype=float)
     norms = np.linalg.norm(q, axis=1)
     if q.ndim != 2 or q.shape[1] != 4 or not np.all(np.isfinite(q)) or np.any(norms == 0.0):
@@ -163,6 +179,8 @@ def quaternion_readings(components: ArrayLike) -> list[tuple[str, Array]]:
         for sense, way in ((1.0, "body to reference"), (-1.0, "reference to body")):
             read = q[:, order] * np.array([1.0, sense, sense, sense])
             found.append((f"{words}, maps {way}", matrix_from_quaternion(read)))
+    if two_sided:
+        return [(f"{found[n][0]} (or {found[3 - n][0]}, between other axes)", found[n][1]) for n in (0, 1)]
     return found
 
 
@@ -182,6 +200,24 @@ def matrix_readings(entries: ArrayLike) -> list[tuple[str, Array]]:
         ("entries by rows, maps body to reference", M),
         ("entries by columns, or by rows and maps reference to body", np.swapaxes(M, -1, -2)),
     ]
+
+
+def mirrored_readings(entries: ArrayLike) -> list[tuple[str, Array]]:
+    """Attitudes of nine columns (N, 9) of reflections, under every axis of either frame that may be reversed.
+
+    Raises AttitudeError when not all matrices are reflections.
+    """
+    M = np.asarray(entries, dtype=float).reshape(-1, 3, 3)
+    if not np.all(np.linalg.det(M) < 0.0):
+        raise AttitudeError("some of the matrices are reflections and some are not", remedy="look for false samples")
+    found = []
+    for words, N in (("entries by rows", M), ("entries by columns", np.swapaxes(M, -1, -2))):
+        for axis in range(3):
+            flip = np.diag([-1.0 if n == axis else 1.0 for n in range(3)])
+            for side, made in (("reference", flip @ N), ("body", N @ flip)):
+                said = f"{words}, the {side} frame left-handed: its {'xyz'[axis]} reversed"
+                found.append((said, printed_rotations(made, "a matrix")))
+    return found
 
 
 def printed_rotations(matrices: ArrayLike, what: str) -> Array:
@@ -317,8 +353,6 @@ def _outliers(best: Finding, limit: float) -> tuple[int, ...]:
 def _with_reasons(found: Identification, written: Array, R: Array, names: tuple[str, str, str]) -> Identification:
     if found.answer is not Answer.AMBIGUOUS:
         return found
-    from dataclasses import replace
-
     return replace(found, reasons=tuple(poor_data(written, R, names)))
 
 

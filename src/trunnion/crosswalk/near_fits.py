@@ -43,7 +43,8 @@ def explanations(found: Identification, names: tuple[str, str, str], most: int =
         words = difference(best.reading.chain, other.reading.chain, names)
         if words == "the same reading" and not np.allclose(best.right, other.right, rtol=0, atol=1e-6):
             words = "the body frame relabelled otherwise"
-        lines.append(f"{words}: misses by {degrees_text(other.miss, 4)}")
+        fits = any(other is finding for finding in found.fits)
+        lines.append(f"{words}: {'fits as well' if fits else f'misses by {degrees_text(other.miss, 4)}'}")
     return lines
 
 

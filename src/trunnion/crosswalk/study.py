@@ -11,7 +11,7 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from trunnion.attitude.rotations import rotation_angle
+from trunnion.attitude.rotations import determinant, rotation_angle
 from trunnion.attitude.words import degrees_text, listed
 from trunnion.crosswalk.disagreement import Agreement, agreements
 from trunnion.crosswalk.fitting import Constants
@@ -21,6 +21,7 @@ from trunnion.crosswalk.identify import (
     identify_angles,
     identify_attitudes,
     matrix_readings,
+    mirrored_readings,
     quaternion_readings,
 )
 from trunnion.crosswalk.near_fits import explanations
@@ -51,6 +52,7 @@ class Evidence:
     One of numbers (N, 3), quaternion (N, 4), matrix (N, 9) is in question, as it stands in the file; with `agree` two
     or three of them are, against each other. truth (N, 3, 3) is the known R_rb, `known` says from what. times (N,) s
     and body rates (N, 3) come together; `rate_degrees` is their unit, None when unknown. `notes`: what was left out.
+    known_quaternion (N, 4): the columns the truth was read from, in case it was read wrongly.
     """
 
     numbers: Array | None = None
@@ -64,6 +66,7 @@ class Evidence:
     rate_names: tuple[str, str, str] = THREE
     rate_degrees: bool | None = None
     notes: tuple[str, ...] = ()
+    known_quaternion: Array | None = None
 
     @property
     def samples(self) -> int:
@@ -165,9 +168,11 @@ def _against_each_other(evidence: Evidence, constants: Constants, noise: float |
 
 def _attitudes_in_question(evidence: Evidence, constants: Constants, noise: float | None) -> Study:
     if evidence.quaternion is not None:
-        readings = quaternion_readings(evidence.quaternion)
+        two_sided = constants in (Constants.RELABELLED, Constants.BOTH)
+        readings = quaternion_readings(evidence.quaternion, two_sided=two_sided)
     elif evidence.matrix is not None:
-        readings = matrix_readings(evidence.matrix)
+        mirrored = evidence.truth is not None and bool(np.any(determinant(evidence.matrix.reshape(-1, 3, 3)) < 0.0))
+        readings = mirrored_readings(evidence.matrix) if mirrored else matrix_readings(evidence.matrix)
     else:
         raise AttitudeError("there is nothing in question", remedy="name the columns to be identified")
     if evidence.truth is not None:
@@ -228,9 +233,10 @@ def _would_fit(evidence: Evidence, constants: Constants, noise: float | None) ->
         found = identify_with_offsets(evidence.numbers, evidence.truth, noise=noise, names=evidence.names)
         if found.fits:
             lines.append(f"{found.fits[0].reading.words} would fit")
-    if evidence.quaternion is not None:
-        pairs = agreements(quaternion=evidence.quaternion, numbers=evidence.numbers, names=evidence.names, noise=noise)
-        lines += [f"would fit, if the known quaternion is read otherwise: {e.line()}" for e in pairs if e.agrees]
+    q = evidence.known_quaternion
+    if q is not None:
+        pairs = agreements(quaternion=q, numbers=evidence.numbers, names=evidence.names, noise=noise)
+        lines += [f"without any, if the known quaternion is read otherwise: {e.line()}" for e in pairs if e.agrees]
     return lines
 
 

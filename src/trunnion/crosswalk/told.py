@@ -7,7 +7,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from trunnion.attitude.words import degrees_text, listed, number_text
+from trunnion.attitude.words import degrees_text, listed
 from trunnion.crosswalk.disagreement import REVERSAL
 from trunnion.crosswalk.fitting import Constants
 from trunnion.crosswalk.fragment import fragment
@@ -77,8 +77,7 @@ def asked_words(study: Study) -> str:
     assert asked is not None
     unit = "deg" if asked.degrees else "rad"
     setting = ", ".join(
-        f"{name} {number_text(float(value), 4)} {unit}"
-        for name, value in zip(study.evidence.names, asked.numbers, strict=True)
+        f"{name} {float(value):.6g} {unit}" for name, value in zip(study.evidence.names, asked.numbers, strict=True)
     )
     return (
         f"{setting}: the {asked.readings} readings left then differ by at least "

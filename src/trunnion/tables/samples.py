@@ -119,6 +119,7 @@ def evidence_of(
         rate_names=_three(plain.get("rates")),
         rate_degrees={"deg/s": True, "rad/s": False}.get(str(plain.get("rate unit"))),
         notes=notes,
+        known_quaternion=taken.get("quaternion") if not agree and question != "quaternion" else None,
     )
 
 
