@@ -23,7 +23,21 @@ def _map() -> str:
     return charts.margin_map(x, y, margin, x_label=HOSTILE, y_label="bank", region=(-20, 25, -45, 45), worst=(25, 0))
 
 
+def _maps() -> str:
+    x, y = np.linspace(-180.0, 180.0, 19), np.linspace(-90.0, 90.0, 19)
+    margin = np.broadcast_to(90.0 - np.abs(y)[:, None], (19, 19))
+    locked = np.zeros((19, 19))
+    panels = [
+        charts.MapPanel(x, y, values, HOSTILE, "elevation", "bank 0°", (-180, 180, -20, 25), (0.0, 25.0))
+        for values in (margin, locked)
+    ]
+    return charts.margin_maps(panels)
+
+
 PICTURES: dict[str, Callable[[], str]] = {
+    "maps": _maps,
+    "runs": lambda: charts.run_margins([HOSTILE, "flight-2"], {"ordinary": [1.0, 2.0], "wing-last": [30.0, 40.0]}),
+    "many runs": lambda: charts.run_margins([f"run {n}" for n in range(50)], {HOSTILE: list(np.linspace(0, 90, 50))}),
     "ranking": lambda: charts.ranking_chart([HOSTILE, "3-1-2"], [0.0, 45.0], marked="3-1-2", limit=20.0),
     "histogram": lambda: charts.margin_histogram(np.linspace(0, 90, 10), {HOSTILE: np.full(9, 100 / 9)}),
     "map": _map,

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
 
 import numpy as np
 from matplotlib.axes import Axes
+from matplotlib.contour import QuadContourSet
 from matplotlib.patches import Rectangle
-from matplotlib.ticker import FuncFormatter
+from matplotlib.ticker import FuncFormatter, MultipleLocator
 from numpy.typing import NDArray
 
 from trunnion.figures.style import (
@@ -28,6 +30,7 @@ from trunnion.figures.style import (
 
 Floats = NDArray[np.float64]
 
+_MAP_LEVELS = np.arange(0.0, 91.0, 10.0)
 _NAMED_RUNS = 24  # more names than this do not fit under the axis
 
 
@@ -97,10 +100,59 @@ def margin_map(
     """Lock margin over two angles (deg), singular set and region drawn. margin (len(y), len(x)) deg."""
     figure = new_figure(height_mm=84)
     axes = new_axes(figure)
-    levels = np.arange(0.0, 91.0, 10.0)
-    shades = axes.contourf(x, y, margin, levels=levels, cmap="Greys_r", vmin=-40.0, vmax=95.0)
-    lines = axes.contour(x, y, margin, levels=levels[1:-1], colors=[INK], linewidths=0.5)
-    axes.clabel(lines, fmt="%d°", fontsize=6.5)
+    shades = _draw_map(axes, x, y, margin, region=region, worst=worst)
+    if worst is not None:
+        axes.legend(loc="upper right", facecolor="white", frameon=True, framealpha=0.9, edgecolor=QUIET)
+    axes.set_xlabel(f"{label(x_label)}, deg")
+    axes.set_ylabel(f"{label(y_label)}, deg")
+    bar = figure.colorbar(shades, ax=axes, ticks=_MAP_LEVELS[::3])
+    bar.set_label("lock margin, deg")
+    return to_svg(figure)
+
+
+@dataclass(frozen=True, eq=False)
+class MapPanel:
+    """One map: margin (len(y), len(x)) deg over two angles (deg), the third held; region as left, right, low, high."""
+
+    x: Floats
+    y: Floats
+    margin: Floats
+    x_label: str
+    y_label: str
+    held: str
+    region: tuple[float, float, float, float]
+    worst: tuple[float, float] | None
+
+
+@house_look
+def margin_maps(panels: Sequence[MapPanel]) -> str:
+    """Lock margin over each pair of angles, the third held as stated; singular set, region and least margin drawn."""
+    figure = new_figure(height_mm=62)
+    drawn = []
+    for number, panel in enumerate(panels, start=1):
+        axes = new_axes(figure, 1, len(panels), number)
+        shades = _draw_map(axes, panel.x, panel.y, panel.margin, region=panel.region, worst=panel.worst)
+        axes.set_xlabel(f"{label(panel.x_label)}, deg")
+        axes.set_ylabel(f"{label(panel.y_label)}, deg", labelpad=1.0)
+        axes.set_title(label(panel.held))
+        drawn.append(axes)
+    bar = figure.colorbar(shades, ax=drawn, ticks=_MAP_LEVELS[::3], fraction=0.03, pad=0.02)
+    bar.set_label("lock margin, deg")
+    return to_svg(figure)
+
+
+def _draw_map(
+    axes: Axes,
+    x: Floats,
+    y: Floats,
+    margin: Floats,
+    *,
+    region: tuple[float, float, float, float] | None,
+    worst: tuple[float, float] | None,
+) -> QuadContourSet:
+    shades = axes.contourf(x, y, margin, levels=_MAP_LEVELS, cmap="Greys_r", vmin=-40.0, vmax=95.0)
+    lines = axes.contour(x, y, margin, levels=_MAP_LEVELS[1:-1], colors=[INK], linewidths=0.5)
+    axes.clabel(lines, levels=_MAP_LEVELS[2:-1:2], fmt="%d°", fontsize=6.5)
     if float(margin.min()) < 2.0:
         axes.contour(x, y, margin, levels=[1.0], colors=[COLOURS[1]], linewidths=2.0)
     if region is not None:
@@ -108,13 +160,12 @@ def margin_map(
         axes.add_patch(Rectangle((left, low), right - left, high - low, **REGION))
     if worst is not None:
         axes.plot(*worst, label="least margin", clip_on=False, **WORST)
-        axes.legend(loc="upper right", facecolor="white", frameon=True, framealpha=0.9, edgecolor=QUIET)
+    if float(margin.max()) < 1.0:
+        axes.text(0.5, 0.75, "lock", transform=axes.transAxes, ha="center", color="white")
+    for axis, values in ((axes.xaxis, x), (axes.yaxis, y)):
+        axis.set_major_locator(MultipleLocator(90.0 if np.ptp(values) > 200.0 else 45.0))
     axes.grid(visible=False)
-    axes.set_xlabel(f"{label(x_label)}, deg")
-    axes.set_ylabel(f"{label(y_label)}, deg")
-    bar = figure.colorbar(shades, ax=axes, ticks=levels[::3])
-    bar.set_label("lock margin, deg")
-    return to_svg(figure)
+    return shades
 
 
 @house_look

@@ -24,7 +24,7 @@ from trunnion.errors import TrunnionError
 from trunnion.figures import charts, drawings
 from trunnion.sheet import display, parameters, region_checks
 from trunnion.sheet.describe import angles_text, convention_rows, region_rows
-from trunnion.sheet.maps import angle_map, body_track, histogram
+from trunnion.sheet.maps import angle_maps, body_track, gains, histogram, phases_along
 from trunnion.sheet.rounding import ceiling_text, floor_text, interval_text
 from trunnion.units import parse_quantity
 
@@ -148,39 +148,46 @@ class EnvelopeSweep:
 
     def show_distribution(self) -> None:
         """How the margin is distributed over samples of all regions, for each convention."""
-        edges, shares = histogram(self.conventions, self.regions, self._plain["envelopes"])
+        edges, shares = histogram(self.conventions, self.regions)
         display.figure(
             "fig:distribution",
             charts.margin_histogram(edges, shares),
-            caption="Distribution of the lock margin over samples drawn evenly in each region's own angles, and over "
-            "the rows of tables (an illustration, not evidence)",
+            caption="Distribution of the lock margin over samples of each region, evenly in the angles of boxes and in "
+            "solid angle and roll of cones, and over the rows of tables (an illustration, not evidence)",
             alt="Histogram of lock margins in per cent of samples, one curve a convention.",
         )
 
     def show_maps(self) -> None:
-        """One map for each convention: its margin over two angles of the box region that governs it."""
+        """Maps for each convention: its margin over each pair of angles of the box region that governs it."""
         for name, convention in self.conventions.items():
-            drawn = angle_map(convention, self.regions, {over: self.margins[name, over].least for over in self.regions})
+            drawn = angle_maps(
+                convention, self.regions, {over: self.margins[name, over].least for over in self.regions}
+            )
             if drawn is not None:
                 display.figure(
                     f"fig:map-{name}",
-                    charts.margin_map(**drawn.picture),
-                    caption=f"Lock margin of {name} over {drawn.words}; the box is the region {drawn.region}",
-                    alt=f"Contour map of the lock margin of {name}; the least margin in the box is marked.",
+                    charts.margin_maps(drawn.panels),
+                    caption=f"Lock margin of {name} over {drawn.words}, two at a time, the third held where the margin "
+                    f"is least (diamond); the box is the region {drawn.region}, coloured lines surround lock",
+                    alt=f"Three contour maps of the lock margin of {name}; the least margin in the box is marked.",
                 )
 
     def show_history(self) -> None:
-        """Margin against time for every table, and the track of the carried axis among the lock directions."""
+        """Margin against time for every table, phases shaded, and the track of the carried axis among the lock
+        directions."""
         for name, track in self._tracks().items():
             R = _matrices(track)
+            others = {over: region for over, region in self.regions.items() if over != name}
+            phases = phases_along(track, others)
             curves = {key: np.degrees(convention.lock_margin(R)) for key, convention in self.conventions.items()}
             worst = {
                 key: (float(track.times[int(curve.argmin())]), float(curve.min())) for key, curve in curves.items()
             }
             display.figure(
                 f"fig:history-{name}",
-                charts.margin_against_time(track.times, curves, worst=worst),
-                caption=f"Lock margin of the recorded estimate against time, {name}; least rows marked",
+                charts.margin_against_time(track.times, curves, worst=worst, phases=phases),
+                caption=f"Lock margin of the recorded estimate against time, {name}; least rows marked"
+                + ("; shaded while the recorded attitude lies in the region named above" if phases else ""),
                 alt=f"Lock margin in degrees against time for the table {name}, one curve a convention.",
             )
             key, convention = min(self.conventions.items(), key=lambda pair: worst[pair[0]][1])
@@ -238,6 +245,17 @@ class EnvelopeSweep:
         limit = self._stated["angle rate limit"]
         if limit:
             display.statement("rate-limit", [self._limit_line(over, limit) for over in self.regions])
+
+    def show_gains(self) -> None:
+        """What a body rate or a small attitude error becomes in the angles, against the middle angle."""
+        for number, (kind, picture) in enumerate(gains(self.conventions), start=1):
+            display.figure(
+                f"fig:gains-{number}",
+                charts.gain_curves(**picture),
+                caption=f"Sequences about {kind}: largest angle rate for a body rate of one, and standard deviation of "
+                "the angles for attitude noise of one an axis, against the middle angle; lock is crossed",
+                alt=f"Amplification against the middle angle for sequences about {kind}, without bound at lock.",
+            )
 
     def show_noise(self) -> None:
         """How attitude noise grows into each angle at the least margin, and where the linear law holds."""

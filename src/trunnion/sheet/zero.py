@@ -162,11 +162,7 @@ class ZeroAttitude:
 
     def show_rule_of_thumb(self) -> None:
         """Common practice: keep the usual attitude near the middle of the middle angle's range."""
-        samples = [
-            R
-            for name, region in self.regions.items()
-            if (R := region_samples(region, self._plain["envelopes"][name])) is not None
-        ]
+        samples = [R for region in self.regions.values() if (R := region_samples(region)) is not None]
         if not samples:
             display.statement("thumb", "No region can be sampled, so the rule of thumb is not looked at.")
             return
