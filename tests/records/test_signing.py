@@ -187,6 +187,8 @@ def test_issue_refuses_until_the_rules_are_met_and_freezes_the_record(desk, caps
     assert len(list((record / "signatures").glob("*.json"))) == 3
     digests = json.loads((desk.workbook / "issued" / "A" / "digests.json").read_text())
     assert "record/allowed_signers" in digests["files"]
+    assert desk.sign("prepared") == 2
+    assert "revision A is issued; nothing is added to it" in capsys.readouterr().err
     page = (desk.outputs / "A" / "package.html").read_text()
     for name in ("Ada Mill", "Bo Carr", "Cy Dunn", "SHA256:", "review of inputs and results: CR-1"):
         assert name in page

@@ -154,6 +154,8 @@ def test_without_ssh_keygen_the_fallback_judges(signed, monkeypatch) -> None:
 
 @pytest.mark.parametrize(("text", "patterns", "expected"), [
     ("p1", "p1", True), ("p1", "p?", True), ("p10", "p?", False), ("p1", "*", True), ("p1", "!p1,*", False),
+    ("p1", "**", True), ("", "*", True), ("p1", "p*1*", True), ("p1x", "*p?", False), ("ab", "a*?b", False),
+    ("a" * 150, "*a" * 70 + "*b", False), ("a*b", "a?b", True), ("", "", True), ("a", "", False),
     ("p1", "*,!p1", False), ("p1", "a,b", False), ("p.1", "p.1", True), ("px1", "p.1", False),
 ])  # fmt: skip
 def test_patterns_as_ssh_config_5_has_them(text: str, patterns: str, expected: bool) -> None:

@@ -49,6 +49,8 @@ def archive(
     revision = workbook.document.revision
     if not is_issued(workbook.root, revision):
         raise RecordError(f"revision {revision} is not issued", remedy="trunnion issue WORKBOOK")
+    if not (issued_folder(workbook.root) / revision / layout.RECORD / "record.json").is_file():
+        raise RecordError(f"revision {revision} was frozen without signatures", remedy="archive a signed revision")
     outputs = store.revision_folder(workbook.root, revision, output).path
     require_unaltered(workbook.root, outputs.parent)
     keys = keys_of(workbook.root, trust or Trust())

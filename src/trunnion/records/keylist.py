@@ -67,8 +67,11 @@ class KeyList:
         """Who is who: each person's id, and the first id of those that share a key with it, directly or in a chain."""
         names = list(people)
         same = {name: name for name in names}
-        for blob in {entry.blob for entry in self.entries}:
-            sharing = [name for name in names if any(entry.stands_for(name) for entry in self.of(blob))]
+        keys: dict[bytes, list[str]] = {}
+        for entry in self.entries:
+            keys.setdefault(entry.blob, []).append(entry.principals)
+        for patterns in keys.values():
+            sharing = [name for name in names if any(matches(name, each) for each in dict.fromkeys(patterns))]
             roots = {same[name] for name in sharing}
             if roots:
                 first = min(roots, key=names.index)
@@ -115,13 +118,29 @@ def matches(text: str, patterns: str) -> bool:
     """Whether a comma-separated list of patterns (`*`, `?`, `!` for refusal) matches a text."""
     found = False
     for pattern in patterns.split(","):
-        wanted = pattern.removeprefix("!")
-        expression = "".join({"*": ".*", "?": "."}.get(sign, re.escape(sign)) for sign in wanted)
-        if re.fullmatch(expression, text, re.DOTALL):
+        if _fits(text, pattern.removeprefix("!")):
             if pattern.startswith("!"):
                 return False
             found = True
     return found
+
+
+def _fits(text: str, pattern: str) -> bool:
+    """Whether one pattern fits: a `*` that failed is tried one sign later, only the last one, so no pattern is slow."""
+    at = place = 0
+    star, resume = -1, 0
+    while at < len(text):
+        if place < len(pattern) and pattern[place] == "*":
+            star, resume = place, at
+            place += 1
+        elif place < len(pattern) and pattern[place] in ("?", text[at]):
+            at, place = at + 1, place + 1
+        elif star >= 0:
+            resume += 1
+            at, place = resume, star + 1
+        else:
+            return False
+    return not pattern[place:].strip("*")
 
 
 def public_blob(line: str) -> tuple[str, bytes]:

@@ -9,6 +9,7 @@ from pathlib import Path
 from typing import Any
 
 from trunnion.calculations.digest import sha256
+from trunnion.calculations.issue import is_issued
 from trunnion.errors import RecordError
 from trunnion.records import layout, moments, openssh, rules
 from trunnion.records import statements as st
@@ -38,6 +39,9 @@ class Wish:
 
 def sign(workbook: Any, results: dict[str, Any], wish: Wish, trust: Trust | None = None) -> Path:
     """Sign; returns the statement kept. RecordError says which rule or key stands against it."""
+    revision = workbook.document.revision
+    if is_issued(workbook.root, revision):
+        raise RecordError(f"revision {revision} is issued; nothing is added to it", remedy="trunnion revise WORKBOOK")
     case = case_of(workbook, results, trust)
     key, blob = _key(case, wish)
     person = _person(workbook, case, wish, blob)

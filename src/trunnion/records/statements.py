@@ -19,6 +19,7 @@ SIGNATURE, DEVIATION, WITHDRAWAL = "signature", "deviation", "withdrawal"
 KINDS = (SIGNATURE, DEVIATION, WITHDRAWAL)
 METHODS = ("alternate calculation", "comparison with test", "review of inputs and results")
 LARGEST = 4_000_000
+MOST_STATEMENTS = 2_000
 _FIELDS: dict[str, type] = {"schema": int, "kind": str, "document": dict, "role": str, "person": dict, "time": str}
 _MORE: dict[str, dict[str, type]] = {
     SIGNATURE: {"calculations": list},
@@ -120,6 +121,8 @@ def read_signed(
     """Statements with their signatures from files by name, verified; and what is wrong with the others."""
     found: list[Signed] = []
     wrong: list[str] = []
+    if len(files) > 2 * MOST_STATEMENTS:
+        raise RecordError(f"more than {MOST_STATEMENTS} statements", remedy="sign several calculations with one")
     for name in sorted(files):
         if not name.endswith(".json"):
             if not (name.endswith(".json.sig") and name.removesuffix(".sig") in files):

@@ -16,6 +16,7 @@ from dataclasses import dataclass
 from functools import cached_property
 from pathlib import Path
 
+from trunnion.calculations.digest import sha256
 from trunnion.errors import RecordError
 from trunnion.records import moments
 from trunnion.records.armour import Signature, parse_signature
@@ -26,6 +27,7 @@ PROGRAM = "ssh-keygen"
 _PATIENCE = 60.0  # seconds for one verification
 _FALLBACK_KEYS = ("ssh-ed25519", "ssh-rsa")
 _FALLBACK_HASHES = ("sha256", "sha512")
+_answers: dict[tuple[str | None, ...], Verified] = {}  # of this process: the same question is asked for sheet and page
 _SHORTEST_RSA = 256  # bytes of a 2048 bit modulus; ssh-keygen judges shorter ones
 
 
@@ -85,9 +87,14 @@ def verify(
     if not _plain_name(person):
         return Verified(Outcome.BAD, f"{person!r} is no id of a person", fingerprint(read.key))
     program = None if fallback else shutil.which(PROGRAM)
-    if program is None:
-        return _in_process(message, signature, read, person, namespace, at, keys)
-    return _by_program(program, message, signature, read, person, namespace, at, keys)
+    parts = (message, signature, keys.signers, keys.revoked or b"", b"" if keys.revoked is None else b"listed")
+    asked = (program, person, namespace, at, *(sha256(part) for part in parts))
+    if asked not in _answers:
+        if program is None:
+            _answers[asked] = _in_process(message, signature, read, person, namespace, at, keys)
+        else:
+            _answers[asked] = _by_program(program, message, signature, read, person, namespace, at, keys)
+    return _answers[asked]
 
 
 def _plain_name(person: str) -> bool:
