@@ -17,6 +17,7 @@ from trunnion.crosswalk.offsets import offsets_of
 from trunnion.crosswalk.study import Study
 
 SHOWN = 12
+_ROUNDING_DEG = 1e-9
 
 
 def lines_of(study: Study, *, reference: str = "reference", body: str = "body") -> list[str]:
@@ -43,13 +44,17 @@ def answer_lines(found: Identification) -> list[str]:
     """The answer in a sentence or two, with residual, noise and gap."""
     if found.answer is Answer.NONE_FITS:
         best, second = _two_best(found)
-        gap = f"; the next candidate misses by {_miss(second)}" if second is not None else ""
-        return [f"NONE FITS of {found.tried} tried: the best misses by {_miss(best)}{gap}"]
+        gap = f"; the next candidate misses by {miss_text(second)}" if second is not None else ""
+        return [f"NONE FITS of {found.tried} tried: the best misses by {miss_text(best)}{gap}"]
     first = found.fits[0]
-    noise = f"noise {'stated' if found.noise_stated else 'found'} {np.degrees(found.noise):.3g} deg an axis"
-    misses = f"miss {_miss(first)} (root mean square), {noise}"
+    noise = (
+        f"noise {'stated' if found.noise_stated else 'found'} {np.degrees(found.noise):.3g} deg an axis"
+        if found.noise_stated or found.noise > np.radians(_ROUNDING_DEG)
+        else "no noise"
+    )
+    misses = f"miss {miss_text(first)} (root mean square), {noise}"
     if found.next_best is not None:
-        misses += f"; the best that does not fit misses by {_miss(found.next_best)}"
+        misses += f"; the best that does not fit misses by {miss_text(found.next_best)}"
     if found.answer is Answer.IDENTIFIED:
         lines = [f"IDENTIFIED, one of {found.tried} functions: {misses}"]
     else:
@@ -136,7 +141,7 @@ def _finding_lines(study: Study) -> list[str]:
     found, lines = study.found, []
     alone = found.answer is Answer.IDENTIFIED
     for finding in found.fits[:SHOWN]:
-        lines.append(f"  {finding.reading.words}" + ("" if alone else f"   (miss {_miss(finding)})"))
+        lines.append(f"  {finding.reading.words}" + ("" if alone else f"   (miss {miss_text(finding)})"))
         if alone:
             lines += [f"    or, the same function: {name}" for name in finding.reading.names[1:]]
             if found.constants is Constants.RELABELLED and finding.reading.chain is not None:
@@ -173,17 +178,21 @@ def _agreement_lines(study: Study) -> list[str]:
 
 def _rates_line(found: Identification) -> str:
     if not found.fits:
-        return f"no order, sign and unit fits; the best misses by {_miss(found.next_best)}"
+        return f"no order, sign and unit fits; the best misses by {miss_text(found.next_best)}"
     told = "; or ".join(finding.reading.words for finding in found.fits[:4])
-    return f"{told} (miss {_miss(found.fits[0])} over turns of 40 deg)"
+    return f"{told} (miss {miss_text(found.fits[0])} over turns of 40 deg)"
 
 
 def _two_best(found: Identification) -> tuple[Finding | None, Finding | None]:
     return found.next_best, found.second_best
 
 
-def _miss(finding: Finding | None) -> str:
-    return "nothing" if finding is None else f"{np.degrees(finding.miss):.5g} deg"
+def miss_text(finding: Finding | None) -> str:
+    """The miss in degrees; what is below any printed digit is said to be so."""
+    if finding is None:
+        return "nothing"
+    miss = float(np.degrees(finding.miss))
+    return f"{miss:.5g} deg" if miss > _ROUNDING_DEG else f"less than {_ROUNDING_DEG:g} deg"
 
 
 def _plain_finding(finding: Finding) -> dict[str, Any]:

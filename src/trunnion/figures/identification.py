@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 
 import numpy as np
-from matplotlib.ticker import FuncFormatter, NullFormatter
+from matplotlib.ticker import FuncFormatter, MaxNLocator, NullFormatter
 from numpy.typing import NDArray
 
 from trunnion.figures.style import COLOURS, INK, LIMIT, house_look, label, new_axes, new_figure, to_svg
@@ -40,6 +40,7 @@ def residual_chart(residuals: Mapping[str, Floats], *, limit: float | None = Non
         axes.axhline(max(limit, _FLOOR_DEG), **LIMIT)
         axes.annotate("noise allowed for", (0.99, max(limit, _FLOOR_DEG)), (0, -9), xycoords=("axes fraction", "data"),
                       textcoords="offset points", ha="right")  # fmt: skip
+    axes.xaxis.set_major_locator(MaxNLocator(integer=True, min_n_ticks=1))
     axes.set_xlabel("sample")
     axes.set_ylabel("miss, deg")
     axes.legend(loc="best")

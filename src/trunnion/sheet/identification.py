@@ -11,10 +11,10 @@ from numpy.typing import NDArray
 
 from trunnion.attitude.words import number_text
 from trunnion.crosswalk.fitting import Constants
-from trunnion.crosswalk.identify import Answer, Finding
+from trunnion.crosswalk.identify import Answer
 from trunnion.crosswalk.near_fits import in_common
 from trunnion.crosswalk.study import Study, study
-from trunnion.crosswalk.told import SHOWN, answer_lines, asked_words, constant_words, fragment_lines
+from trunnion.crosswalk.told import SHOWN, answer_lines, asked_words, constant_words, fragment_lines, miss_text
 from trunnion.figures.identification import residual_chart
 from trunnion.sheet import display, identification_checks, parameters
 from trunnion.sheet.describe import convention_rows, words
@@ -98,7 +98,10 @@ class ConventionIdentification:
         """The answer in words, with the reasons where the data do not decide."""
         found = self._found
         lines = [*answer_lines(found), *(f"All that fit agree: {line}" for line in self._common())]
-        display.statement("answer", [*lines, *self.study.remarks], title="Answer")
+        display.statement(
+            "answer",
+            [*lines, *self.study.remarks],
+        )
         if found.answer is not Answer.IDENTIFIED:
             display.finding("not-identified", lines[0].capitalize(), against=self._over)
         if found.outliers:
@@ -112,12 +115,12 @@ class ConventionIdentification:
         for finding in self._found.fits[:SHOWN]:
             told = [constant_words(finding.left, "reference"), constant_words(finding.right, "body")]
             constants = "; ".join(text for text in told if text) or "none"
-            rows.append([finding.reading.words, constants, _miss(finding)])
+            rows.append([finding.reading.words, constants, miss_text(finding)])
         more = len(self._found.fits) - SHOWN
         display.table(
             "tbl:readings",
-            ["reading", "constants", "miss, deg"],
-            rows or [["none fits", "", _miss(self._found.next_best)]],
+            ["reading", "constants", "miss"],
+            rows or [["none fits", "", miss_text(self._found.next_best)]],
             caption="Functions that fit the samples, least miss first" + (f"; {more} more" if more > 0 else ""),
             align="llr",
         )
@@ -128,13 +131,15 @@ class ConventionIdentification:
     def show_residuals(self) -> None:
         """The miss of each sample under the best reading and the next."""
         found = self._found
-        shown = {"best": found.fits[0] if found.fits else found.next_best}
-        shown["next"] = found.fits[1] if len(found.fits) > 1 else found.next_best if found.fits else found.second_best
+        if found.fits:
+            shown = {"fits best": found.fits[0], "best that does not fit": found.next_best}
+        else:
+            shown = {"best": found.next_best, "next": found.second_best}
         drawn = {name: np.degrees(finding.residuals) for name, finding in shown.items() if finding is not None}
         if found.constants is Constants.LEFT and self.study.evidence.truth is None:
             caption = "Miss between the turns that angles and rates make over each stretch"
         else:
-            caption = "Miss of each sample under the best reading and the next one"
+            caption = "Miss of each sample under the best reading and the nearest that is not as good"
         display.figure(
             "fig:residuals",
             residual_chart(drawn, limit=float(np.degrees(found.noise)) if found.noise_stated else None),
@@ -187,7 +192,7 @@ class ConventionIdentification:
                 ["samples", str(self.study.evidence.samples)],
                 ["functions tried", str(found.tried)],
                 ["readings left", str(count)],
-                ["miss of the best reading", f"{miss:.5g}°"],
+                ["miss of the best reading", miss_text(best)],
                 ["next candidate worse by a factor", number_text(gap, 1) if np.isfinite(gap) else "not bounded"],
                 ["samples that do not belong", words(found.outliers) if found.outliers else "none"],
             ],
@@ -205,7 +210,3 @@ class ConventionIdentification:
 
     def _fragment(self) -> list[str]:
         return fragment_lines(self.study, self._reference.name, self._body.name)
-
-
-def _miss(finding: Finding | None) -> str:
-    return "" if finding is None else f"{np.degrees(finding.miss):.5g}"

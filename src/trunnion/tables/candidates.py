@@ -56,7 +56,8 @@ def search(series: Series) -> Series:
 def _clocks(series: Series) -> list[Found]:
     found = []
     for name, values in series.columns.items():
-        rising = len(values) > 1 and bool(np.all(np.diff(values) > 0.0))
+        with np.errstate(invalid="ignore"):
+            rising = len(values) > 1 and bool(np.all(np.diff(values) > 0.0))
         if _TIME_WORDS.search(name) and (rising or len(values) == 1):
             step = float(np.median(np.diff(values))) if len(values) > 1 else float("nan")
             found.append(Found("time", (name,), f"rises in every row, usual step {step:.6g}"))

@@ -65,6 +65,7 @@ class _Columns:
 
     path: Path
     series: Series
+    damage: tuple[str, ...] = ()
 
     def get(self, names: list[str] | tuple[str, ...]) -> Array:
         """(N, n) of named columns; TableError names the nearest column for one that is not there."""
@@ -96,7 +97,8 @@ def evidence_of(
     """
     _check(plain, agree)
     path = root / str(plain["table"])
-    columns = _Columns(path, _series(path, plain.get("topic")))
+    report = inspect_file(path)
+    columns = _Columns(path, _series(path, report.series, plain.get("topic")), tuple(report.troubles))
     question = "all" if agree else _in_question(plain)
     held = {key: columns.get(plain[key]) for key in _WIDTHS if key in plain}
     usable = np.all([np.isfinite(values).all(axis=1) for values in held.values()], axis=0)
@@ -118,7 +120,7 @@ def evidence_of(
         rates=rates,
         rate_names=_three(plain.get("rates")),
         rate_degrees={"deg/s": True, "rad/s": False}.get(str(plain.get("rate unit"))),
-        notes=notes,
+        notes=(*(f"the file is damaged: {trouble}" for trouble in columns.damage), *notes),
         known_quaternion=taken.get("quaternion") if not agree and question != "quaternion" else None,
     )
 
@@ -202,9 +204,8 @@ _QUESTIONS = (
 )
 
 
-def _series(path: Path, topic: Any) -> Series:
+def _series(path: Path, found: list[Series], topic: Any) -> Series:
     """The series of the file that holds the columns, with its columns."""
-    found = inspect_file(path).series
     if topic is None:
         held = [series for series in found if series.columns]
         if len(held) == 1:
