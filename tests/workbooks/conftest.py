@@ -60,3 +60,15 @@ def compute(workbook: Path, output: Path, *options: str) -> Computed:
 def sedgewing(tmp_path_factory: pytest.TempPathFactory) -> Computed:
     """The example workbook, computed with its package."""
     return compute(WORKBOOKS / "sedgewing", tmp_path_factory.mktemp("sedgewing"))
+
+
+@pytest.fixture(scope="session")
+def brackwater(tmp_path_factory: pytest.TempPathFactory) -> Computed:
+    """The survey boat's workbook, computed with its package."""
+    return compute(WORKBOOKS / "brackwater", tmp_path_factory.mktemp("brackwater"))
+
+
+@pytest.fixture(scope="session")
+def emberstaff(tmp_path_factory: pytest.TempPathFactory) -> Computed:
+    """The sounding rocket's workbook, computed with its package."""
+    return compute(WORKBOOKS / "emberstaff", tmp_path_factory.mktemp("emberstaff"))

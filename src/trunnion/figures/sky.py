@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 
 import numpy as np
+from matplotlib.ticker import FuncFormatter
 from numpy.typing import NDArray
 
 from trunnion.figures.style import (
@@ -158,6 +159,7 @@ def growth_curves(margins: Floats, curves: Mapping[str, Floats], *, turn: float,
                   va="top", fontsize=6.5, color=QUIET)  # fmt: skip
     if here is not None:
         axes.axvline(here, label="least margin of the regions", **LIMIT)
+    axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
     axes.set_xlabel("lock margin, deg")
     axes.set_ylabel("error of the outer angles, deg")
     axes.legend(loc="upper right")

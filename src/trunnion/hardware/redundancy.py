@@ -147,14 +147,28 @@ def _least_cost(t: Array, clearance: Array, values: Array, weight: float, limit:
 
 
 def _followed(chain: GimbalChain, t: Array, R: Array, outer: Array) -> tuple[Array, Array]:
-    """Joint angles (N, 4) along the record on the inner branch of lower peak rate, and the peak rates (4,)."""
+    """Joint angles (N, 4) along the record and the peak rates (4,): the inner branch least beyond the stops, then of
+    lower peak rate.
+    """
     solutions = inner_solutions(chain, R, outer)
-    best: tuple[Array, Array] | None = None
+    found = []
     for branch in range(2):
-        inner = np.unwrap(solutions.angles[:, branch], axis=0)
+        inner, beyond = _within_stops(chain, np.unwrap(solutions.angles[:, branch], axis=0))
         angles = np.column_stack([outer, inner])
         rates = np.max(np.abs(np.diff(angles, axis=0) / np.diff(t)[:, None]), axis=0)
-        if best is None or np.max(rates) < np.max(best[1]):
-            best = angles, rates
-    assert best is not None
-    return best
+        found.append((beyond, float(np.max(rates)), angles, rates))
+    best = min(found, key=lambda way: way[:2])
+    return best[2], best[3]
+
+
+def _within_stops(chain: GimbalChain, inner: Array) -> tuple[Array, float]:
+    """Inner angles (N, 3) brought by whole turns as near to the middle of their travel as they go, and how far (rad)
+    they still lie beyond a stop.
+    """
+    travel = chain.travel[1:]
+    stopped = np.isfinite(travel).all(axis=1)
+    middle = np.where(stopped, np.where(stopped[:, None], travel, 0.0).sum(axis=1) / 2.0, 0.0)
+    centre = (inner.max(axis=0) + inner.min(axis=0)) / 2.0
+    shifted = inner - 2.0 * np.pi * np.round((centre - middle) / (2.0 * np.pi))
+    beyond = np.maximum(travel[:, 0] - shifted.min(axis=0), shifted.max(axis=0) - travel[:, 1])
+    return shifted, float(np.max(np.maximum(beyond, 0.0)))

@@ -259,8 +259,8 @@ def travel_over(chain: GimbalChain, solutions: Solutions, *, covering_radius: fl
     if covering_radius is not None:
         growth = _growth(chain, clearance, covering_radius)
     lower, upper = chain.travel.T
-    centre = np.where(np.isfinite(upper - lower), (lower + upper) / 2.0, 0.0)
-    centre = np.where(np.isfinite(centre), centre, 0.0)
+    stopped = np.isfinite(upper - lower)
+    centre = np.where(stopped, np.where(stopped, lower, 0.0) + np.where(stopped, upper, 0.0), 0.0) / 2.0
     best: TravelOver | None = None
     for branch in range(2):
         angles = centre + wrapped(flat[:, branch] - centre)

@@ -303,6 +303,7 @@ class HostWork:
             cost = _rate(plan.rate_cost)
             rows.append([name, degrees_text(np.radians(held), 2), degrees_text(np.radians(least), 2), cost,
                          _rate(float(np.max(plan.held_rates))), _rate(float(np.max(plan.rates)))])  # fmt: skip
+            self._find_stops(name, plan.angles)
             names = [joint.name for joint in self.chain.joints]
             history = {joint: np.degrees(plan.angles[:, k]) for k, joint in enumerate(names)}
             display.figure(
@@ -319,6 +320,17 @@ class HostWork:
             caption="The fourth axis: what it buys and what it costs",
             align="lrrrrr",
         )  # fmt: skip
+
+    def _find_stops(self, name: str, angles: Array) -> None:
+        """A finding for every joint that the redundant solution would take beyond a stop."""
+        for k, joint in enumerate(self.chain.joints):
+            lower, upper = joint.travel
+            middle = 0.0 if not np.isfinite(upper - lower) else (lower + upper) / 2.0
+            column = angles[:, k] - 2.0 * np.pi * np.round((np.mean(angles[:, k]) - middle) / (2.0 * np.pi))
+            beyond = float(np.degrees(max(lower - column.min(), column.max() - upper)))
+            if beyond > 1e-9:
+                text = f"over {name} the redundant solution takes {joint.name} {beyond:.1f} deg beyond a stop"
+                display.finding(f"{self.chain.name}:{name}:{joint.name}", text, against=self.chain.name)
 
     def show_checks(self) -> None:
         """Solutions over the regions again: the payload must stand where it was to be held."""

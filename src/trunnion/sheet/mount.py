@@ -104,7 +104,11 @@ class MountCheck:
             [
                 f"Largest deviation of the columns from orthonormality {measure.orthonormality:.1e}; determinant "
                 f"{measure.determinant:+.6f}; distance from the nearest rotation {measure.distance:.1e}. "
-                + ("It is a proper rotation." if measure.proper else "It is not a proper rotation.")
+                + (
+                    "It is a proper rotation."
+                    if measure.proper
+                    else "It is a rotation only to the digits stated; the nearest rotation is what is used below."
+                )
             ],
         )
         self._record("orthonormality error", measure.orthonormality, "", "certified bound")
