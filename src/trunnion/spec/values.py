@@ -329,4 +329,4 @@ def one_of(*words: str) -> Any:
             raise refuse("not-one-of", value=value, words=list(words))
         return value
 
-    return Annotated[str, *_schema(validate, {"enum": [True if word == "true" else word for word in words]})]
+    return Annotated[str, *_schema(validate, {"enum": [*words, True] if "true" in words else [*words]})]
