@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import errno
+import hashlib
 import json
 import os
 import shutil
@@ -76,7 +77,11 @@ def test_a_defect_is_told_as_one_and_is_no_verdict(monkeypatch, capsys) -> None:
 def test_compute_and_its_exit_codes(workbook: Path, capsys) -> None:
     arguments = ["compute", str(workbook), "--no-pdf", "--allow-local-templates"]
     assert outcome([*arguments, "--json"]) is ExitCode.OK
-    assert json.loads(capsys.readouterr().out)["requirements"][0]["verdict"] == "meets"
+    captured = capsys.readouterr()
+    assert json.loads(captured.out)["requirements"][0]["verdict"] == "meets"
+    for template in (workbook / "templates").iterdir():
+        digest = hashlib.sha256(template.read_bytes()).hexdigest()
+        assert f"own template {template}  sha256 {digest}" in captured.err
     spec = workbook / "workbook.yaml"
     spec.write_text(spec.read_text().replace("at least: 20 deg", "at least: 66 deg"))
     assert outcome(arguments) is ExitCode.NOT_MET

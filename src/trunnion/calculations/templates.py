@@ -133,6 +133,12 @@ def local(workbook: Path) -> dict[str, Path]:
     return {path.stem: path for path in sorted((workbook / "templates").glob("*.ipynb"))}
 
 
+def own_of(workbook: Any) -> dict[Path, str]:
+    """SHA-256 by file of the templates of its own that a loaded workbook's calculations name."""
+    named = {calculation.template for calculation in workbook.calculations}
+    return {path: sha256(path.read_bytes()) for name, path in local(workbook.root).items() if name in named}
+
+
 def find(name: str, workbook: Path | None = None, *, place: Place | None = None) -> Template:
     """The template of that name; TemplateError with the nearest name, or when a local one bears a shipped
     name.

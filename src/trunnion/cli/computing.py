@@ -14,6 +14,7 @@ from trunnion.calculations import trial as trials
 from trunnion.calculations import writes
 from trunnion.calculations.compute import Computed, compute
 from trunnion.calculations.store import revision_folder
+from trunnion.calculations.templates import own_of
 from trunnion.cli import packaging, screen
 from trunnion.cli.exits import ExitCode
 from trunnion.records import signoff
@@ -41,6 +42,8 @@ def once(
     if overrides and not trial:
         raise click.UsageError("--set tries a value and needs --trial: a revision is computed from the spec as it is")
     loaded = load_workbook(workbook, overrides)
+    if options["allow_local"] and not look.quiet:
+        screen.show_own_templates(own_of(loaded))
     bound: list[packaging.Bound] = []
 
     def bind(done: Computed) -> None:
@@ -59,6 +62,8 @@ def once(
 def sweep(workbook: Path, vary: str, values: Sequence[str], look: Look, options: Mapping[str, Any]) -> ExitCode:
     """Sweep one value in trial runs: a table on the screen, table and plot as files in the scratch folder."""
     path, text = pair(vary, "--vary")
+    if options["allow_local"] and not look.quiet:
+        screen.show_own_templates(own_of(load_workbook(workbook)))
     steps, unit = trials.parse_values(text)
     fixed = [pair(value, "--set") for value in values]
     with screen.progress(shown=look.chatty) as tell:

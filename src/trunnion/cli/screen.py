@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 import sys
 import time
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager
 from pathlib import Path
 
@@ -47,6 +47,12 @@ def progress(*, shown: bool) -> Iterator[Tell | None]:
         yield tell
 
 
+def show_own_templates(own: Mapping[Path, str]) -> None:
+    """The workbook's own templates, by file and SHA-256, before they run: programs the user has consented to."""
+    for path, digest in own.items():
+        print(f"running the workbook's own template {path}  sha256 {digest}", file=sys.stderr)
+
+
 def show_computed(computed: Computed, bound: Bound, *, as_json: bool, quiet: bool) -> None:
     """The end of `compute`: failures on stderr; the verdict table, or JSON; the page to open."""
     for entry in computed.failed:
@@ -60,7 +66,10 @@ def show_computed(computed: Computed, bound: Bound, *, as_json: bool, quiet: boo
         return
     console = wide_console()
     console.print(_summary(computed))
-    console.print(verdict_table(computed.judgements))
+    if computed.judgements:
+        console.print(verdict_table(computed.judgements))
+    else:
+        console.print("The spec states no requirements: nothing is judged.")
     for warning in bound.warnings:
         console.print(f"note: {warning}", highlight=False, markup=False)
     if bound.html is not None:
@@ -142,7 +151,7 @@ def _summary(computed: Computed) -> Text:
     ran = sum(entry.fresh for entry in computed.done)
     stood = sum(entry.state == "computed" and not entry.fresh for entry in computed.done)
     missing = [entry.planned.id for entry in computed.done if entry.state == "missing"]
-    text = f"{ran} calculations run, {stood} up to date"
+    text = f"{ran} calculation{'' if ran == 1 else 's'} run, {stood} up to date"
     if computed.failed:
         text += f", {len(computed.failed)} failed"
     if missing:
