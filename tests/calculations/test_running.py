@@ -151,3 +151,14 @@ def test_a_home_that_cannot_be_written_changes_no_body(go, tmp_path, monkeypatch
     outcome, _ = go(cell)
     assert outcome.done, outcome.error
     assert (tmp_path / "body.ipynb").read_bytes() == first
+
+
+def test_an_error_is_told_fit_for_people(go, tmp_path) -> None:
+    """No control characters, no path of the machine, no more than a screen; the notebook keeps all of it."""
+    outcome, _ = go(f"raise ValueError('\x1b[31mred {tmp_path}/inputs/log.ulg ' + 'x' * 5000)")
+    assert not outcome.done
+    assert "\x1b" not in outcome.error
+    assert str(tmp_path) not in outcome.error
+    assert "inputs/log.ulg" in outcome.error
+    assert len(outcome.error) < 1300
+    assert "x" * 5000 in (tmp_path / "t.FAILED.ipynb").read_text()

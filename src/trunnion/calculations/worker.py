@@ -28,6 +28,7 @@ from trunnion.sheet.parameters import INPUTS_VARIABLE
 from trunnion.sheet.sharing import PROGRESS_VARIABLE
 
 _QUOTED_LINES = 12
+_LONGEST_ERROR = 1200  # characters: a screen
 _LOOK_EVERY = 0.5  # seconds between two looks at how far a cell is
 _MARKER = "papermill-error-cell-tag"  # cells papermill adds to a notebook that failed
 _current: Any = None  # the evidence of the running notebook, for the thread that watches the input
@@ -162,7 +163,12 @@ def _failure(job: dict[str, Any], err: Exception) -> dict[str, Any]:
     notebook = getattr(evidence, "notebook", None)
     cell = getattr(err, "cell_index", None)
     number = evidence.cell if cell is None and evidence is not None else cell
-    fields: dict[str, Any] = {"error": _error_text(err), "cell": number, "source": "", "kept": None}
+    fields: dict[str, Any] = {
+        "error": _for_people(_error_text(err), job["folder"]),
+        "cell": number,
+        "source": "",
+        "kept": None,
+    }
     if notebook is None:
         return fields
     notebook.cells = [cell for cell in notebook.cells if _MARKER not in cell.metadata.get("tags", [])]
@@ -175,6 +181,13 @@ def _failure(job: dict[str, Any], err: Exception) -> dict[str, Any]:
     except (TrunnionError, ValueError) as second:
         fields["error"] += f" (and the failed notebook could not be kept: {second})"
     return fields
+
+
+def _for_people(text: str, folder: str) -> str:
+    """An error fit for screen and package: no control characters, files named from the output folder, one screen."""
+    text = text.replace(f"{folder}{os.sep}", "")
+    text = "".join(sign for sign in text if sign == "\n" or sign.isprintable())
+    return text if len(text) <= _LONGEST_ERROR else f"{text[:_LONGEST_ERROR]} … ({len(text)} characters)"
 
 
 def _error_text(err: Exception) -> str:
