@@ -127,22 +127,23 @@ def sync_folder(folder: Path) -> None:
         os.close(handle)
 
 
+_ELSEWHERE = "choose another folder (compute takes --output DIR)"
+_WRITE_CAUSES = {
+    errno.EACCES: ("is not writable", f"{_ELSEWHERE}, or make this one writable"),
+    errno.EPERM: ("is not writable", f"{_ELSEWHERE}, or make this one writable"),
+    errno.ENOENT: ("can't be made there", _ELSEWHERE),
+    errno.EROFS: ("lies on a read-only disk", _ELSEWHERE),
+    errno.ENOSPC: ("can't be written: the disk is full", f"make room, or {_ELSEWHERE}"),
+    errno.EDQUOT: ("can't be written: the disk quota is used up", f"make room, or {_ELSEWHERE}"),
+    errno.ENOTDIR: ("lies below something that is a file", _ELSEWHERE),
+    errno.EEXIST: ("is a file where a folder is needed", _ELSEWHERE),
+    errno.ENAMETOOLONG: ("has too long a name", "shorten ids and file names"),
+}
+
+
 def store_error(err: OSError, path: Path) -> StoreError:
     """The error of an output that can't be written, in the engineer's words."""
-    causes = {
-        errno.EACCES: ("is not writable", "choose another folder with --output DIR, or make it writable"),
-        errno.EPERM: ("is not writable", "choose another folder with --output DIR, or make it writable"),
-        errno.EROFS: ("lies on a read-only disk", "choose another folder with --output DIR"),
-        errno.ENOSPC: (
-            "can't be written: the disk is full",
-            "make room, or use --output DIR",
-        ),
-        errno.EDQUOT: ("can't be written: the disk quota is used up", "make room, or use --output DIR"),
-        errno.ENOTDIR: ("lies below something that is a file", "choose another folder with --output DIR"),
-        errno.EEXIST: ("is a file where a folder is needed", "choose another folder with --output DIR"),
-        errno.ENAMETOOLONG: ("has too long a name", "shorten ids and file names"),
-    }
-    cause, remedy = causes.get(err.errno or 0, (f"can't be written ({err.strerror or err})", "see --output DIR"))
+    cause, remedy = _WRITE_CAUSES.get(err.errno or 0, (f"can't be written ({err.strerror or err})", _ELSEWHERE))
     return StoreError(f"{path} {cause}", remedy=remedy)
 
 
