@@ -1,4 +1,4 @@
-"""Helpers for table tests: conventions, statements, and a writer of small flight logs."""
+"""Fixtures for table tests: conventions, statements, and a writer of small flight logs."""
 
 from __future__ import annotations
 

@@ -88,9 +88,9 @@ def _place(cone: Cone, R: Array) -> str:
 
 def _any_perpendicular(d: Array) -> Array:
     """A unit vector perpendicular to each unit d (3, M)."""
-    helper = np.zeros_like(d)
-    helper[np.argmin(np.abs(d), axis=0), np.arange(d.shape[1])] = 1.0
-    n = cross(d, helper)
+    away = np.zeros_like(d)
+    away[np.argmin(np.abs(d), axis=0), np.arange(d.shape[1])] = 1.0
+    n = cross(d, away)
     return n / np.sqrt(dot(n, n))
 
 

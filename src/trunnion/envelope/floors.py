@@ -65,9 +65,9 @@ def _local_axes(centre: Array, start: Array, stop: Array) -> tuple[Array, Array]
     """Unit axes along the line of the foci and across it; any pair when the foci coincide."""
     along = stop - start
     along = along - dot(along, centre) * centre
-    helper = np.zeros_like(centre)
-    helper[np.argmin(np.abs(centre), axis=0), np.arange(centre.shape[1])] = 1.0
-    other = cross(centre, helper)
+    away = np.zeros_like(centre)
+    away[np.argmin(np.abs(centre), axis=0), np.arange(centre.shape[1])] = 1.0
+    other = cross(centre, away)
     apart = np.sqrt(dot(along, along))
     along = unit(np.where(apart > 1e-14, along, other))
     return along, cross(centre, along)

@@ -71,8 +71,8 @@ def nearest_rotation(M: Array) -> tuple[Array, float]:
 
 def perpendicular(n: Array) -> Array:
     """A unit vector square to the unit vector `n` (3,)."""
-    helper = np.eye(3)[int(np.argmin(np.abs(n)))]
-    return unit(np.cross(n, helper))
+    away = np.eye(3)[int(np.argmin(np.abs(n)))]
+    return unit(np.cross(n, away))
 
 
 def about_all(centre: Array, radius: float, count: int) -> Array:
