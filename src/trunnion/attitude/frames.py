@@ -62,13 +62,14 @@ class Frame:
     """A named triad: `axes` are the names of its x, y and z axis (`("forward", "starboard", "down")`).
 
     `left_handed` must be said of a left-handed triad; such a frame takes part in conversions through its
-    right-handed partner only, and no convention may stand on it. Raises AttitudeError for equal or opposite
+    right-handed `partner` only, and no convention may stand on it. Raises AttitudeError for equal or opposite
     axes, and when the words contradict the stated handedness.
     """
 
     name: str
     axes: tuple[str, str, str]
     left_handed: bool = False
+    partner: Frame | None = None
 
     def __post_init__(self) -> None:
         if len(self.axes) != 3 or not all(self.axes):

@@ -95,14 +95,10 @@ class _Check:
         self._circles()
 
     def _partner(self, name: str, frame: parts.Frame) -> None:
-        if frame.paired_with is None:
+        if not isinstance(frame.paired_with, str) or frame.paired_with not in self.resolver.names("frames"):
             return
         steps = ("frames", name)
-        known = self.resolver.names("frames")
-        if frame.paired_with not in known:
-            hint = suggestion(frame.paired_with, known, "the frames are")
-            self.note("unknown-reference", (*steps, "paired with"), what="frame", name=frame.paired_with, hint=hint)
-        elif frame.paired_with == name:
+        if frame.paired_with == name:
             self.note("self-link", (*steps, "paired with"), what="the pairing", frame=name)
         else:
             check_partner(self.resolver.context(*steps), frame, self.model.frames.get(frame.paired_with))
@@ -167,7 +163,7 @@ class _Check:
             if all(isinstance(name, str) for name in pair):  # a calculation on two frames joins them
                 yield from map(str, pair)
         for frame in self.model.frames.values():
-            if frame.paired_with is not None:
+            if isinstance(frame.paired_with, str):
                 yield frame.paired_with
         yield from (name for name, frame in self.model.frames.items() if frame.paired_with is not None)
 

@@ -5,8 +5,10 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 from typing import Any
 
+import numpy as np
 from pydantic import TypeAdapter
 
+from trunnion.attitude import frames as numeric
 from trunnion.attitude.words import listed, plain_names, range_sentence
 from trunnion.spec.parts import Frame
 from trunnion.spec.parts.frames import GridNorth, MagneticNorth, WanderNorth
@@ -46,10 +48,28 @@ def frame_notes(convention: Mapping[str, Any]) -> dict[str, str]:
     for key in ("reference", "body"):
         part = _FRAME.validate_python(dict(convention[key]))
         words = [north_words(part.north), carried_words(part.carried), *text_words(part)]
+        if part.handed == "left" and isinstance(part.paired_with, dict):
+            partner = _FRAME.validate_python(part.paired_with)
+            words.insert(0, partner_words(part, partner))
+            part = partner
         said = " ".join(word for word in words if word)
         if said:
             notes[str(part.name)] = said
     return notes
+
+
+def partner_words(frame: Frame, partner: Frame) -> str:
+    """How a left-handed frame is carried over to its right-handed partner."""
+    here = numeric.Frame(str(partner.name), tuple(partner.axes))
+    signed = [
+        "xyz"[int(np.argmax(np.abs(v)))] if v.sum() > 0 else f"−{'xyz'[int(np.argmax(np.abs(v)))]}"
+        for v in (here.direction(axis) for axis in frame.axes)
+    ]
+    return (
+        f"Stated in the left-handed frame {frame.name} (x {frame.axes[0]}, y {frame.axes[1]}, z {frame.axes[2]}) and "
+        f"carried over to this right-handed partner: x, y, z there are {', '.join(signed)} here, the angles keep their "
+        "values, and `by axis` there means the left-hand rule."
+    )
 
 
 def taken_from_standard(plain: Mapping[str, Any], convention: Any) -> tuple[str, ...]:

@@ -6,6 +6,7 @@ typed, texts and titles are left out.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import Any
 
 from trunnion.spec import parts
@@ -27,7 +28,8 @@ def plain_part(workbook: Workbook, kind: str, name: str) -> dict[str, Any]:
     section = _SECTIONS.get(kind, kind)
     part = workbook.part(section, name)
     made = {"name": name, **part.plain()}
-    writers = {
+    writers: dict[str, Callable[[Workbook, Any, dict[str, Any]], None]] = {
+        "frames": _frame,
         "conventions": _convention,
         "envelopes": _envelope,
         "forms": _form,
@@ -46,6 +48,10 @@ def _inline(workbook: Workbook, section: str, made: dict[str, Any], key: str) ->
     """Put a part in place of its name, where a name stands."""
     if isinstance(made.get(key), str):
         made[key] = plain_part(workbook, section, made[key])
+
+
+def _frame(workbook: Workbook, part: parts.Frame, made: dict[str, Any]) -> None:
+    _inline(workbook, "frames", made, "paired with")
 
 
 def _convention(workbook: Workbook, part: parts.Convention, made: dict[str, Any]) -> None:

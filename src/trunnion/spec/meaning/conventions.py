@@ -17,6 +17,7 @@ from numpy.typing import NDArray
 from trunnion.attitude import frames as numeric
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.extraction import chain_matrix
+from trunnion.attitude.partners import axis_map, sequence_through_partner
 from trunnion.attitude.rotations import rotation_angle
 from trunnion.attitude.sequences import Sense, Sequence
 from trunnion.attitude.words import axis_words as direction_words
@@ -62,17 +63,35 @@ def build_convention(ctx: Context, name: str, part: parts.Convention) -> Convent
     constants = None if turns is None else _constants(ctx, part, turns, reference, body)
     if turns is None or constants is None or forward is None:
         return None
-    left, right = constants
-    base = Convention(
-        name, reference, body, turns.sequence, turns.sense, turns.names,
-        left=left, right=right, maps_body_to_reference=forward,
-    )  # fmt: skip
-    signs = _signs(ctx, part, base, standard)
+    base = _base(name, reference, body, turns, constants, forward)
+    signs = _signs(ctx, part, base, standard, body.left_handed)
     offsets = _offsets(ctx, part, turns.names)
     if signs is None or offsets is None:
         return None
     based = replace(base, signs=signs, offsets=offsets)
     return _with_ranges(ctx, part, based, standard)
+
+
+def _base(
+    name: str,
+    reference: numeric.Frame,
+    body: numeric.Frame,
+    turns: Turns,
+    constants: tuple[Array, Array],
+    forward: bool,
+) -> Convention:
+    """The convention with each angle by the hand of its frames; of left-handed frames, carried to their partners."""
+    left, right = constants
+    sequence, signs = turns.sequence, (1, 1, 1)
+    if reference.partner is not None and body.partner is not None:
+        outer, inner = axis_map(reference.partner, reference), axis_map(body.partner, body)
+        sequence, signs = sequence_through_partner(sequence, outer)
+        left, right = outer @ left @ outer.T, outer @ right @ inner.T
+        reference, body = reference.partner, body.partner
+    return Convention(
+        name, reference, body, sequence, turns.sense, turns.names, signs,
+        left=left, right=right, maps_body_to_reference=forward,
+    )  # fmt: skip
 
 
 def _ends(body: numeric.Frame, reference: numeric.Frame) -> Ends:
@@ -84,8 +103,9 @@ def _frames(ctx: Context, part: parts.Convention) -> tuple[numeric.Frame, numeri
     body = ctx.part("frames", part.body, "body")
     if reference is None or body is None:
         return None
+    both = reference.partner is not None and body.partner is not None
     for key, frame in (("reference", reference), ("body", body)):
-        if frame.left_handed:
+        if frame.left_handed and not both:
             ctx.note("left-handed-use", key, frame=frame.name)
             return None
     if reference.name == body.name:
@@ -209,15 +229,16 @@ def _both_readings(zero: Array, turns: Turns, reference: numeric.Frame, body: nu
 
 
 def _signs(
-    ctx: Context, part: parts.Convention, base: Convention, standard: Standard | None
+    ctx: Context, part: parts.Convention, base: Convention, standard: Standard | None, legacy: bool
 ) -> tuple[int, int, int] | None:
+    """The sign of each angle; of left-handed frames (`legacy`), where two rules compete, it must be stated."""
     names = base.angle_names
     if part.positive is None:
-        if standard is None and _trade_differs(base):
+        if standard is None and (legacy or _trade_differs(base)):
             example = f"{base.body.axes[0]} up"
             ctx.note("no-sense", angle=names[1], axes=", ".join(base.body.axes), example=example)
             return None
-        return (1, 1, 1)
+        return base.signs
     signs = senses(ctx, part.positive, base, open_ones=standard is not None)
     if standard is not None and signs is not None and signs != (1, 1, 1):
         wrong = names[signs.index(-1)]
@@ -233,14 +254,16 @@ def _signs(
 def senses(
     ctx: Context, positive: str | dict[str, str], base: Convention, *, open_ones: bool = False
 ) -> tuple[int, int, int] | None:
-    """The sign of each angle from `positive`. open_ones: angles it leaves out are right-handed about their
-    axes."""
+    """The sign of each angle from `positive`. open_ones: angles it leaves out are right-handed about their axes.
+
+    `base` carries the sign of each turn by the hand of its own frames: +1, but for left-handed ones.
+    """
     names = base.angle_names
     if isinstance(positive, str):
         if positive != "by axis":
             ctx.note("bad-sense", "positive", text=positive)
             return None
-        return (1, 1, 1)
+        return base.signs
     unknown = [name for name in positive if name not in names]
     for name in unknown:
         hint = suggestion(name, names, "its angles are")
@@ -273,7 +296,7 @@ def _trade_differs(base: Convention) -> bool:
 def _sign(ctx: Context, text: str, base: Convention, index: int) -> int | None:
     """+1 when the stated sense is the right-handed one about the turn's axis, -1 when it is the other."""
     if text in ("by axis", "against axis"):
-        return 1 if text == "by axis" else -1
+        return base.signs[index] if text == "by axis" else -base.signs[index]
     angle = base.angle_names[index]
     words = [word for word in re.split(r"\s+", text) if word not in _FILLERS]
     axis = axis_vector(base.body, words[0]) if len(words) == 2 else None

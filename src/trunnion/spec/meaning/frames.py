@@ -46,7 +46,8 @@ def build_frame(ctx: Context, name: str, part: Frame) -> numeric.Frame | None:
     if not left and part.paired_with is not None:
         ctx.note("partner-without-left", "paired with")
         return None
-    return numeric.Frame(name, axes, left)
+    partner = ctx.part("frames", part.paired_with, "paired with") if left else None
+    return numeric.Frame(name, axes, left, partner)
 
 
 def _axes_stand(ctx: Context, axes: tuple[str, str, str], left: bool) -> bool:

@@ -8,7 +8,7 @@ from typing import Annotated, Any
 
 from pydantic import Discriminator, Tag
 
-from trunnion.spec.parts.base import NamedPart, Part, key_named
+from trunnion.spec.parts.base import NamedPart, Part, Reference, key_named
 from trunnion.spec.values import Angle, Name, Text, list_of, one_of
 
 
@@ -57,5 +57,5 @@ class Frame(NamedPart):
     origin: Text | None = None
     lever_arm: Text | None = None
     handed: one_of("right", "left") | None = None
-    paired_with: Name | None = None
+    paired_with: Reference | None = None
     text: Text | None = None
