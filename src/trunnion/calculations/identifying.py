@@ -49,11 +49,6 @@ def identify_file(
     return study(evidence, constants=CONSTANTS[constants], noise=allowed, offsets=offsets, agree=agree)
 
 
-def frames_words(given: Mapping[str, Any]) -> dict[str, str]:
-    """What the spec fragment calls the two frames."""
-    return {"reference": "reference", "body": "body"}
-
-
 def _plain(file: Path, given: Mapping[str, Any]) -> dict[str, Any]:
     """The options as the plain statement of samples."""
     plain = {

@@ -32,15 +32,9 @@ def command(file: Path, constants: str, offsets: bool, noise: str | None, as_jso
     With --agree nothing is known and the file's own statements are held against each other. Exit code 0 when exactly
     one function fits, 1 when several or none do.
     """
-    from trunnion.calculations.identifying import frames_words, identify_file
+    from trunnion.calculations.identifying import identify_file
     from trunnion.crosswalk.told import lines_of, plain_of
 
     made = identify_file(file, given, constants=constants, offsets=offsets, noise=noise)
-    names = frames_words(given)
-    text = (
-        json.dumps(plain_of(made, **names), indent=1, ensure_ascii=False)
-        if as_json
-        else "\n".join(lines_of(made, **names))
-    )
-    click.echo(text)
+    click.echo(json.dumps(plain_of(made), indent=1, ensure_ascii=False) if as_json else "\n".join(lines_of(made)))
     return ExitCode.OK if made.answer.name == "IDENTIFIED" else ExitCode.NOT_MET
