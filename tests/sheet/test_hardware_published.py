@@ -292,3 +292,44 @@ def test_boresight_and_clocking_stay_apart_and_a_transposed_matrix_is_named(show
     )
     turned.show_comparison()
     assert any("transposed" in item["text"] for item in shown if item["kind"] == "finding")
+
+
+def test_a_tilt_pair_is_not_pitch_and_roll(shown: list) -> None:
+    # Plain trigonometry (common practice): at pitch p and roll r of the 3-2-1 sequence the starboard axis dips by
+    # asin(sin r cos p); taken for a roll it turns the boat by the difference about its fore and aft axis.
+    mount = {
+        "name": "clinometer",
+        "host": HULL,
+        "axes": {"x": "forward", "y": "starboard", "z": "down"},
+        "instruments": ["clinometer"],
+        "clinometer": "sine",
+        "tilt axes": ["x", "y"],
+    }
+    pitch, roll = np.radians(25.0), np.radians(40.0)
+    pose = {
+        "name": "pose",
+        "poses": [{"angles": ["70 deg", "25 deg", "40 deg"], "convention": BOAT}],
+        "reference": LEVEL,
+        "body": HULL,
+    }
+    work = MountCheck(mount=mount, envelopes={"pose": pose})
+    work.show_tilts()
+    found = results(shown, "tilt pair taken for pitch and roll")["clinometer", "pose"]["attained"]
+    assert found == pytest.approx(np.degrees(roll - np.arcsin(np.sin(roll) * np.cos(pitch))), abs=1e-9)
+    work.show_checks()
+    assert agreed(shown) >= 2
+
+
+def test_further_sightings_come_from_a_table(tmp_path: Any, monkeypatch: pytest.MonkeyPatch) -> None:
+    (tmp_path / "inputs").mkdir()
+    text = "sensor_1,sensor_2,sensor_3,host_1,host_2,host_3,accuracy\n0,0,1,0,0,1,\n0.6,0.8,0,0.6,0.8,0,5 arcmin\n"
+    (tmp_path / "inputs" / "more.csv").write_text(text, encoding="utf-8")
+    monkeypatch.chdir(tmp_path)
+    rows = [{"sensor": "x", "host": "forward"}, {"sensor": "y", "host": "starboard"}]
+    plain = {"name": "bay", "host": HULL, "sightings": rows, "accuracy": "1 arcmin"}
+    work = AlignmentSurvey(survey=plain, table="more.csv")
+    assert len(work.found.residuals) == 4
+    np.testing.assert_allclose(np.degrees(work.data["sigma"]) * 60, [1, 1, 1, 5], rtol=0, atol=1e-12)
+    (tmp_path / "inputs" / "bad.csv").write_text("sensor_1\n1\n", encoding="utf-8")
+    with pytest.raises(TrunnionError, match="no column 'sensor_2'"):
+        AlignmentSurvey(survey=plain, table="bad.csv")

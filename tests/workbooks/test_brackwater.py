@@ -25,7 +25,7 @@ def test_it_computes_to_exit_code_zero_with_a_package(brackwater) -> None:
 
 def test_every_independent_check_agrees(brackwater) -> None:
     checks = [check for calculation in brackwater.results["calculations"] for check in calculation["checks"]]
-    assert len(checks) > 30
+    assert len(checks) >= 30
     assert all(check["agrees"] for check in checks)
 
 

@@ -34,7 +34,7 @@ def test_margins_counted_from_the_pad_are_ninety_degrees_less_the_cone(emberstaf
 
 
 def test_counted_from_level_flight_the_requirement_is_not_met(emberstaff) -> None:
-    rows = {row["candidate"]: row["verdict"] for row in emberstaff.requirement("EM-01")["candidates"]}
+    rows = {row["name"]: row["verdict"] for row in emberstaff.requirement("EM-01")["candidates"]}
     assert rows["aircraft"] == "does not meet"
     assert rows["pad"] == "meets"
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 
 import numpy as np
+from matplotlib.projections.polar import PolarAxes
 from matplotlib.ticker import FuncFormatter
 from numpy.typing import NDArray
 
@@ -46,6 +47,7 @@ def sky_plot(
     """
     figure = new_figure(width_mm=130, height_mm=118)
     axes = new_axes(figure, projection="polar")
+    assert isinstance(axes, PolarAxes)
     axes.set_theta_zero_location("N")
     axes.set_theta_direction(-1)
     axes.set_rlim(0.0, 90.0)

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+import csv
+import itertools
 from collections.abc import Mapping
 from typing import Any
 
+from trunnion.errors import TrunnionError
 from trunnion.sheet.describe import words
 from trunnion.sheet.parameters import input_path, open_table
 from trunnion.spec import build
@@ -54,3 +57,31 @@ def row(kind: str, name: str, plain: Mapping[str, Any]) -> dict[str, str]:
 def frame_of(plain: Mapping[str, Any]) -> Any:
     """The frame a plain part describes."""
     return build.frame_from_plain(plain)
+
+
+SIGHTING_COLUMNS = ("sensor_1", "sensor_2", "sensor_3", "host_1", "host_2", "host_3")
+MOST_SIGHTINGS = 100_000
+
+
+def sightings(name: str) -> list[dict[str, Any]]:
+    """Sightings of a delimited file in `inputs/`: columns sensor_1 … host_3, and `accuracy` if it varies."""
+    path = input_path(name)
+    with path.open(encoding="utf-8-sig", newline="") as stream:
+        reader = csv.DictReader(stream)
+        missing = [column for column in SIGHTING_COLUMNS if column not in (reader.fieldnames or [])]
+        if missing:
+            raise TrunnionError(
+                f"'{name}' has no column '{missing[0]}'", remedy=f"columns {', '.join(SIGHTING_COLUMNS)}"
+            )
+        return [
+            _sighting(row, line, name) for line, row in enumerate(itertools.islice(reader, MOST_SIGHTINGS), start=2)
+        ]
+
+
+def _sighting(row: Mapping[str, Any], line: int, name: str) -> dict[str, Any]:
+    try:
+        numbers = [float(row[column]) for column in SIGHTING_COLUMNS]
+    except (TypeError, ValueError) as err:
+        raise TrunnionError(f"'{name}' line {line}: a direction is not three numbers") from err
+    found: dict[str, Any] = {"sensor": numbers[:3], "host": numbers[3:]}
+    return {**found, "accuracy": row["accuracy"]} if row.get("accuracy") else found

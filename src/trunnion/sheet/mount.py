@@ -23,7 +23,7 @@ from trunnion.hardware.mount_check import check_matrix, numbers_to_enter
 from trunnion.hardware.mounts import Mount
 from trunnion.hardware.ranking import RankedMount, rank_mounts, rank_right_angle_mounts
 from trunnion.hardware.right_angles import right_angle_rotations
-from trunnion.sheet import display, mount_bench, mount_checks, mount_tolerance, parameters, region_checks
+from trunnion.sheet import display, mount_bench, mount_checks, mount_tilts, mount_tolerance, parameters, region_checks
 from trunnion.sheet.describe import angles_text, mount_rows, region_rows, words
 from trunnion.sheet.rounding import floor_text
 
@@ -231,6 +231,10 @@ class MountCheck:
         """Poses and turns with the reading each axis must show and the largest deviation to accept."""
         mount_bench.show_table(self.table)
 
+    def show_tilts(self) -> None:
+        """A clinometer's tilt pair over the regions, and what taking it for pitch and roll would cost."""
+        mount_tilts.show_tilts(self.mount, self.regions)
+
     def show_evidence(self) -> None:
         """What the bench table can show, and what level or planar poses alone would hide."""
         mount_bench.show_evidence(self.table)
@@ -314,6 +318,7 @@ class MountCheck:
         mount_checks.check_mount(self.mount, self._plain["mount"])
         mount_checks.check_readings(self.table)
         mount_tolerance.check_errors(self.mount, self.errors)
+        mount_tilts.check_tilts(self.mount, self.regions)
         for over, found in self.margins.items():
             assert self.mount.angles_as is not None
             region_checks.check_least_margin(

@@ -24,9 +24,11 @@ Array = NDArray[np.float64]
 class AlignmentSurvey:
     """One survey; each `show_…` displays one part and records what it finds."""
 
-    def __init__(self, *, survey: Mapping[str, Any]) -> None:
+    def __init__(self, *, survey: Mapping[str, Any], table: str = "") -> None:
         self._plain = dict(survey)
-        self.data = hardware_parts.survey(survey)
+        if table:
+            self._plain["sightings"] = [*survey["sightings"], *hardware_parts.sightings(table)]
+        self.data = hardware_parts.survey(self._plain)
 
     @property
     def name(self) -> str:
@@ -167,7 +169,7 @@ class AlignmentSurvey:
         )
         for number, text in enumerate(self.found.warnings, start=1):
             display.finding(f"{self.name}:warning-{number}", text, against=self.name)
-        for number in np.flatnonzero(self.found.outliers):
+        for number in np.flatnonzero(self.found.outliers).tolist():
             text = f"sighting {number + 1} is an outlier: {self.found.residual_sigmas[number]:.1f} standard deviations"
             display.finding(f"{self.name}:outlier-{number + 1}", text, against=self.name)
 
