@@ -152,3 +152,19 @@ def test_archives_are_searched_and_the_index_is_rebuilt_from_them(archived_once,
     assert issued_once.run("find", folder, "lock margin") == 0
     assert "WITHDRAWN" in capsys.readouterr().out
     assert issued_once.run("find", folder, "nowhere") == 1
+
+
+def test_an_input_above_the_copied_size_is_not_held_and_said_so(desk, tmp_path, capsys) -> None:
+    desk.edit("workbook: 1\n", "workbook: 1\n\nmax copied size: 10 B\n")
+    assert desk.run("compute", desk.workbook, "--no-pdf", "--quiet", "--allow-local-templates") == 0
+    desk.sign_all()
+    assert desk.issue() == 0
+    assert desk.run("archive", desk.workbook, "--key", desk.keys / "a1", "--into", tmp_path / "made") == 0
+    path = tmp_path / "made" / "MIN-001-A.zip"
+    held = tmp_path / "made" / "MIN-001-A" / "data"
+    assert not (held / "workbook" / "data" / "numbers.csv").exists()
+    assert "| inputs not held here | `data/numbers.csv` |" in (held / "CONTENTS.md").read_text()
+    assert desk.run("audit", path, "--signers", desk.signers) == 0
+    capsys.readouterr()
+    assert desk.run("recompute", path, *consents(desk)) == 1
+    assert "1 reproduced, 1 input not held" in capsys.readouterr().out

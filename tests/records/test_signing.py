@@ -175,6 +175,17 @@ def test_an_unmet_requirement_needs_a_signed_deviation(desk, capsys) -> None:
     assert standing(desk).approved_deviations == frozenset()
 
 
+def test_nobody_approves_a_deviation_on_his_own_calculation(desk, capsys) -> None:
+    row = "{id: DV-1, requirement: R1, reason: x, limits: y, expires: never, approved by: p1}"
+    desk.edit("calculations:\n", f"deviations:\n  - {row}\n\ncalculations:\n")
+    desk.edit("signs as: [prepared]", "signs as: [prepared, approved]")
+    keys = desk.workbook / "records" / "allowed_signers"
+    keys.write_text(keys.read_text().replace("prepared@trunnion", "prepared@trunnion,approved@trunnion"))
+    desk.sign("prepared")
+    assert desk.sign("approved", "--deviation", "DV-1", key="p1") == 2
+    assert "deviation DV-1: approved by the preparer (p1)" in capsys.readouterr().err
+
+
 def test_issue_refuses_until_the_rules_are_met_and_freezes_the_record(desk, capsys) -> None:
     assert desk.issue() == 2
     told = capsys.readouterr().err

@@ -104,7 +104,7 @@ def judge(case: Case) -> Standing:
         for name, content in _every(case).items()
         for role in layout.ROLES
     }  # fmt: skip
-    broken = [*_persons(case, marks), *_order(marks), *_latest(case, marks)]
+    broken = [*_persons(case, marks), *_own_deviations(case, marks, deviations), *_order(marks), *_latest(case, marks)]
     return Standing(marks, tuple(dict.fromkeys(broken)), tuple(bars(case, deviations)), deviations)
 
 
@@ -242,6 +242,18 @@ def _persons(case: Case, marks: Mapping[tuple[str, str], Mark]) -> list[str]:
                 if _same(mark.signed, person, marks[name, other].signed, who) and not allowed:
                     broken.append(f"{name}: {other} and {role} by the same person ({person}, {mark.signed.person})")
             found[role] = mark.signed.person
+    return broken
+
+
+def _own_deviations(case: Case, marks: Mapping[tuple[str, str], Mark], deviations: frozenset[str]) -> list[str]:
+    """Nobody approves a deviation from a requirement on his own calculation."""
+    who = case.keys.listed.identities(case.roles)
+    preparers = [m.signed for m in marks.values() if m.role == "prepared" and m.state is State.SIGNED and m.signed]
+    broken = []
+    for name in sorted(deviations):
+        signed = deviation_mark(case, name).signed
+        if signed is not None and any(_same(signed, other.person, other, who) for other in preparers):
+            broken.append(f"deviation {name}: approved by the preparer ({signed.person})")
     return broken
 
 
