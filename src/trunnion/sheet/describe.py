@@ -63,3 +63,12 @@ def angles_text(convention: Convention, R_rb: NDArray[np.float64]) -> str:
         for name, angle in zip(convention.angle_names, np.asarray(found.angles), strict=True)
     ]
     return ", ".join(texts) + (" (lock: last turn set to zero)" if bool(found.singular) else "")
+
+
+def table_lines(name: str, table: Any) -> list[str]:
+    """What the reader of a table noticed and handled, and, with counts, the damage the spec accepts."""
+    lines = [f"The reader of {name} notes: {'; '.join(table.notes)}."] if table.notes else []
+    if table.dropped:
+        told = "; ".join(str(trouble) for trouble in table.dropped)
+        lines.append(f"The file of {name} is damaged, and the workbook accepts it: {told}.")
+    return lines

@@ -44,11 +44,20 @@ def convention(plain: Mapping[str, Any]) -> Any:
     return convention_from_plain(plain)
 
 
-def region(plain: Mapping[str, Any]) -> Any:
-    """The region (envelope) an injected parameter describes; its tables are read from `inputs/`."""
+def region(plain: Mapping[str, Any], tables: list[Any] | None = None) -> Any:
+    """The region (envelope) an injected parameter describes; its tables are read from `inputs/`.
+
+    The tables read on the way are added to `tables`, for what their readers noticed.
+    """
     from trunnion.spec.build import region_from_plain
 
-    return region_from_plain(plain, open_table=open_table)
+    def opened(statement: Mapping[str, Any]) -> Any:
+        table = open_table(statement)
+        if tables is not None:
+            tables.append(table)
+        return table
+
+    return region_from_plain(plain, open_table=opened)
 
 
 def mount(plain: Mapping[str, Any]) -> Any:

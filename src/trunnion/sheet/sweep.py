@@ -23,7 +23,7 @@ from trunnion.envelope.subdivision import self_check
 from trunnion.errors import TrunnionError
 from trunnion.figures import charts, drawings
 from trunnion.sheet import display, parameters, region_checks
-from trunnion.sheet.describe import angles_text, convention_rows, region_rows
+from trunnion.sheet.describe import angles_text, convention_rows, region_rows, table_lines
 from trunnion.sheet.maps import angle_maps, body_track, gains, histogram, phases_along
 from trunnion.sheet.rounding import ceiling_text, floor_text, interval_text
 from trunnion.units import parse_quantity
@@ -51,7 +51,10 @@ class EnvelopeSweep:
         self.conventions: dict[str, Convention] = {
             name: parameters.convention(plain) for name, plain in conventions.items()
         }
-        self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
+        self._tables: dict[str, list[Any]] = {name: [] for name in envelopes}
+        self.regions: dict[str, Region] = {
+            name: parameters.region(plain, self._tables[name]) for name, plain in envelopes.items()
+        }
 
     @cached_property
     def margins(self) -> dict[tuple[str, str], AngleRange]:
@@ -86,7 +89,13 @@ class EnvelopeSweep:
             )
             for name, track in tracks.items()
         ]
+        texts += [
+            line for name, tables in self._tables.items() for table in tables for line in table_lines(name, table)
+        ]
         display.statement("assumptions", texts or ["None beyond the inputs: every region is stated in closed form."])
+        for name, tables in self._tables.items():
+            for number, trouble in enumerate((t for table in tables for t in table.findings), start=1):
+                display.finding(f"{name}-{number}", f"{name}: {trouble}.", against=f"input {name}")
 
     def show_margins(self) -> None:
         """The table of least margins, each one recorded with its witness, and where each is reached."""
