@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 
 from trunnion.attitude.conventions import Convention
+from trunnion.attitude.rates import convention_rate_matrix
 from trunnion.attitude.words import degrees_text, number_text, singular_attitudes
 from trunnion.figures import charts
 from trunnion.sheet import display, parameters
@@ -29,6 +30,7 @@ _EXPANSION = ("Near the singular attitudes",)
 _OTHER = ("Small angles", "The quaternion", "Inverse and transposed mapping")
 
 _RANK_AT_LOCK = 2
+_NEAREST = np.radians(0.5)  # the curves against the middle angle end this far from lock
 
 
 class ConventionDerivation:
@@ -113,23 +115,25 @@ class ConventionDerivation:
             caption="Rates against the distance from lock",
             align="rrrr",
         )
-        margins = np.linspace(0.5, 90.0, 180)
-        sine = np.sin(np.radians(margins))
+        locks = sorted(float(attitude.angle) for attitude in singular_attitudes(self.convention))
+        first, last = locks if locks[1] - locks[0] < 1.5 * np.pi else (locks[1] - 2.0 * np.pi, locks[0])
+        middle = np.linspace(first + _NEAREST, last - _NEAREST, 360)
+        rates = convention_rate_matrix(self.convention, np.stack([0.3 + 0.0 * middle, middle, 0.0 * middle], axis=-1))
+        outer = np.abs(np.linalg.inv(rates))
         display.figure(
             "fig:gains",
             charts.gain_curves(
-                margins,
+                np.degrees(middle),
                 {
-                    "outer angle rate": 1.0 / sine,
-                    "condition number": np.sqrt(
-                        (1.0 + np.abs(np.cos(np.radians(margins)))) / (1.0 - np.cos(np.radians(margins)))
-                    ),
+                    "largest outer angle rate": np.linalg.norm(outer[:, [0, 2]], axis=-1).max(axis=-1),
+                    "condition number": np.linalg.cond(rates),
                 },
-                locks=[0.0],
-                x_label="lock margin",
+                locks=[float(np.degrees(lock)) for lock in (first, last)],
+                x_label=self.convention.angle_names[1],
             ),
-            caption="Amplification of a unit body rate into the outer angle rates, and the condition number",
-            alt="Two curves that grow without bound as the lock margin goes to zero.",
+            caption=f"Outer angle rates from a unit body rate, and the condition number, against "
+            f"{self.convention.angle_names[1]}",
+            alt="Two curves that grow without bound towards both singular values of the middle angle.",
         )
 
     def show_expansion(self) -> None:

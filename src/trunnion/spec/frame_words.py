@@ -86,5 +86,5 @@ def taken_from_standard(plain: Mapping[str, Any], convention: Any) -> tuple[str,
     if "positive" not in plain:
         found.append("The sense of each angle: by the right-hand rule about its axis.")
     if not plain.get("ranges"):
-        found.append(f"The ranges: {range_sentence(convention)}")
+        found.append(f"The ranges: {range_sentence(convention).partition(': ')[2]}")
     return (*found, f"How much of it was read: {standard.seen}.")
