@@ -258,3 +258,26 @@ def test_wrapped_angles_and_samples_near_lock_are_read_like_others() -> None:
     wanted = "3-2-1 about moving axes; turns: first, second, third; deg; the matrix maps body to reference"
     assert wanted in names_of(found)
     assert found.outliers == (5, 12, 24, 39)
+
+
+def test_direction_and_roll_is_found_among_relabelled_chains() -> None:
+    # Azimuth clockwise from north, elevation, roll about the boresight; east-north-up, boresight z, mark x. It is built
+    # from its directions alone (geometry of azimuth and elevation; no source).
+    azimuth, elevation, roll = np.radians(
+        np.random.default_rng(14).uniform([-170, -70, -170], [170, 70, 170], (9, 3))
+    ).T
+    boresight = np.stack(
+        [np.cos(elevation) * np.sin(azimuth), np.cos(elevation) * np.cos(azimuth), np.sin(elevation)], axis=-1
+    )
+    mark = np.stack(
+        [-np.sin(elevation) * np.sin(azimuth), -np.sin(elevation) * np.cos(azimuth), np.cos(elevation)], axis=-1
+    )
+    mark = Rotation.from_rotvec(boresight * roll[:, None]).apply(mark)
+    truth = np.stack([mark, np.cross(boresight, mark), boresight], axis=-1)
+    numbers = np.degrees(np.stack([azimuth, elevation, roll], axis=-1))
+    made = study(Evidence(numbers=numbers, truth=truth))
+    assert made.answer is Answer.NONE_FITS
+    assert "would fit with" in made.mistakes[0]
+    made = study(Evidence(numbers=numbers, truth=truth), constants=Constants.RELABELLED)
+    assert made.answer is Answer.IDENTIFIED
+    assert made.found.fits[0].miss < 1e-12
