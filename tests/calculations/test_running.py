@@ -157,7 +157,7 @@ def test_an_error_is_told_fit_for_people(go, tmp_path) -> None:
     """No control characters, no path of the machine, no more than a screen; the notebook keeps all of it."""
     outcome, _ = go(f"raise ValueError('\x1b[31mred {tmp_path}/inputs/log.ulg ' + 'x' * 5000)")
     assert not outcome.done
-    assert "\x1b" not in outcome.error
+    assert "\x1b" not in outcome.error + outcome.source
     assert str(tmp_path) not in outcome.error
     assert "inputs/log.ulg" in outcome.error
     assert len(outcome.error) < 1300

@@ -174,7 +174,7 @@ def _failure(job: dict[str, Any], err: Exception) -> dict[str, Any]:
     notebook.cells = [cell for cell in notebook.cells if _MARKER not in cell.metadata.get("tags", [])]
     fields["of"] = len(notebook.cells)
     if number is not None and number < len(notebook.cells):
-        fields["source"] = _quoted(notebook.cells[number].source)
+        fields["source"] = _for_people(_quoted(notebook.cells[number].source), job["folder"])
     try:
         write_bytes(Path(job["failed"]), canonical_bytes(normalised(_plain(notebook), job["calculation"])))
         fields["kept"] = job["failed"]
@@ -184,9 +184,9 @@ def _failure(job: dict[str, Any], err: Exception) -> dict[str, Any]:
 
 
 def _for_people(text: str, folder: str) -> str:
-    """An error fit for screen and package: no control characters, files named from the output folder, one screen."""
+    """An error or a cell for screen and package: no control characters, files named from the folder, one screen."""
     text = text.replace(f"{folder}{os.sep}", "")
-    text = "".join(sign for sign in text if sign == "\n" or sign.isprintable())
+    text = "".join(sign for sign in text if sign in "\n\t" or sign.isprintable())
     return text if len(text) <= _LONGEST_ERROR else f"{text[:_LONGEST_ERROR]} … ({len(text)} characters)"
 
 
