@@ -15,7 +15,7 @@ from trunnion.errors import Place, TrunnionError
 from trunnion.hardware.bench import BenchTable, readings_from_rows
 from trunnion.hardware.diagnosis import Diagnosis, diagnose, evidence
 from trunnion.hardware.mounts import Mount
-from trunnion.sheet.mount_bench import SHOWN_IN, cell, heads_of, table_of
+from trunnion.sheet.mount_bench import SHOWN_IN, cell, heads_of, named_rows, table_of
 from trunnion.units import UNITS, parse_quantity
 
 FOLDER = "bench"
@@ -69,7 +69,7 @@ def blank_readings(table: BenchTable) -> str:
     for name, values in table.expected.items():
         scale, _ = SHOWN_IN[name]
         tolerance = getattr(table.tolerance, name)
-        for row, line, around in zip(_rows_of(table, name), values, tolerance, strict=True):
+        for row, line, around in zip(named_rows(table, name), values, tolerance, strict=True):
             empty = [""] * len(_CHANNELS)
             said = "; ".join(cell(scale * v, scale * a) for v, a in zip(line, around, strict=True))
             writer.writerow([name, row.key, " ".join(heads_of(table, name)), _UNITS[name], *empty, said])
@@ -184,11 +184,6 @@ def page(workbook: Any, table: BenchTable) -> str:
     )
 
 
-def _rows_of(table: BenchTable, name: str) -> tuple[Any, ...]:
-    """The poses, or the turns, an instrument is read in."""
-    return tuple(table.rows_of(name))
-
-
 def _axes(mount: Mount) -> str:
     from trunnion.hardware.mount_check import pointing_words
 
@@ -206,7 +201,7 @@ def _instrument(table: BenchTable, name: str, values: Any) -> str:
     scale, unit = SHOWN_IN[name]
     heads = "".join(f"<th>{_e(head)}{f', {unit}' if unit else ''}</th>" for head in heads_of(table, name))
     rows = []
-    for row, line, around in zip(_rows_of(table, name), values, getattr(table.tolerance, name), strict=True):
+    for row, line, around in zip(named_rows(table, name), values, getattr(table.tolerance, name), strict=True):
         boxes = "".join(
             f'<td class="box"><small>{cell(scale * v, scale * a)}</small></td>'
             for v, a in zip(line, around, strict=True)

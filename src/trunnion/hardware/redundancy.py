@@ -166,7 +166,7 @@ def _within_stops(chain: GimbalChain, inner: Array) -> tuple[Array, float]:
     they still lie beyond a stop.
     """
     travel = chain.travel[1:]
-    stopped = np.isfinite(travel).all(axis=1)
+    stopped = np.asarray(np.isfinite(travel).all(axis=1))
     middle = np.where(stopped, np.where(stopped[:, None], travel, 0.0).sum(axis=1) / 2.0, 0.0)
     centre = (inner.max(axis=0) + inner.min(axis=0)) / 2.0
     shifted = inner - 2.0 * np.pi * np.round((centre - middle) / (2.0 * np.pi))

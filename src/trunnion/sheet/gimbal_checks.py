@@ -164,19 +164,13 @@ def check_pass(chain: GimbalChain, name: str, track: Pass, found: PassAnalysis) 
 
 
 def check_sectors(sectors: Sequence[Sector], name: str, track: Pass, results: Sequence[SectorResult]) -> None:
-    """No row of the pass lies in a sector whose clearance is above zero, by matplotlib's point-in-polygon test."""
-    from matplotlib.path import Path
-
+    """No row of the pass lies in a sector whose clearance is above zero, by winding numbers."""
     v = track.direction_g
     azimuth, elevation = np.arctan2(v[:, 1], v[:, 0]), np.arcsin(np.clip(-v[:, 2], -1.0, 1.0))
     for found in results:
         (sector,) = [entry for entry in sectors if entry.name == found.sector]
-        outline = Path(sector.corners)
-        rows = [
-            int(np.sum(outline.contains_points(np.column_stack([azimuth + turn * 2.0 * np.pi, elevation]))))
-            for turn in (0, 1)
-        ]
-        entered = min(1, sum(rows))
+        rows = [np.abs(_winding(sector.corners, azimuth + 2.0 * np.pi * turn, elevation)) > np.pi for turn in (0, 1)]
+        entered = bool(np.any(rows))
         display.check(
             f"check:{found.sector}:{name}",
             f"whether {name} enters {found.sector} (1: it does)",
@@ -184,5 +178,11 @@ def check_sectors(sectors: Sequence[Sector], name: str, track: Pass, results: Se
             theirs=float(entered),
             tolerance=0.5,
             unit="",
-            library="point in polygon, row by row",
+            library="winding numbers, row by row",
         )
+
+
+def _winding(corners: Array, x: Array, y: Array) -> Array:
+    """The angle (N,) rad a polygon (M, 2) turns round each point: a whole turn inside, none outside."""
+    seen = (corners[:, 0] - x[:, None]) + 1j * (corners[:, 1] - y[:, None])
+    return np.asarray(np.sum(np.angle(np.roll(seen, -1, axis=1) * np.conj(seen)), axis=1))

@@ -52,6 +52,11 @@ def heads_of(table: BenchTable, instrument: str) -> Sequence[str]:
     return mount.sensor_axes
 
 
+def named_rows(table: BenchTable, instrument: str) -> tuple[Any, ...]:
+    """The poses, or the turns, an instrument is read in."""
+    return tuple(table.rows_of(instrument))
+
+
 def show_table(table: BenchTable) -> None:
     """Poses and turns with the reading each channel must show and the largest deviation to accept."""
     for name, values in table.expected.items():
@@ -59,7 +64,7 @@ def show_table(table: BenchTable) -> None:
         scale, unit = SHOWN_IN[name]
         rows = [
             [row.words, *(cell(scale * value, scale * allowed) for value, allowed in zip(line, around, strict=True))]
-            for row, line, around in zip(table.rows_of(name), values, tolerance, strict=True)
+            for row, line, around in zip(named_rows(table, name), values, tolerance, strict=True)
         ]
         heads = [f"{head}, {unit}" if unit else head for head in heads_of(table, name)]
         caption = f"{name.replace('_', ' ').capitalize()}: expected readings"
@@ -134,7 +139,7 @@ def _kept(table: BenchTable, poses: set[str], turns: set[str]) -> Channels:
 
 def _show_powers(table: BenchTable) -> None:
     powers = row_powers(table)
-    words = {row.key: row.words for row in (*table.poses, *table.turns)}
+    words = {row.key: row.words for name, _ in table.expected.items() for row in named_rows(table, name)}
     display.table(
         "tbl:powers",
         ["instrument", "pose or turn", "mistakes it reveals by itself"],
