@@ -15,11 +15,13 @@ from trunnion.attitude.demand import margin_for_rate
 from trunnion.attitude.noise import linear_noise
 from trunnion.attitude.sequences import Sequence
 from trunnion.envelope.demand import peak_demand
+from trunnion.envelope.findings import region_findings
 from trunnion.envelope.margins import entry_margin_table, lock_margin
 from trunnion.envelope.regions import Dispersed, Mounted, Region, Track, Union
 from trunnion.envelope.results import AngleRange, Extreme
 from trunnion.envelope.shares import shares_near_lock
 from trunnion.envelope.subdivision import self_check
+from trunnion.envelope.tracks import track_report
 from trunnion.errors import TrunnionError
 from trunnion.figures import charts, drawings
 from trunnion.sheet import display, parameters, region_checks
@@ -30,6 +32,7 @@ from trunnion.units import parse_quantity
 
 Array = NDArray[np.float64]
 
+_MOST_FINDINGS = 12  # of one region; what is beyond is counted
 _NEAR_LOCK_DEG = (2.0, 5.0, 10.0)
 
 
@@ -78,7 +81,8 @@ class EnvelopeSweep:
         )
 
     def show_assumptions(self) -> None:
-        """What is taken for granted about each table: the motion between its rows and the error of its source."""
+        """What is taken for granted about each table: the motion between its rows and the error of its source; what is
+        odd about a region is a finding against it."""
         tracks = self._tracks()
         texts = [
             f"Between the rows of {name} the vehicle {track.between.value}; "
@@ -92,7 +96,15 @@ class EnvelopeSweep:
         texts += [
             line for name, tables in self._tables.items() for table in tables for line in table_lines(name, table)
         ]
+        texts += [line for name, track in tracks.items() for line in _handled(name, track)]
         display.statement("assumptions", texts or ["None beyond the inputs: every region is stated in closed form."])
+        for name, region in self.regions.items():
+            found = region_findings(region)
+            for number, text in enumerate(found[:_MOST_FINDINGS], start=1):
+                display.finding(f"region:{name}:{number}", text, against=name)
+            if len(found) > _MOST_FINDINGS:
+                left = f"{len(found) - _MOST_FINDINGS:,} further findings of the same kinds"
+                display.finding(f"region:{name}:more", left, against=name)
         for name, tables in self._tables.items():
             for number, trouble in enumerate((t for table in tables for t in table.findings), start=1):
                 display.finding(f"{name}-{number}", f"{name}: {trouble}.", against=f"input {name}")
@@ -420,6 +432,20 @@ class EnvelopeSweep:
             return f"{over}: {err.fault.cause}."
         margin = ceiling_text(float(np.degrees(needed)))
         return f"{over}: a limit of {limit} on the outer angle rates needs a margin of {margin}°."
+
+
+def _handled(name: str, track: Track) -> list[str]:
+    """What was noticed in a table and handled."""
+    report = track_report(track)
+    lines = []
+    if report.sign_flips:
+        lines.append(
+            f"{name}: {report.sign_flips:,} neighbouring rows have quaternions of opposite signs, which are the "
+            "same attitudes; handled."
+        )
+    if report.repeated:
+        lines.append(f"{name}: {report.repeated:,} rows repeat the attitude of the row before.")
+    return lines
 
 
 def _phases_apart(name: str, region: Region) -> list[tuple[str, Region]]:
