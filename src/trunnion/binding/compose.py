@@ -366,13 +366,17 @@ class _Composer:
         for place, (title, paragraphs) in enumerate(page.parts):
             if page.drawing and place == _DRAWN_BEFORE:
                 blocks.append(_drawing(page))
-            told = tuple(b.Paragraph(self.prose(text, page.id)) for text in paragraphs)
-            blocks.append(b.Callout("statement", title, told))
-        if page.calculation:
-            way = (*b.line(f"{self.words('Calculation')} "), b.Link(page.calculation, b.line(page.calculation)))
-            blocks.append(b.Paragraph(way))
+            told = [self.prose(text, page.id) for text in paragraphs]
+            if page.calculation and place == len(page.parts) - 1:  # in the last line, so that it takes no line more
+                told[-1] = (*told[-1], *b.line(" "), *self._way(page.calculation))
+            blocks.append(b.Callout("statement", title, tuple(b.Paragraph(line) for line in told)))
+        if page.calculation and not page.parts:
+            blocks.append(b.Paragraph(self._way(page.calculation)))
         anchor = f"statements-{index + 1}" if index else "statements"
         return b.Part(anchor, page.title, tuple(blocks), number=self.numbered())
+
+    def _way(self, calculation: str) -> b.Line:
+        return (*b.line(f"{self.words('Calculation')} "), b.Link(calculation, b.line(calculation)), *b.line("."))
 
     def changes(self) -> b.Part | None:
         if not self.package.changes:

@@ -68,7 +68,7 @@ def partner_words(frame: Frame, partner: Frame) -> str:
     return (
         f"Stated in the left-handed frame {frame.name} (x {frame.axes[0]}, y {frame.axes[1]}, z {frame.axes[2]}) and "
         f"carried over to this right-handed partner: x, y, z there are {', '.join(signed)} here, the angles keep their "
-        "values, and `by axis` there means the left-hand rule."
+        "values, and ‘by axis’ there means the left-hand rule."
     )
 
 
