@@ -19,6 +19,7 @@ from trunnion.sheet.mount_bench import SHOWN_IN, cell, heads_of, named_rows, tab
 from trunnion.units import UNITS, parse_quantity
 
 FOLDER = "bench"
+_KINDS = {"gyro": "angular rate", "clinometer": "angle"}
 LARGEST_FILE = 1_000_000  # bytes; a filled-in sheet is a few kilobytes
 _CHANNELS = ("reading 1", "reading 2", "reading 3")
 _HEADING = ("instrument", "pose or turn", "channels", "unit", *_CHANNELS, "expected")
@@ -110,15 +111,25 @@ def _row(entry: dict[str, Any], place: Place) -> dict[str, Any] | None:
         return None
     count = max(1, len(str(entry.get("channels") or "").split()))
     unit = str(entry.get("unit") or "").strip()
-    factor = 1.0 if unit in ("1", "g") else _factor(unit, place)
-    values = [factor * _number(text, place) for text in texts[:count]]
     instrument, row = (str(entry.get(key) or "").strip() for key in ("instrument", "pose or turn"))
+    factor = _factor(instrument, unit, place)
+    values = [factor * _number(text, place) for text in texts[:count]]
     return {"instrument": instrument, "row": row, "values": values}
 
 
-def _factor(unit: str, place: Place) -> float:
-    if unit not in UNITS:
-        raise TrunnionError(f"'{unit[:20]}' is not a unit", remedy="deg/s, rad/s, deg, rad, g or 1", place=place)
+def _factor(instrument: str, unit: str, place: Place) -> float:
+    """Size of the unit in inside units; a unit of the wrong kind is refused, never guessed."""
+    kind = _KINDS.get(instrument)
+    plain = _UNITS.get(instrument)
+    if kind is None:
+        if plain is not None and unit != plain:
+            raise TrunnionError(
+                f"'{unit[:20]}' is not the unit of the {instrument}", remedy=f"write {plain}", place=place
+            )
+        return 1.0
+    if unit not in UNITS or UNITS[unit].kind != kind:
+        cause = f"'{unit[:20]}' is not a unit of {kind}, which the {instrument} reads"
+        raise TrunnionError(cause, remedy=f"for instance {plain}", place=place)
     return parse_quantity(f"1 {unit}").value
 
 
