@@ -164,5 +164,5 @@ def growth_curves(margins: Floats, curves: Mapping[str, Floats], *, turn: float,
     axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
     axes.set_xlabel("lock margin, deg")
     axes.set_ylabel("error of the outer angles, deg")
-    axes.legend(loc="upper right")
+    axes.legend(loc="center")
     return to_svg(figure)
