@@ -84,3 +84,13 @@ def test_the_sense_must_be_said(tmp_path) -> None:
     (tmp_path / "workbook.yaml").write_text(text)
     with pytest.raises(SpecError, match="sense"):
         load_workbook(tmp_path)
+
+
+@pytest.mark.parametrize("offset", [0.0, 30.0])
+def test_a_repeated_sequence_keeps_the_usual_range_of_its_own_frames(offset: float, tmp_path) -> None:
+    text = TEXT.replace("3-2-1", "3-1-3").replace("ABOUT", "moving axes")
+    text = text.replace("POSITIVE", f"by axis, offsets: {{pitch: {offset} deg}}")
+    (tmp_path / "workbook.yaml").write_text(text)
+    legacy = convention_from_plain(plain_part(load_workbook(tmp_path), "convention", "legacy"))
+    angles = np.array([0.4, 1.1 + np.radians(offset), -2.0])
+    np.testing.assert_allclose(legacy.angles(legacy.matrix(angles)).angles, angles, rtol=0, atol=1e-12)

@@ -68,7 +68,8 @@ def build_convention(ctx: Context, name: str, part: parts.Convention) -> Convent
     offsets = _offsets(ctx, part, turns.names)
     if signs is None or offsets is None:
         return None
-    based = replace(base, signs=signs, offsets=offsets)
+    ranges = base.ranges and (base.ranges[0], (offsets[1], offsets[1] + math.pi), base.ranges[2])
+    based = replace(base, signs=signs, offsets=offsets, ranges=ranges)
     return _with_ranges(ctx, part, based, standard)
 
 
@@ -82,15 +83,17 @@ def _base(
 ) -> Convention:
     """The convention with each angle by the hand of its frames; of left-handed frames, carried to their partners."""
     left, right = constants
-    sequence, signs = turns.sequence, (1, 1, 1)
+    sequence, signs, ranges = turns.sequence, (1, 1, 1), None
     if reference.partner is not None and body.partner is not None:
         outer, inner = axis_map(reference.partner, reference), axis_map(body.partner, body)
         sequence, signs = sequence_through_partner(sequence, outer)
         left, right = outer @ left @ outer.T, outer @ right @ inner.T
         reference, body = reference.partner, body.partner
+        if sequence.repeated:  # the usual range of the frames the angles are stated in, whatever the sign of the turn
+            ranges = ((-math.pi, math.pi), (0.0, math.pi), (-math.pi, math.pi))
     return Convention(
         name, reference, body, sequence, turns.sense, turns.names, signs,
-        left=left, right=right, maps_body_to_reference=forward,
+        left=left, right=right, ranges=ranges, maps_body_to_reference=forward,
     )  # fmt: skip
 
 
