@@ -119,6 +119,8 @@ def outcome(arguments: list[str] | None = None) -> ExitCode:
     except (KeyboardInterrupt, click.Abort):
         click.echo("Stopped. Finished calculations are kept; nothing half-written was left.", err=True)
         return ExitCode.INTERRUPTED
+    except SystemExit:  # click ends so when the reader of a pipe has gone; never a verdict
+        return ExitCode.FAILED
     except BrokenPipeError:
         sys.stderr.close()
         return ExitCode.FAILED

@@ -19,6 +19,7 @@ from trunnion.envelope.regions import Region
 from trunnion.envelope.tilts import tilt_margin, turn_margin
 from trunnion.sheet import display, independent, parameters
 from trunnion.sheet.describe import convention_rows, region_rows, words
+from trunnion.sheet.regions import Regions
 from trunnion.sheet.rounding import floor_text
 from trunnion.spec.build import form_from_plain
 from trunnion.spec.frame_words import frame_notes
@@ -40,7 +41,7 @@ class AngleForm:
         self._plain = {"form": dict(form), "convention": dict(convention), "envelopes": dict(envelopes)}
         self.stated: StatedForm = form_from_plain(form)
         self.convention: Convention = parameters.convention(convention)
-        self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
+        self.regions = Regions(envelopes)
 
     @cached_property
     def walk(self) -> FormWalk:
@@ -69,6 +70,7 @@ class AngleForm:
         if len(self.stated.names) == 2:
             texts.append("Where an attitude is needed the free roll is taken as zero.")
         display.statement("assumptions", texts)
+        self.regions.tell()
 
     def show_statement(self) -> None:
         """The statement page of the form, and the convention in words."""

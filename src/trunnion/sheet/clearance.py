@@ -13,11 +13,12 @@ from numpy.typing import NDArray
 from trunnion.attitude.frames import Frame
 from trunnion.envelope.clearance import Directions, clearance_along, clearance_to_any
 from trunnion.envelope.margins import direction_clearance
-from trunnion.envelope.regions import Region, Track
+from trunnion.envelope.regions import Track
 from trunnion.envelope.results import AngleRange, Extreme
 from trunnion.errors import CalculationError
 from trunnion.sheet import display, independent, parameters, region_checks
 from trunnion.sheet.describe import region_rows, words
+from trunnion.sheet.regions import Regions
 from trunnion.sheet.rounding import ceiling_text, floor_text
 from trunnion.spec.meaning.envelopes import STATEMENT_KEYS
 from trunnion.tables.directions import read_direction_table
@@ -54,7 +55,7 @@ class DirectionClearance:
         self._plain = {"directions": dict(directions), "envelopes": dict(envelopes)}
         first, second = parameters.frame(reference), parameters.frame(body)
         self.pairs = {name: _pair(name, plain, first, second) for name, plain in directions.items()}
-        self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
+        self.regions = Regions(envelopes)
 
     @cached_property
     def clearances(self) -> dict[tuple[str, str], AngleRange]:
@@ -110,6 +111,7 @@ class DirectionClearance:
             for name in moving
         ]
         display.statement("assumptions", texts)
+        self.regions.tell()
 
     def show_clearances(self) -> None:
         """Least and largest angle of every pair over every region, recorded, and where they are reached."""

@@ -13,10 +13,10 @@ from trunnion.attitude.conventions import Convention
 from trunnion.attitude.words import degrees_text, number_text, singular_words, turn_sentences
 from trunnion.crosswalk.walk import AngleMap, CrossWalk, cross_walk, probes
 from trunnion.envelope.margins import lock_margin
-from trunnion.envelope.regions import Region
 from trunnion.figures import charts
 from trunnion.sheet import display, independent, parameters
 from trunnion.sheet.describe import convention_rows, region_rows
+from trunnion.sheet.regions import Regions
 
 Array = NDArray[np.float64]
 
@@ -34,7 +34,7 @@ class ConventionCrosswalk:
         self._plain = {"first": dict(first), "second": dict(second), "envelopes": dict(envelopes)}
         self.first: Convention = parameters.convention(first)
         self.second: Convention = parameters.convention(second)
-        self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
+        self.regions = Regions(envelopes)
 
     @cached_property
     def walk(self) -> CrossWalk:
@@ -55,6 +55,7 @@ class ConventionCrosswalk:
             "assumptions",
             "Both conventions state the attitude of one vehicle; axes that bear one name in both are the same lines.",
         )
+        self.regions.tell()
 
     def show_statements(self) -> None:
         """Both conventions in words, and where each is singular."""

@@ -13,14 +13,15 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from trunnion.envelope.regions import Region, Track
+from trunnion.envelope.regions import Track
 from trunnion.errors import HardwareError
 from trunnion.hardware.gimbals import GimbalChain
 from trunnion.hardware.joint_solutions import ReachableSet, reachable_set
 from trunnion.hardware.passes import Pass
 from trunnion.hardware.sectors import Sector
-from trunnion.sheet import display, gimbal_base, gimbal_checks, gimbal_host, gimbal_sky, hardware_parts, parameters
+from trunnion.sheet import display, gimbal_base, gimbal_checks, gimbal_host, gimbal_sky, hardware_parts
 from trunnion.sheet.describe import region_rows
+from trunnion.sheet.regions import Regions
 from trunnion.units import parse_quantity
 
 Array = NDArray[np.float64]
@@ -50,7 +51,7 @@ class GimbalTravel:
             "sectors": dict(sectors),
         }
         self.chain: GimbalChain = hardware_parts.gimbal(gimbal)
-        self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
+        self.regions = Regions(envelopes)
         self.passes: dict[str, Pass] = {name: hardware_parts.sky_pass(plain) for name, plain in passes.items()}
         self.sectors: dict[str, Sector] = {name: hardware_parts.sector(plain) for name, plain in sectors.items()}
         self.hold, self.mode = hold, mode or None
@@ -118,6 +119,7 @@ class GimbalTravel:
         if self.passes:
             texts.append("Passes are directions seen from the mount with its base level and facing north.")
         display.statement("assumptions", texts)
+        self.regions.tell()
 
     def show_chain(self) -> None:
         """The axes, their limits, and what they reach."""

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.words import axis_words, degrees_text, number_text
 from trunnion.envelope.margins import entry_margin_table, lock_margin
-from trunnion.envelope.regions import Mounted, Region
+from trunnion.envelope.regions import Mounted
 from trunnion.envelope.results import AngleRange
 from trunnion.errors import HardwareError
 from trunnion.figures import drawings
@@ -25,6 +25,7 @@ from trunnion.hardware.ranking import RankedMount, rank_mounts, rank_right_angle
 from trunnion.hardware.right_angles import right_angle_rotations
 from trunnion.sheet import display, mount_bench, mount_checks, mount_tilts, mount_tolerance, parameters, region_checks
 from trunnion.sheet.describe import angles_text, mount_rows, region_rows, words
+from trunnion.sheet.regions import Regions
 from trunnion.sheet.rounding import floor_text
 
 Array = NDArray[np.float64]
@@ -45,7 +46,7 @@ class MountCheck:
         self._field = dict(bench_field or {})
         self.drawing: Mount | None = parameters.mount(drawing) if drawing else None
         self.mount: Mount = parameters.mount(mount)
-        self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
+        self.regions = Regions(envelopes)
 
     @cached_property
     def matrix_check(self) -> MatrixCheck:
@@ -85,6 +86,7 @@ class MountCheck:
         if self.mount.accelerometer is not None:
             texts.append(f"At rest the accelerometer reports {self.mount.accelerometer.value}.")
         display.statement("assumptions", texts)
+        self.regions.tell()
 
     def show_properness(self) -> None:
         """The matrix, its orthonormality error, determinant and distance from the nearest rotation."""

@@ -9,11 +9,12 @@ from typing import Any
 import numpy as np
 
 from trunnion.attitude.conventions import Convention
-from trunnion.envelope.regions import Region, Union
+from trunnion.envelope.regions import Union
 from trunnion.envelope.switching import SwitchedSet, rank_switched, switching_rule
 from trunnion.errors import RegionError
 from trunnion.sheet import display, independent, parameters
 from trunnion.sheet.describe import convention_rows, region_rows
+from trunnion.sheet.regions import Regions
 from trunnion.sheet.rounding import ceiling_text, floor_text
 from trunnion.units import parse_quantity
 
@@ -38,7 +39,7 @@ class SwitchedConventions:
         self.conventions: dict[str, Convention] = {
             name: parameters.convention(plain) for name, plain in conventions.items()
         }
-        self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
+        self.regions = Regions(envelopes)
         self.whole = Union(dict(self.regions))
         self.stated = {"switch threshold": threshold, "max body rate": max_body_rate, "attitude error": attitude_error}
         self.threshold = parse_quantity(threshold, kind="angle").value
@@ -65,6 +66,7 @@ class SwitchedConventions:
             "The margins of all conventions of a set are worked out on board all the time, from one attitude estimate "
             "whose error is within the stated one.",
         )
+        self.regions.tell()
 
     def show_sets(self) -> None:
         """The guaranteed margin of every set: the least over the regions of the best margin at each attitude."""

@@ -13,12 +13,13 @@ from trunnion.attitude.conventions import Convention
 from trunnion.attitude.words import axis_words, degrees_text
 from trunnion.envelope.both_sides import BothSides, best_zero_both_sides
 from trunnion.envelope.margins import lock_margin
-from trunnion.envelope.regions import Region, Union
+from trunnion.envelope.regions import Union
 from trunnion.envelope.zero import Side, ZeroChoice, best_right_angle_zero, best_zero
 from trunnion.errors import CalculationError
 from trunnion.sheet import display, parameters, region_checks
 from trunnion.sheet.describe import convention_rows, region_rows
 from trunnion.sheet.maps import region_samples
+from trunnion.sheet.regions import Regions
 from trunnion.sheet.rounding import ceiling_text, floor_text
 
 Array = NDArray[np.float64]
@@ -34,7 +35,7 @@ class ZeroAttitude:
     ) -> None:
         self._plain = {"convention": dict(convention), "envelopes": dict(envelopes)}
         self.convention: Convention = parameters.convention(convention)
-        self.regions: dict[str, Region] = {name: parameters.region(plain) for name, plain in envelopes.items()}
+        self.regions = Regions(envelopes)
         self.whole = Union(dict(self.regions))
         self._wants_both = _yes(both_sides, "both sides")
 
@@ -66,6 +67,7 @@ class ZeroAttitude:
             "assumptions",
             "Sequence, senses and the constant on the other side stay as they are; one constant is chosen at a time.",
         )
+        self.regions.tell()
 
     def show_present(self) -> None:
         """The margin with today's zero, recorded."""
