@@ -28,5 +28,5 @@ def test_accepted_damage_and_gaps_are_told_with_counts(tmp_path: Path, monkeypat
     sweep.show_assumptions()
     statement, finding = (json.dumps(item.bundle(), ensure_ascii=False) for item in shown)
     assert "flown is damaged, and the workbook accepts it: row 3: " in statement
-    assert "against input flown" in finding
+    assert "against flown" in finding
     assert "gap" in finding

@@ -11,7 +11,6 @@ the set.
 from __future__ import annotations
 
 import heapq
-import time
 from dataclasses import dataclass, replace
 from itertools import count as counting
 
@@ -45,18 +44,25 @@ class BothSides:
 def best_zero_both_sides(
     region: Region, convention: Convention, *, gap: float = np.radians(0.1), seconds: float = 10.0
 ) -> BothSides:
-    """Bracket the best least margin over constants on both sides, to `gap` or until time runs out."""
-    search = _Search(region, convention, gap, time.monotonic() + seconds)
+    """Bracket the best least margin over constants on both sides, to `gap` or until the work of nominal `seconds` is done.
+
+    Cells are counted, never the clock, so that the same input gives the same bracket on every machine.
+    """
+    search = _Search(region, convention, gap, int(seconds * CELLS_A_SECOND))
     search.alternate(0.3 * seconds)
     search.run()
     return search.result()
 
 
+CELLS_A_SECOND = 700
+"""Cells counted as one second of work; an idle core of today does about as many."""
+
+
 class _Search:
     """Attitudes collected, the best pair so far, and the cells of v still open (largest bound first)."""
 
-    def __init__(self, region: Region, convention: Convention, gap: float, deadline: float) -> None:
-        self.region, self.convention, self.gap, self.deadline = region, convention, gap, deadline
+    def __init__(self, region: Region, convention: Convention, gap: float, most_cells: int) -> None:
+        self.region, self.convention, self.gap, self.most_cells = region, convention, gap, most_cells
         self.attitudes = np.zeros((0, 3, 3))
         self.best, self.pair = -1.0, convention.lock_axes
         self.cells = 0
@@ -65,12 +71,9 @@ class _Search:
 
     def alternate(self, seconds: float) -> None:
         """Improve one side after the other from several starts: a good pair, and attitudes that matter."""
-        stop = time.monotonic() + seconds
         for sequence_axis in range(3):
             convention = replace(self.convention, right=np.roll(np.eye(3), sequence_axis, axis=0))
             for side in (Side.REFERENCE, Side.BODY, Side.REFERENCE, Side.BODY):
-                if time.monotonic() > stop:
-                    return
                 convention = best_zero(self.region, convention, side, seconds=0.06 * seconds).convention
                 self.try_pair(*convention.lock_axes)
 
@@ -88,7 +91,7 @@ class _Search:
         """Split the most promising cell of v until none can hold something better by more than the gap."""
         for corners in _half_sphere():
             self.push(corners)
-        while self.heap and -self.heap[0][0] > self.best + self.gap and time.monotonic() < self.deadline:
+        while self.heap and -self.heap[0][0] > self.best + self.gap and self.cells < self.most_cells:
             _, _, corners = heapq.heappop(self.heap)
             for part in _quarters(corners):
                 self.push(part)

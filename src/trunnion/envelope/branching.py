@@ -6,7 +6,6 @@ of the cell (inf when no point of the cell is known to be allowed), and along wh
 
 from __future__ import annotations
 
-import time
 from collections.abc import Callable
 from dataclasses import dataclass
 
@@ -47,6 +46,10 @@ class Bracket:
     finished: bool
 
 
+CELLS_A_SECOND = 100_000
+"""Cells counted as one second of work; an idle core of today does somewhat more."""
+
+
 def least_value(
     bound: Callable[[Cells], Bounds],
     low: Array,
@@ -59,13 +62,14 @@ def least_value(
 ) -> Bracket:
     """Bracket the least value over low <= t <= high (k,), or over several boxes (k, n), to `tolerance`.
 
-    Stops early at `most_cells` evaluated cells or after `seconds`; the bracket is then wider but no less true.
+    Stops early at `most_cells` evaluated cells or at the work of nominal `seconds` (see CELLS_A_SECOND), never by the
+    clock: the same input gives the same bracket on every machine. It is then wider but no less true.
     """
     search = _Search(bound, tolerance)
     low, high = (np.asarray(end, dtype=float).reshape(len(low), -1) for end in (low, high))
     search.add(Cells(0.5 * (low + high), 0.5 * (high - low)))
-    deadline = time.monotonic() + seconds
-    while search.open_cells() and search.count < most_cells and time.monotonic() < deadline:
+    budget = most_cells if np.isinf(seconds) else min(most_cells, int(seconds * CELLS_A_SECOND))
+    while search.open_cells() and search.count < budget:
         search.add(search.halves(batch))
     return search.bracket()
 

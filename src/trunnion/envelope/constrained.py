@@ -9,7 +9,6 @@ the quantity against the active constraints, so cells at the edge of the allowed
 
 from __future__ import annotations
 
-import time
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import lru_cache
@@ -114,16 +113,14 @@ def _mirrored(extreme: Extreme, total: float) -> Extreme:
 
 def _bracket(region: Constrained, u: Array, v: Array, what: str, tolerance: float, seconds: float) -> Extreme:
     """Least angle to u ("angle"), or a right angle less the largest line angle ("square")."""
-    start = time.monotonic()
     chain = region.chain()
     problem = _Problem(chain, u, v, region.cones, what)
     probe = least_value(problem.bound, chain.low, chain.high, tolerance=0.1, seconds=0.3 * seconds)
     if probe.finished and not np.isfinite(probe.hi):
         raise RegionError("no attitude keeps all the constraints at once", remedy="look for a contradiction")
     known = problem.polished_start(probe)
-    left = max(seconds - (time.monotonic() - start), 0.1)
     found = least_value(
-        problem.bound_below(known), chain.low, chain.high, tolerance=tolerance, seconds=left, batch=1024
+        problem.bound_below(known), chain.low, chain.high, tolerance=tolerance, seconds=0.7 * seconds, batch=1024
     )
     best = _polished(problem, found, known)
     if best is None:

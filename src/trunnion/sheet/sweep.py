@@ -106,7 +106,9 @@ class EnvelopeSweep:
                 left = f"{len(found) - _MOST_FINDINGS:,} further findings of the same kinds"
                 display.finding(f"region:{name}:more", left, against=name)
         for name, tables in self._tables.items():
-            for number, trouble in enumerate((t for table in tables for t in table.findings), start=1):
+            for number, trouble in enumerate(
+                (t for table in tables for t in table.findings if t.kind != "gap"), start=1
+            ):
                 display.finding(f"{name}-{number}", f"{name}: {trouble}.", against=f"input {name}")
 
     def show_margins(self) -> None:
