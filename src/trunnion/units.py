@@ -275,9 +275,7 @@ def format_angle(value: float, *, digits: int = 2, toward: Toward = Toward.NEARE
     return f"{format_number(number, digits=digits, toward=toward, slack=slack)} {unit}"
 
 
-def format_quantity(
-    value: float, kind: str, unit: str, *, digits: int = 3, toward: Toward = Toward.NEAREST
-) -> str:
+def format_quantity(value: float, kind: str, unit: str, *, digits: int = 3, toward: Toward = Toward.NEAREST) -> str:
     """A value in the inside unit of `kind` printed in `unit`, rounded as said."""
     if kind == "angle":
         return format_angle(value, digits=digits, toward=toward, unit=unit)

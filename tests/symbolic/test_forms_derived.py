@@ -34,7 +34,9 @@ def test_each_formula_is_proven(kind: str) -> None:
 
 
 def test_a_wrong_formula_is_loud(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr(forms, "_tangent_steps", lambda: forms._triad_step((forms.S1, forms.S2, forms.C1), forms.S3**0, []))
+    monkeypatch.setattr(
+        forms, "_tangent_steps", lambda: forms._triad_step((forms.S1, forms.S2, forms.C1), forms.S3**0, [])
+    )
     with pytest.raises(ProofError, match="does not reduce to zero"):
         form_steps(StatedForm("pendulums", LOCAL, BODY, KINDS["pendulums"]))
 

@@ -44,7 +44,7 @@ class BothSides:
 def best_zero_both_sides(
     region: Region, convention: Convention, *, gap: float = np.radians(0.1), seconds: float = 10.0
 ) -> BothSides:
-    """Bracket the best least margin over constants on both sides, to `gap` or until the work of nominal `seconds` is done.
+    """Bracket the best least margin over constants on both sides, to `gap` or to the work of nominal `seconds`.
 
     Cells are counted, never the clock, so that the same input gives the same bracket on every machine.
     """

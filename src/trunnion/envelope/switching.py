@@ -325,8 +325,10 @@ def rank_switched(
     tolerance: float = np.radians(0.05),
     seconds: float = 20.0,
 ) -> list[SwitchedSet]:
-    """All sets of `size` of the conventions, best margin first; sets no farther apart than the brackets are wide stay in
-    the order in which they are stated, whatever time the search had."""
+    """All sets of `size` of the conventions, best margin first.
+
+    Sets no farther apart than the brackets are wide stay in the order in which they are stated.
+    """
     sets = list(combinations(conventions, size))
     if not sets:
         raise RegionError(f"{len(conventions)} conventions hold no set of {size}", remedy="name more conventions")

@@ -75,9 +75,9 @@ def best_zero(
 ) -> ZeroChoice:
     """The best constant on one side, any rotation allowed; exact for listed attitudes, else to a stated gap.
 
-    Stops after the work of nominal `seconds` in any case (rounds are counted, never the clock, so that the same input
-    gives the same answer on every machine). An upper bound that creeps towards zero means that the region leads the axis
-    along every direction: then no constant helps, and the upper bound says how little any could.
+    Stops after the work of nominal `seconds` in any case: rounds are counted, never the clock, so that the same
+    input gives the same answer on every machine. An upper bound that creeps towards zero means that the region leads
+    the axis along every direction: then no constant helps, and the upper bound says how little any could.
     """
     problem = _Problem(region, convention, side)
     if isinstance(region, Poses):
