@@ -182,3 +182,84 @@ def test_a_direction_mixed_up_on_a_nearly_aligned_mount_is_still_seen() -> None:
     rows = all_rows(reference)
     judgement = judge(reference, AnswerKind.MATRIX, rows.matrices.transpose(0, 2, 1))
     assert np.degrees(judgement.misses.max()) > 10.0
+
+
+def _turned(letters: str, angles: np.ndarray) -> np.ndarray:
+    return Rotation.from_euler(letters, angles).as_matrix()
+
+
+_NED_TO_ENU = np.array([[0.0, 1.0, 0.0], [1.0, 0.0, 0.0], [0.0, 0.0, -1.0]])
+_FORWARD_LEFT_UP = np.diag([1.0, -1.0, -1.0])
+_HALF_TURN = np.diag([-1.0, -1.0, 1.0])
+
+# Further public reports: what they are, our sequence, and the attitudes their reading makes of our angles (N, 3) rad.
+FURTHER_REPORTS = [
+    # ArduPilot/ardupilot_wiki 3753: "pitch 180 then yaw 90" about fixed or own axes, half a turn apart
+    ("label of two turns", Sequence.YZX, lambda a: _turned("yzx", a)),
+    # PX4/PX4-Autopilot 10514: ROLL_270_YAW_180 carried out on the other kind of axes
+    ("label roll yaw", Sequence.XZY, lambda a: _turned("xzy", a)),
+    # IlyaKuprov/Spinach PR 395: (82, 180, 19) degrees read as radians, 71.655 deg between the x axes
+    ("degrees in ZYZ", Sequence.ZYZ, lambda a: _turned("ZYZ", np.degrees(a))),
+    # TauLabs/TauLabs PR 632: the three angles negated for the inverse
+    ("negated for the inverse", Sequence.ZYX, lambda a: _turned("ZYX", -a)),
+    # NASASpaceFlight forum topic 17437: pitch, yaw, roll (40, -10, 60) negated in the same sequence, 40.95 deg off
+    ("negated in the same sequence", Sequence.YZX, lambda a: _turned("YZX", -a).transpose(0, 2, 1)),
+    # mavlink/mavros 216 and successors: heading zero turned by half a turn (heading -> -heading - 90)
+    ("heading zero half a turn off", Sequence.ZYX, lambda a: _HALF_TURN @ _turned("ZYX", a)),
+    # DISCOWER/px4-mpc PR 33: only the body frame relabelled
+    ("body frame only", Sequence.ZYX, lambda a: _turned("ZYX", a) @ _FORWARD_LEFT_UP),
+    # SBG-Systems drivers: world components exchanged without the body turn
+    ("world frame only", Sequence.ZYX, lambda a: _NED_TO_ENU @ _turned("ZYX", a)),
+    # moveit/moveit_calibration 132, RigidBodyDynamics.jl 429, sdformat PR 698: roll-pitch-yaw about moving axes
+    ("moving for fixed axes", Sequence.XYZ, lambda a: _turned("xyz", a)),
+    # OpenSimulationInterface PR 158: the label ZYX read as the order of the product of fixed turns
+    ("label read as product order", Sequence.ZYX, lambda a: _turned("zyx", a)),
+    # lasp/xmera 358, ArduPilot 17662: active for passive, twice the rotation angle off
+    ("active for passive", Sequence.ZXZ, lambda a: _turned("ZXZ", a).transpose(0, 2, 1)),
+    # leftfield-geospatial/orthority 34: 90 deg added to pitch and roll kept
+    ("pitch offset only", Sequence.ZYX, lambda a: _turned("ZYX", a + np.array([0.0, np.pi / 2, 0.0]))),
+    # survey packages, vessel frame pages: pitch and roll of the opposite sign
+    ("signs of pitch and roll", Sequence.ZYX, lambda a: _turned("ZYX", a * np.array([1, -1, -1]))),
+    # carla-simulator/carla 6780: yaw left-handed
+    ("yaw left-handed", Sequence.ZYX, lambda a: _turned("ZYX", a * np.array([-1, 1, 1]))),
+    # adafruit/Adafruit_BNO055 PR 123: x and z angles exchanged
+    ("x and z exchanged", Sequence.XYZ, lambda a: _turned("XYZ", a[:, ::-1])),
+]
+
+
+@pytest.mark.parametrize(("report", "sequence", "theirs"), FURTHER_REPORTS, ids=[row[0] for row in FURTHER_REPORTS])
+def test_every_reported_misreading_fails_a_regular_row(report, sequence, theirs) -> None:
+    reference = reference_set(convention(sequence))
+    rows = all_rows(reference)
+    misses = judge(reference, AnswerKind.MATRIX, theirs(rows.angles)).misses
+    assert misses[: len(reference.regular.angles)].max() > CAUGHT, report
+
+
+# Further reports of the pole: what their branch returns for a triple (a, pole, c).
+FURTHER_POLES = [
+    # ros/geometry 47: yaw and roll with the wrong sign at the pole
+    ("ros geometry 47", Sequence.ZYX, 1, lambda t: np.array([-(t[0] - t[2]), t[1], 0.0])),
+    # ros/urdfdom_headers 18: (0, -pi/2, 0) read half a turn off
+    ("urdfdom 18", Sequence.ZYX, -1, lambda t: np.array([t[0], t[1], t[2] + np.pi])),
+    # wpilibsuite/allwpilib PR 5437: yaw from an entry that is zero at the pole: 90 deg for 30 deg
+    ("allwpilib 5437", Sequence.ZYX, 1, lambda t: np.array([np.pi / 2, t[1], 0.0])),
+    # ros2/geometry2 796: roll 45 deg printed where it is 0
+    ("geometry2 796", Sequence.ZYX, -1, lambda t: np.array([t[0], t[1], t[2] + np.pi / 4])),
+]
+
+
+@pytest.mark.parametrize(("report", "sequence", "pole", "wrong"), FURTHER_POLES, ids=[row[0] for row in FURTHER_POLES])
+def test_every_reported_wrong_branch_fails_a_row_at_lock(report, sequence, pole, wrong) -> None:
+    judgement, rows = spoiled_at_pole(sequence, pole, wrong)
+    assert all(judgement.misses[row] > CAUGHT for row in rows), report
+
+
+def test_an_inverse_star_tracker_quaternion_is_named() -> None:
+    # nasa/nos3 351, 431: a mount quaternion and its inverse were tried without agreement; they are 125.3436 deg apart.
+    q = np.array([-0.5510871, -0.4059919, -0.5108982, 0.5200544])
+    apart = (Rotation.from_quat(q) * Rotation.from_quat(q)).magnitude()
+    assert np.degrees(apart) == pytest.approx(125.3436, abs=1e-3)
+    reference = reference_set(convention(Sequence.YXZ))
+    conjugate = all_rows(reference).quaternions * np.array([1, -1, -1, -1])
+    judgement = judge(reference, AnswerKind.QUATERNION, conjugate)
+    assert any("conjugated" in words or "transposed" in words for words in judgement.explanations)
