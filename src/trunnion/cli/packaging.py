@@ -305,7 +305,8 @@ def _figure(computed: Computed) -> p.Evidence | None:
 
 def _cautions(computed: Computed) -> list[str]:
     cautions = []
-    own = sorted({entry.planned.template.name for entry in computed.done if entry.planned.template.local})
+    templates = [entry.planned.template for entry in computed.done if entry.planned.template.local]
+    own = sorted({f"{template.name} (SHA-256 {template.file_digest})" for template in templates})
     if own:
         cautions.append(f"Made with templates of the workbook's own: {', '.join(own)}.")
     missing = [file.path for file in {f.path: f for e in computed.done for f in e.planned.inputs.values()}.values()
