@@ -133,6 +133,11 @@ def test_ready_subsets_have_what_their_lists_say():
     assert "MATH" in TTFont(io.BytesIO((faces.FOLDER / "maths.woff").read_bytes()))
 
 
+def test_the_first_mathematics_font_draws_what_markup_leaves_out():
+    # MathML Core, "Radicals" (W3C; from memory): the root sign of <msqrt> is taken from the first available font, no text names it.
+    assert set("√()[]{}|‖") <= set((faces.FOLDER / "maths.txt").read_text("utf-8"))
+
+
 @pytest.mark.parametrize(
     ("text", "shown"),
     [

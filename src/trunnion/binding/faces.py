@@ -29,7 +29,7 @@ _PLAIN = frozenset(map(chr, range(32, 127))) | frozenset("°−±×·…′″�
 
 def _maths_characters() -> frozenset[str]:
     """Signs and letters of the formulas: all signs the reader knows, the alphabets calculations use."""
-    found: set[str] = set(map(chr, range(32, 127))) | set("−∗‖′″‴⁗ˆ˜˙¨¯ˇ˘´˚‾⏞⏟⟶⟵⃛̂̃→\u00a0\u2009")
+    found: set[str] = set(map(chr, range(32, 127))) | set("−∗√‖′″‴⁗ˆ˜˙¨¯ˇ˘´˚‾⏞⏟⟶⟵⃛̂̃→\u00a0\u2009")
     tables = (symbols.GREEK, symbols.CAPITALS, symbols.ORDINARY, symbols.BINARY, symbols.RELATION, symbols.INNER)
     for table in (*tables, symbols.BIG, symbols.DELIMITERS, symbols.NEGATED):
         found |= {char for value in table.values() for char in value}
