@@ -134,7 +134,7 @@ def test_ready_subsets_have_what_their_lists_say():
 
 
 def test_the_first_mathematics_font_draws_what_markup_leaves_out():
-    # MathML Core, "Radicals" (W3C; from memory): the root sign of <msqrt> is taken from the first available font, no text names it.
+    # MathML Core, "Radicals" (W3C; from memory): <msqrt> takes its sign from the first available font, unnamed in text.
     assert set("√()[]{}|‖") <= set((faces.FOLDER / "maths.txt").read_text("utf-8"))
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -82,7 +83,7 @@ def margin_histogram(
     axes.set_xlabel("lock margin, deg")
     axes.set_ylabel(f"share of {of}, %")
     _limit_line(axes, limit, vertical=True)
-    axes.legend(loc="best")
+    _legend(axes, loc="best")
     return to_svg(figure)
 
 
@@ -198,7 +199,7 @@ def margin_against_time(
     axes.set_xlabel("time, s")
     axes.set_ylabel("lock margin, deg")
     _limit_line(axes, limit, vertical=False)
-    axes.legend(loc="best", ncols=min(3, max(1, len(margins))))
+    _legend(axes, loc="best", ncols=min(3, max(1, len(margins))))
     return to_svg(figure)
 
 
@@ -227,7 +228,7 @@ def run_margins(runs: Sequence[str], margins: Mapping[str, Sequence[float]], *, 
     axes.set_ylim(0.0, 92.0)
     axes.set_ylabel("least lock margin, deg")
     _limit_line(axes, limit, vertical=False)
-    axes.legend(loc="best", ncols=min(3, max(1, len(margins))))
+    _legend(axes, loc="best", ncols=min(3, max(1, len(margins))))
     return to_svg(figure)
 
 
@@ -250,7 +251,7 @@ def gain_curves(middle: Floats, curves: Mapping[str, Floats], *, locks: Sequence
     axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
     axes.set_xlabel(f"{label(x_label)}, deg")
     axes.set_ylabel("amplification")
-    axes.legend(loc="upper center")
+    _legend(axes, loc="upper center")
     return to_svg(figure)
 
 
@@ -267,7 +268,7 @@ def error_laws(margins: Floats, pairs: Mapping[str, tuple[Floats, Floats]]) -> s
     axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:.0e}"))
     axes.set_xlabel("lock margin, deg")
     axes.set_ylabel("error, rad")
-    axes.legend(loc="upper right")
+    _legend(axes, loc="upper right")
     return to_svg(figure)
 
 
@@ -302,7 +303,7 @@ def varied_value(
         axes.plot(values, bound, label=f"limit {label(name)}", **LIMIT)
     axes.set_xlabel(label(x_label))
     axes.set_ylabel(label(y_label))
-    axes.legend(loc="best")
+    _legend(axes, loc="best")
     return to_svg(figure)
 
 
@@ -326,6 +327,14 @@ def budget_bars(terms: Mapping[str, float], *, total: float, limit: float | None
 
 
 def _limit_line(axes: Axes, limit: float | None, *, vertical: bool) -> None:
+    """The requirement dashed; an upright line is named at its head, for the bars it crosses have no legend."""
     if limit is None:
         return
     (axes.axvline if vertical else axes.axhline)(limit, label="limit", **LIMIT)
+    if vertical:
+        axes.annotate("limit", (limit, 1.0), xycoords=("data", "axes fraction"), va="bottom", ha="center")
+
+
+def _legend(axes: Axes, **options: Any) -> None:
+    """A legend on a white ground, so that no grid line or curve strikes through its words."""
+    axes.legend(frameon=True, facecolor="white", framealpha=0.9, edgecolor="none", **options)
