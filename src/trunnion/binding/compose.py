@@ -401,7 +401,7 @@ class _Composer:
         rows = []
         for found in self.package.inputs:
             name: list[b.Inline] = [*b.line(found.name), b.Break(), b.Marked("hash", b.line(found.sha256))]
-            how = [*b.line(found.summary or "–"), b.Break()]
+            how: list[b.Inline] = [*b.line(found.summary), b.Break()] if found.summary else []
             how.append(b.Marked("quiet", b.line(w("held" if found.held else "not held"))))
             size = f"{found.size:,}".replace(",", "\u202f")
             rows.append((tuple(name), b.line(size), tuple(how), b.line(found.source)))
@@ -457,7 +457,7 @@ class _Composer:
         language = self.words.language
         rows = tuple((b.line(what), b.line(where)) for what, where in usual_contents(language))
         table = b.Table(self.heads("Usual content", "Stands in"), rows, "ll", widths=(4, 6))
-        title = self.words("Where the usual contents of a controlled calculation stand")
+        title = self.words("Where the usual contents of a calculation stand")
         note = b.Paragraph(b.line(CONTENTS_NOTE[language]), "note")
         return b.Part("map", title, (table, note), number=self.lettered(), flows=True)
 

@@ -16,6 +16,8 @@ def result_value(item: Mapping[str, Any]) -> str:
     lo, hi, unit = item.get("lo"), item.get("hi"), str(item.get("unit") or "")
     if lo is None and hi is None:
         return quantity_text(item.get("attained", ""), unit)
+    if item.get("basis") == "exact" and unit in ("", "1") and lo is not None and lo == hi and float(lo).is_integer():
+        return number_text(lo)  # a count
     return interval_text(lo, hi, unit)
 
 

@@ -77,9 +77,7 @@ _GERMAN = {
     "Program code": "Programmcode",
     "Environment and versions": "Umgebung und Versionen",
     "Glossary and notation": "Begriffe und Zeichen",
-    "Where the usual contents of a controlled calculation stand": (
-        "Wo der übliche Inhalt einer geprüften Berechnung steht"
-    ),
+    "Where the usual contents of a calculation stand": ("Wo der übliche Inhalt einer geprüften Berechnung steht"),
     "Appendix": "Anhang",
     # table heads
     "Requirement": "Anforderung",

@@ -150,7 +150,7 @@ class ConventionDerivation:
             "tbl:worked",
             ["quantity", "derived", "scipy", "difference"],
             [
-                [name, number_text(ours, 9), number_text(theirs, 9), f"{difference:.1e}"]
+                [name, number_text(ours, 9), number_text(theirs, 9), f"{difference:.1e}" if difference else "0"]
                 for name, ours, theirs, difference in confirmation(self.derivation)
             ],
             caption="A worked attitude: matrix, quaternion (scalar first), and the angles read back from the matrix",
@@ -161,19 +161,20 @@ class ConventionDerivation:
         """Every identity shown above with the way it was proven and the largest difference to fifty digits."""
         display.table(
             "tbl:proofs",
-            ["identity", "exact", "points", "largest difference"],
+            ["identity", "exact", "points", "digits", "largest difference"],
             [
                 [
                     step.title,
                     step.proof.exact,
                     str(step.proof.points),
-                    f"{step.proof.largest} ({step.proof.digits} digits)",
+                    str(step.proof.digits),
+                    "0" if step.proof.largest == "0.0" else str(step.proof.largest),
                 ]
                 for step in self.derivation.steps
                 if step.proof is not None
             ],
             caption="How each identity of this derivation was proven",
-            align="llrl",
+            align="llrrr",
         )
 
     def show_checks(self) -> None:

@@ -104,8 +104,8 @@ class MountCheck:
         display.statement(
             "properness",
             [
-                f"Largest deviation of the columns from orthonormality {measure.orthonormality:.1e}; determinant "
-                f"{measure.determinant:+.6f}; distance from the nearest rotation {measure.distance:.1e}. "
+                f"Largest deviation of the columns from orthonormality {_tiny(measure.orthonormality)}; determinant "
+                f"{measure.determinant:+.6f}; distance from the nearest rotation {_tiny(measure.distance)}. "
                 + (
                     "It is a proper rotation."
                     if measure.proper
@@ -359,3 +359,8 @@ class MountCheck:
         display.record(
             quantity=quantity, of=self.mount.name, over=None, lo=value, hi=value, unit=unit, basis=basis, attained=value
         )
+
+
+def _tiny(value: float) -> str:
+    """A number next to zero in powers of ten, or plain 0."""
+    return f"{value:.1e}".replace("-", "−") if value else "0"

@@ -50,7 +50,7 @@ def show_tilts(mount: Mount, regions: Mapping[str, Region]) -> None:
     """Largest tilts over every region, and what taking the pair for pitch and roll would cost, recorded (sampled)."""
     pair = pair_of(mount)
     if pair is None or not regions:
-        display.statement("tilts", "The sensor reports no tilt pair, or no region is stated.")
+        display.statement("tilts", "No pair of tilts is worked out: the sensor reports none, or no region is stated.")
         return
     rows = []
     for over, region in regions.items():

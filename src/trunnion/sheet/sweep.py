@@ -344,16 +344,19 @@ class EnvelopeSweep:
             )
 
     def show_results(self) -> None:
-        """The results in one table: interval, basis, witness."""
+        """The results in one table: interval, basis, and what governs where a region has parts."""
+        rows = [
+            ["lock margin", name, over, _least_text(found.least), found.least.basis.value, _governed(found.least)]
+            for (name, over), found in self.margins.items()
+        ]
+        heads = ["quantity", "of", "over", "value", "basis", "governed by"]
+        shown = len(heads) if any(row[-1] for row in rows) else len(heads) - 1
         display.table(
             "tbl:results",
-            ["quantity", "of", "over", "value", "basis", "governed by"],
-            [
-                ["lock margin", name, over, _least_text(found.least), found.least.basis.value, _governed(found.least)]
-                for (name, over), found in self.margins.items()
-            ],
+            heads[:shown],
+            [row[:shown] for row in rows],
             caption="Results of this calculation",
-            align="lllrll",
+            align="lllrll"[:shown],
         )
 
     @cached_property
@@ -396,8 +399,9 @@ class EnvelopeSweep:
         if witness is None:
             return [name, over, "", "", "bound only, no attitude is known to reach it"]
         when = "" if witness.time is None else f", t = {witness.time:.3f} s"
+        place = witness.where.replace(" -", " −")
         angles = angles_text(self.conventions[name], witness.matrix)
-        return [name, over, f"{np.degrees(witness.value):.4f}°", angles, f"{witness.where}{when}"]
+        return [name, over, f"{np.degrees(witness.value):.4f}°", angles, f"{place}{when}"]
 
     def _demand_row(self, name: str, over: str) -> list[str]:
         plain = self._plain["envelopes"][over]
@@ -413,7 +417,7 @@ class EnvelopeSweep:
         self._record_demand("largest angle rate", name, over, demand.outer_rate, "deg/s", demand.basis.value)
         row += [f"{ceiling_text(float(np.degrees(demand.outer_rate[1])), 1)} deg/s", faster or "not stated"]
         if faster is None:
-            return [*row, ""]
+            return [*row, "not worked out"]
         found = demand.outer_acceleration
         self._record_demand("largest angle acceleration", name, over, found, "deg/s^2", demand.basis.value)
         return [*row, f"{ceiling_text(float(np.degrees(found[1])), 1)} deg/s²"]
