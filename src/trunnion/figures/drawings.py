@@ -7,6 +7,7 @@ of the reference frame, so that a frame whose z axis points down is drawn with z
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import Any
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -34,6 +35,8 @@ Floats = NDArray[np.float64]
 # Viewer's azimuth from the reference frame's first horizontal axis and elevation above the horizon.
 _VIEW_AZIMUTH = np.radians(-128.0)
 _VIEW_ELEVATION = np.radians(24.0)
+# A white ground under a label, so that a line it crosses does not strike through it.
+_GROUND: dict[str, Any] = {"facecolor": "white", "edgecolor": "none", "alpha": 0.85, "pad": 0.8}
 
 
 def view_matrix(up: Floats) -> Floats:
@@ -75,7 +78,7 @@ def turns_drawing(
         if number > 1:
             _triad(axes, view, stages[number - 2], ["", "", ""], faint=True)
         _outline(axes, view @ stage)
-        _triad(axes, view, stage, axis_words)
+        _triad(axes, view, stage, axis_words, beside=True)
         _frame_panel(axes, caption)
     return to_svg(figure)
 
@@ -87,15 +90,21 @@ def mount_drawing(R_bs: Floats, host_words: Sequence[str], sensor_words: Sequenc
     R_bs (3, 3): columns are the sensor axes in host components.
     """
     view = view_matrix(up)
-    figure = new_figure(width_mm=130, height_mm=64)
-    axes = bare_axes(figure, 1, 2, 1)
-    _outline(axes, view)
-    _triad(axes, view, np.eye(3), host_words)
-    _frame_panel(axes, "host axes")
-    axes = bare_axes(figure, 1, 2, 2)
-    _outline(axes, view)
-    _triad(axes, view, R_bs, sensor_words, colour=COLOURS[1])
-    _frame_panel(axes, "sensor axes on the host")
+    heights = np.concatenate([[0.0], view[1], view[1] @ R_bs])
+    bottom, top = float(heights.min()) - 0.3, float(heights.max()) + 0.3
+    figure = new_figure(width_mm=130, height_mm=8 + 24 * (top - bottom))
+    for number, (triad, words, colour, caption) in enumerate(
+        (
+            (np.eye(3), host_words, None, "host axes"),
+            (R_bs, sensor_words, COLOURS[1], "sensor axes on the host"),
+        ),
+        start=1,
+    ):
+        axes = bare_axes(figure, 1, 2, number)
+        _outline(axes, view)
+        _triad(axes, view, triad, words, colour=colour, beside=True)
+        _frame_panel(axes, caption)
+        axes.set_ylim(bottom, top)
     return to_svg(figure)
 
 
@@ -111,13 +120,14 @@ def rings_drawing(
     figure = new_figure(width_mm=110, height_mm=84)
     axes = bare_axes(figure)
     count = len(axes_directions)
+    tips: list[Floats] = []
     for index, (axis, name) in enumerate(zip(axes_directions, names, strict=True)):
         radius = 1.0 - 0.2 * index
         following = axes_directions[index + 1] if index + 1 < count else axes_directions[index - 1]
         _ring(axes, view, axis, following, radius, index)
         marked = parallel is not None and index in parallel
-        tip = view @ (axis * (radius + 0.22))
-        tail = view @ (-axis * (radius + 0.22))
+        tip = view @ (axis * 1.22)
+        tail = view @ (-axis * 1.22)
         axes.plot(
             [tail[0], tip[0]],
             [tail[1], tip[1]],
@@ -126,13 +136,15 @@ def rings_drawing(
             linestyle=DASHES[index % len(DASHES)],
         )
         text = f"{index + 1} {label(name)}" + (" (parallel)" if marked else "")
-        shift = 0.12 * index if marked else 0.0
+        shift = 0.15 * sum(float(np.hypot(*(tip - other)[:2])) < 0.2 for other in tips)
+        tips.append(tip)
         axes.annotate(
             text,
             (tip[0], tip[1] + shift),
             (4, 3),
             textcoords="offset points",
             color=COLOURS[index % len(COLOURS)],
+            bbox=_GROUND,
         )
     _frame_panel(axes, "")
     return to_svg(figure)
@@ -163,7 +175,7 @@ def sphere_drawing(
         point = view @ (sign * lock)
         if point[2] >= 0:
             axes.plot(point[0], point[1], **LOCK)
-            axes.annotate(label(lock_word), (point[0], point[1]), (6, 6), textcoords="offset points")
+            axes.annotate(label(lock_word), (point[0], point[1]), (6, 6), textcoords="offset points", bbox=_GROUND)
     for index, (name, directions) in enumerate(tracks):
         _track(axes, view, directions, name, index)
     if worst is not None:
@@ -233,8 +245,13 @@ def _triad(
     *,
     faint: bool = False,
     colour: str | None = None,
+    beside: bool = False,
 ) -> None:
-    """Three arrows, the columns of `triad`; each is named and differs in dash from the others."""
+    """Three arrows, the columns of `triad`; each is named and differs in dash from the others.
+
+    beside: names keep clear of the arrows, for panels in which the axes come to lie along each other.
+    """
+    tips = (view @ triad)[:2].T
     for index in range(3):
         tip = view @ triad[:, index]
         tint = RULE if faint else (colour or COLOURS[index])
@@ -254,8 +271,30 @@ def _triad(
         )
         if words[index]:
             length = max(float(np.hypot(tip[0], tip[1])), 1e-9)
-            away = tip[:2] * (1.0 + 0.16 / max(length, 0.35))
-            axes.text(away[0], away[1], label(words[index]), color=tint, ha="center", va="center", fontsize=7.5)
+            away, across, along = tip[:2] * (1.0 + 0.16 / max(length, 0.35)), "center", "center"
+            if beside:
+                away, across, along = _name_place(tips, index)
+            axes.text(away[0], away[1], label(words[index]), color=tint, ha=across, va=along, fontsize=7.5)
+
+
+def _name_place(tips: Floats, index: int) -> tuple[Floats, str, str]:
+    """Where the name of one of three arrows stands, and which edge of it: past the tip, or at its side.
+
+    A name past its tip is pushed off the tip by its own width or height. Where a longer arrow runs on within 45 deg
+    of this one, the name stands at the side that is turned away from it.
+    """
+    lengths = np.maximum(np.hypot(tips[:, 0], tips[:, 1]), 1e-9)
+    ways = tips / lengths[:, None]
+    way = ways[index]
+    close = (ways @ way > np.cos(np.radians(45.0))) & (lengths > lengths[index])
+    if close.any():
+        other = ways[int(np.argmax(close))]
+        side = 1.0 if way[0] * other[1] - way[1] * other[0] < 0 else -1.0
+        way = side * np.array([-way[1], way[0]])
+    place = tips[index] + 0.09 * way
+    across = "center" if abs(way[0]) < 0.35 else ("left" if way[0] > 0 else "right")
+    along = "center" if abs(way[0]) >= 0.35 else ("bottom" if way[1] > 0 else "top")
+    return place, across, along
 
 
 def _outline(axes: Axes, view: Floats) -> None:
