@@ -182,7 +182,7 @@ def page(workbook: Any, table: BenchTable) -> str:
         + "</tr></table>",
         f"<p>{_e(_axes(mount))} {_e(_reports(mount))}</p>",
         "<p>Put the vehicle so, let it come to rest, and write each reading into its box. A reading passes within the "
-        "tolerance printed above the box. Work through every row: level poses alone prove nothing.</p>",
+        "tolerance printed in the box. Work through every row: level poses alone prove nothing.</p>",
         *[_instrument(table, name, values) for name, values in table.expected.items()],
         _unseen(table),
         '<table class="title"><tr>'

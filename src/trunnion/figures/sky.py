@@ -52,7 +52,11 @@ def sky_plot(
     axes.set_theta_direction(-1)
     axes.set_rlim(0.0, 90.0)
     axes.set_rgrids(
-        [15, 30, 45, 60, 75, 90], ["75°", "60°", "45°", "30°", "15°", "0°"], angle=22, fontsize=6.5, color=QUIET
+        [15, 30, 45, 60, 75, 90],
+        ["75°", "60°", "45°", "30°", "15°", "0°"],
+        angle=_free_bearing(tracks, sectors or {}),
+        fontsize=6.5,
+        color=QUIET,
     )
     axes.set_thetagrids(range(0, 360, 30), [_COMPASS.get(angle, f"{angle}°") for angle in range(0, 360, 30)])
     if out_of_travel is not None and bool(out_of_travel[2].any()):
@@ -102,6 +106,22 @@ def sky_plot(
         )
     axes.legend(loc="upper center", bbox_to_anchor=(0.5, -0.06), ncols=3)
     return to_svg(figure)
+
+
+def _free_bearing(tracks: Mapping[str, tuple[Floats, Floats]], sectors: Mapping[str, Floats]) -> float:
+    """Bearing (deg), half way between two spokes, along which the elevations stand farthest from what is drawn."""
+    drawn = [(azimuth, elevation) for azimuth, elevation in tracks.values()]
+    drawn += [(outline[:, 0], outline[:, 1]) for outline in map(_dense, sectors.values())]
+    if not drawn:
+        return 15.0
+    lines = [np.radians(azimuth) for azimuth, _ in drawn]
+    points = np.concatenate(
+        [(90.0 - e) * np.exp(1j * a) for a, (_, e) in zip(lines, drawn, strict=True)]
+    )  # the plane of the plot as complex numbers, north along the real axis
+    candidates = np.arange(15.0, 360.0, 30.0)
+    labels = np.array([30.0, 45.0, 60.0, 75.0, 90.0]) * np.exp(1j * np.radians(candidates))[:, None]
+    room = np.abs(labels[:, :, None] - points).min(axis=(1, 2))
+    return float(candidates[int(np.argmax(np.round(room, 6)))])
 
 
 def _dense(polygon: Floats) -> Floats:

@@ -103,7 +103,15 @@ class ErrorBudget:
             rows.append([axis, *(_arcsec(value) for value in cells), limit, verdict])
         display.table(
             "tbl:sums",
-            ["axis", "mean", "sigma", f"|mean| + {self.confidence:g} sigma", "plain sum", "limit", ""],
+            [
+                "axis",
+                "mean",
+                "sigma",
+                f"|mean| + {self.confidence:g} sigma",
+                "plain sum",
+                "limit",
+                f"{self.confidence:g} sigma against the limit",
+            ],
             rows,
             caption=f"Sums of the terms that count in {self.index}, arc seconds",
             align="lrrrrrl",
@@ -152,7 +160,7 @@ class ErrorBudget:
         display.table(
             "tbl:shares",
             ["term", *self.budget.axes],
-            [[name, *(f"{100.0 * float(share):.0f} %" for share in row)] for name, row in shares.items()],
+            [[name, *(f"{100.0 * float(share):.1f} %" for share in row)] for name, row in shares.items()],
             caption="Shares of the summed variance",
             align="l" + "r" * len(self.budget.axes),
         )

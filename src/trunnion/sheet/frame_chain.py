@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from trunnion.attitude.conventions import Convention
-from trunnion.attitude.words import degrees_text
+from trunnion.attitude.words import number_text
 from trunnion.figures import sky
 from trunnion.hardware.frame_chains import ChainAttitude, FrameChain, Link, ReadingComparison, wrong_link_reading
 from trunnion.sheet import display, hardware_parts, parameters
@@ -131,7 +131,7 @@ class FrameChainCheck:
         return (
             [*self.convention.angle_names, "lock margin"],
             [
-                [*(degrees_text(float(v), 3) for v in angles), degrees_text(float(margin), 2)]
+                [*(_angle(float(v), 3) for v in angles), _angle(float(margin), 2)]
                 for angles, margin in zip(found.angles, found.margin, strict=True)
             ],
         )
@@ -157,7 +157,7 @@ class FrameChainCheck:
         rows = [
             [
                 f"clock of {term.link}",
-                f"{np.degrees(term.rate):.3g} deg/s × {term.time_error:.3g} s",
+                f"{np.degrees(term.rate):.5g} deg/s × {term.time_error:.3g} s",
                 f"{np.degrees(term.error):.4f}°",
             ]
             for term in self.found.timing
@@ -187,7 +187,7 @@ class FrameChainCheck:
         assert self.convention is not None
         worst = int(np.argmax(found.separation))
         rows = [
-            [name, degrees_text(float(right), 3), degrees_text(float(wrong), 3)]
+            [name, _angle(float(right), 3), _angle(float(wrong), 3)]
             for name, right, wrong in zip(
                 self.convention.angle_names, found.right[worst], found.wrong[worst], strict=True
             )
@@ -248,6 +248,11 @@ class FrameChainCheck:
             caption="Results of this calculation",
             align="llrl",
         )
+
+
+def _angle(value: float, digits: int) -> str:
+    """An angle (rad) with a fixed count of decimals, so that the column lines up."""
+    return f"{number_text(float(np.degrees(value)), digits)}°"
 
 
 def _scipy_chain(path: tuple[str, ...], links: tuple[Link, ...], times: Array) -> Any:

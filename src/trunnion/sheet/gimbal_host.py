@@ -6,6 +6,7 @@ reference's; two axes keep the boresight along one reference direction and leave
 
 from __future__ import annotations
 
+import re
 from functools import cached_property
 from typing import TYPE_CHECKING
 
@@ -14,7 +15,7 @@ from numpy.typing import NDArray
 
 from trunnion.attitude.frames import Frame
 from trunnion.attitude.rotations import matrix_from_quaternion, rotation_angle
-from trunnion.attitude.words import degrees_text
+from trunnion.attitude.words import degrees_text, number_text
 from trunnion.envelope.margins import direction_clearance
 from trunnion.envelope.regions import Track
 from trunnion.envelope.results import AngleRange
@@ -153,7 +154,7 @@ class HostWork:
         found = self.angles[name]
         low, high = abs(np.pi / 2 - found.least.lo), abs(found.largest.hi - np.pi / 2)
         witness = (found.least if low >= high else found.largest).witness
-        return "" if witness is None else witness.where
+        return "" if witness is None else re.sub(r"(?<!\w)-(?=\d)", "−", witness.where)
 
     def show_rates(self) -> None:
         """Largest joint rates for the stated host rate, and the middle axis's keep-out."""
@@ -171,10 +172,10 @@ class HostWork:
                 rows.append([name, joint.name, _rate(rate), _rate(limit) if np.isfinite(limit) else "none", within])
         display.table(
             "tbl:host-rates",
-            ["region", "axis", "largest rate, deg/s", "limit, deg/s", ""],
+            ["region", "axis", "largest rate, deg/s", "limit, deg/s", "against the limit"],
             rows,
             caption="Joint rates while the host turns at up to its stated rate",
-            notes=[f"{name}: host at up to {np.degrees(rate):g} deg/s." for name, rate in self.turning.items()],
+            notes=_turning_notes(self.turning),
             align="llrrl",
         )
         self._show_keep_out()
@@ -213,7 +214,7 @@ class HostWork:
                     if not np.isfinite(found.left[k, side]):
                         continue
                     self._record_travel(name, f"{joint.name}, {word} stop", found.left[k, side])
-                    cells = (degrees_text(float(found.left[k, side]), 2), degrees_text(float(room[k, side]), 2))
+                    cells = (_angle(float(found.left[k, side])), _angle(float(room[k, side])))
                     rows.append([name, joint.name, word, *cells])
         if not rows:
             display.statement("host-travel", "No axis has stops.")
@@ -354,6 +355,18 @@ class HostWork:
                 text = "unbounded" if not np.isfinite(largest) else f"{ceiling_text(largest)} deg/s"
                 rows.append(["largest joint rate", name, text, "certified bound"])
         return rows
+
+
+def _turning_notes(turning: dict[str, float]) -> list[str]:
+    """What the host's rate is over each region; one line where it is the same over all."""
+    if len(set(turning.values())) == 1:
+        return [f"Host at up to {np.degrees(next(iter(turning.values()))):g} deg/s over every region."]
+    return [f"{name}: host at up to {np.degrees(rate):g} deg/s." for name, rate in turning.items()]
+
+
+def _angle(value: float) -> str:
+    """An angle (rad) with two decimals, so that the column lines up."""
+    return f"{number_text(float(np.degrees(value)), 2)}°"
 
 
 def _rate(value: float) -> str:

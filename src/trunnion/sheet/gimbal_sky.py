@@ -226,12 +226,10 @@ class SkyWork:
                 rows.append([name, "not followed", err.fault.cause])
                 continue
             breaks = len(again.plan.unwindings)
-            rows.append(
-                [name, f"{again.seconds_lost:.1f}", "whole" if again.plan.whole else f"{breaks} break(s) at the stops"]
-            )
+            rows.append([name, f"{again.seconds_lost:.1f}", "no break" if again.plan.whole else f"{breaks} break(s)"])
         display.table(
             "tbl:tilted",
-            ["pass", "time lost on the tilted base, s", "stops"],
+            ["pass", "time lost on the tilted base, s", "at the stops"],
             rows,
             caption="The passes on the tilted base",
             align="lrl",

@@ -133,9 +133,9 @@ class AlignmentSurvey:
         rows = [
             [
                 str(number),
-                degrees_text(float(angle), 4),
+                f"{number_text(float(np.degrees(angle)), 4)}°",
                 f"{float(size):.2f}",
-                "outlier" if flag else "",
+                "outlier" if flag else "in line",
             ]
             for number, (angle, size, flag) in enumerate(
                 zip(self.found.residuals, self.found.residual_sigmas, self.found.outliers, strict=True), start=1
@@ -143,7 +143,7 @@ class AlignmentSurvey:
         ]
         display.table(
             "tbl:residuals",
-            ["sighting", "residual", "in standard deviations", ""],
+            ["sighting", "residual", "in standard deviations", "judged"],
             rows,
             caption="Residuals, each sighting judged with itself left out",
             align="rrrl",
@@ -187,7 +187,7 @@ class AlignmentSurvey:
         paragraphs = [
             f"From the drawing to the survey the sensor is turned by {degrees_text(found.angle, found.decimals + 1)} "
             "in "
-            f"all (about the host's axes: {turn}); chance of at least this by accident {100.0 * found.chance:.2g} %: "
+            f"all (about the host's axes: {turn}); chance of at least this by accident {_percent(found.chance)}: "
             f"{says}."
         ]
         if found.pointing is not None:
@@ -268,6 +268,11 @@ class AlignmentSurvey:
         display.table(
             "tbl:results", ["quantity", "value"], rows, caption="Results of this calculation, all measured", align="lr"
         )
+
+
+def _percent(chance: float) -> str:
+    """A chance in percent; one too small to mean anything is only bounded."""
+    return "below 0.01 %" if chance < 1e-4 else f"{100.0 * chance:.2g} %"
 
 
 def _direction(value: Any) -> str:
