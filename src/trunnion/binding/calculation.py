@@ -206,15 +206,26 @@ _RUNS: dict[type, Callable[[list, Words], b.Table]] = {b.ResultRow: _results_tab
 
 
 def _shifted(found: list[b.Block], sheet: Sheet) -> list[b.Block]:
-    """Headings of the notebook below the part's own; a first heading that repeats the title is dropped."""
+    """Headings of the notebook below the part's own; a first heading that repeats the title is dropped, and so is
+    the template's own title with nothing under it, where the calculation bears another one.
+    """
     out = []
     for index, block in enumerate(found):
         if isinstance(block, b.Heading):
-            if index < 3 and block.level == 1 and plain(block.parts).strip().lower() == sheet.title.strip().lower():
+            same = plain(block.parts).strip().lower() == sheet.title.strip().lower()
+            if index < 3 and block.level == 1 and (same or _nothing_under(found[index + 1 :])):
                 continue
             block = replace(block, level=min(max(block.level, 2), _DEEPEST))
         out.append(block)
     return out
+
+
+def _nothing_under(rest: list[b.Block]) -> bool:
+    """Whether only folded code stands before the next heading."""
+    for block in rest:
+        if not (isinstance(block, b.Code) and block.folded):
+            return isinstance(block, b.Heading)
+    return False
 
 
 def _without_echoes(found: list[b.Block]) -> list[b.Block]:
