@@ -338,7 +338,7 @@ class _Composer:
                 "Findings",
                 ("Id", "Against", "Text", "State", "Answer"),
                 [(f.id, f.against, f.text, w.known(f.state), f.answer) for f in p.findings],
-                (1, 1.2, 4, 1, 3),
+                (1.3, 1.3, 4, 0.9, 3) if any(f.answer for f in p.findings) else (1.3, 1.3, 6, 0.9, 1),
             ),
             (
                 "Deviations",
@@ -382,7 +382,7 @@ class _Composer:
         if not self.package.changes:
             return None
         rows = tuple(tuple(b.line(x) for x in (c.what, c.before, c.after, c.effect)) for c in self.package.changes)
-        table = b.Table(self.heads("What", "Before", "After", "Effect"), rows, "llll", widths=(2.4, 2.4, 2.4, 3))
+        table = b.Table(self.heads("What", "Before", "After", "Effect"), rows, "llll", widths=(3.8, 2.3, 2.3, 2.6))
         title = f"{self.words('Changes against revision')} {self.package.document.supersedes or '–'}"
         return b.Part("changes", title, (table,), number=self.numbered(), flows=bool(self.package.statements))
 

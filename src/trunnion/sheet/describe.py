@@ -13,6 +13,7 @@ from trunnion.attitude.words import degrees_text
 
 # What a row shows elsewhere or not at all.
 _APART = frozenset({"name", "source", "text"})
+_FRAMES = {"reference": "reference frame", "body": "body frame"}  # a frame is often named as its part is
 
 
 def convention_rows(name: str, plain: Mapping[str, Any]) -> list[dict[str, str]]:
@@ -37,13 +38,18 @@ def _row(title: str, plain: Mapping[str, Any]) -> dict[str, str]:
 def words(value: Any) -> str:
     """A plain value in one line: `sequence 3-2-1; about moving axes; zero forward: north, down: down`."""
     if isinstance(value, Mapping):
-        return "; ".join(f"{key} {_inner(entry)}" for key, entry in value.items() if key not in _APART)
+        kept = [(key, entry) for key, entry in value.items() if key not in _APART]
+        return "; ".join(f"{_FRAMES.get(key, key) if _is_frame(entry) else key} {_inner(entry)}" for key, entry in kept)
     return _inner(value)
+
+
+def _is_frame(value: Any) -> bool:
+    return isinstance(value, Mapping) and "axes" in value and "name" in value
 
 
 def _inner(value: Any) -> str:
     if isinstance(value, Mapping):
-        if "axes" in value and "name" in value:  # a frame: its name and axes say all
+        if _is_frame(value):  # its name and axes say all
             return f"{value['name']} ({_inner(value['axes'])})"
         if "sequence" in value and "name" in value:  # a convention stated among the inputs or beside
             return f"{value['name']} ({value['sequence']} about {value.get('about', 'the axes its standard names')})"
@@ -52,7 +58,8 @@ def _inner(value: Any) -> str:
         return ", ".join(_inner(entry) for entry in value)
     if isinstance(value, bool):
         return "yes" if value else "no"
-    return f"{value:.12g}" if isinstance(value, float) else str(value)
+    text = f"{value:.12g}" if isinstance(value, float) else str(value)
+    return f"−{text[1:]}" if text[:1] == "-" and text[1:2].isdigit() else text
 
 
 def angles_text(convention: Convention, R_rb: NDArray[np.float64]) -> str:
