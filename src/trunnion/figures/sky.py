@@ -178,11 +178,12 @@ def growth_curves(margins: Floats, curves: Mapping[str, Floats], *, turn: float,
         )
     axes.axvline(turn, color=QUIET, linewidth=0.7)
     axes.annotate("misalignment", (turn, 1.0), (3, -3), xycoords=("data", "axes fraction"), textcoords="offset points",
-                  va="top", fontsize=6.5, color=QUIET)  # fmt: skip
+                  va="top", fontsize=6.5, color=QUIET,
+                  bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.4})  # fmt: skip
     if here is not None:
         axes.axvline(here, label="least margin of the regions", **LIMIT)
     axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
     axes.set_xlabel("lock margin, deg")
     axes.set_ylabel("error of the outer angles, deg")
-    axes.legend(loc="center")
+    axes.legend(loc="center", frameon=True, facecolor="white", framealpha=0.9, edgecolor="none")
     return to_svg(figure)

@@ -237,8 +237,11 @@ class HostWork:
     def show_read_back(self) -> None:
         """Joint angles along a record, and the host's attitude read back from them."""
         tracks = self.gimbal.tracks
-        if not tracks or self.axes == 4:
+        if not tracks:
             display.statement("read-back", "No record of the host is given, so no joint angles against time are shown.")
+            return
+        if self.axes == 4:
+            display.statement("read-back", "Four axes: the joint angles along the record are shown below.")
             return
         for name, track in tracks.items():
             self._show_record(name, track)
@@ -335,9 +338,11 @@ class HostWork:
 
     def show_checks(self) -> None:
         """Solutions over the regions again: the payload must stand where it was to be held."""
-        if self.axes != 4:
-            for name, region in self.regions.items():
-                gimbal_checks.check_held(self, name, attitudes(region)[:256])
+        if self.axes == 4:
+            display.statement("no-check", "No independent check is made of the free turn of four axes.")
+            return
+        for name, region in self.regions.items():
+            gimbal_checks.check_held(self, name, attitudes(region)[:256])
 
     def result_rows(self) -> list[list[str]]:
         """Clearances and rates among the results."""
