@@ -7,7 +7,7 @@ from collections.abc import Mapping
 import numpy as np
 from numpy.typing import NDArray
 
-from trunnion.attitude.words import degrees_text
+from trunnion.attitude.words import degrees_text, number_text
 from trunnion.envelope.regions import Region
 from trunnion.envelope.results import AngleRange
 from trunnion.figures import sky
@@ -51,7 +51,8 @@ def show_vehicle(mount: Mount) -> None:
     )
     display.record(
         quantity="vehicle attitude error", of=mount.name, over=None, lo=0.0, hi=size, unit="deg",
-        basis="certified bound" if what == "bound" else "sampled", note=f"from the mount alone, {what}",
+        basis="certified bound" if what == "bound" else "sampled",
+        note="the mount alone" if what == "bound" else f"the mount alone, {what}",
     )  # fmt: skip
 
 
@@ -96,12 +97,13 @@ def show_errors(mount: Mount, found: Mapping[str, AngleErrors]) -> None:
                     mount, over, name, float(np.degrees(errors.certified[k])), float(np.degrees(errors.monte_carlo[k]))
                 )
     draws = max(errors.draws for errors in found.values())
+    sigma = any(errors.sigma is not None for errors in found.values())  # only a covariance has one
     display.table(
         "tbl:angle-errors",
-        ["region", "angle", "linear", "certified worst", "Monte Carlo", "one sigma, linear"],
-        rows,
+        ["region", "angle", "linear", "certified worst", "Monte Carlo", *(["one sigma, linear"] if sigma else [])],
+        rows if sigma else [row[:-1] for row in rows],
         caption="Error of the sensor's own angles from the misalignment, by three routes",
-        align="llrrrr",
+        align="llrrrr" if sigma else "llrrr",
         notes=[
             f"Monte Carlo: {draws} draws, half of them at the sample of least margin; the largest error, or the "
             "99.73 % point "
@@ -140,8 +142,8 @@ def show_growth(mount: Mount, margins: Mapping[str, AngleRange]) -> None:
             [
                 degrees_text(row.margin, 1),
                 f"{row.gain:.2f}",
-                degrees_text(row.linear, 3),
-                degrees_text(row.certified, 3),
+                f"{number_text(float(np.degrees(row.linear)), 3)}°",
+                f"{ceiling_text(float(np.degrees(row.certified)), 3)}°",
             ]
             for row in rows
         ],
