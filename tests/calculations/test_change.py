@@ -9,7 +9,7 @@ from pathlib import Path
 import pytest
 
 from trunnion.calculations import trial as trials
-from trunnion.calculations.compare import change_rows, compare_results
+from trunnion.calculations.compare import change_rows, compare_results, interval
 from trunnion.calculations.impact import impact
 from trunnion.calculations.impact_text import impact_lines
 from trunnion.calculations.issue import alterations, freeze
@@ -349,3 +349,9 @@ def test_a_sweep_of_a_parameter_brackets_the_flip_with_recorded_results(computed
     assert flip.end - flip.start == 5.0
     assert found.series("R1")["ordinary"][0] == [90.0 - step.number for step in found.steps]
     assert not any(step.failed for step in found.steps)
+
+
+def test_a_one_sided_number_says_which_side_it_bounds():
+    plain = {"lo": 28.0, "hi": None, "attained": None, "unit": "deg", "basis": "certified bound"}
+    assert interval(plain) == "at least 28 deg (certified bound)"
+    assert interval({**plain, "lo": None, "hi": 3.0}) == "at most 3 deg (certified bound)"

@@ -177,7 +177,7 @@ def change_rows(comparison: Comparison) -> list[tuple[str, str, str, str]]:
     rows = []
     for flip in comparison.flips:
         counts = "" if flip.counts else " (does not count)"
-        limits = "" if flip.old_limit == flip.new_limit else f"limit {flip.old_limit} → {flip.new_limit}"
+        limits = "" if flip.old_limit == flip.new_limit else f"limit {flip.old_limit or '—'} → {flip.new_limit or '—'}"
         rows.append((f"{flip.requirement}, {flip.candidate}{counts}", flip.old or "—", flip.new or "—", limits))
     for result in comparison.changed_results:
         where = f" over {result.over}" if result.over else ""
@@ -200,7 +200,14 @@ def interval(plain: Mapping[str, Any] | None) -> str:
     if plain is None:
         return "—"
     ends = ["—" if plain[name] is None else f"{plain[name]:.10g}" for name in ("lo", "hi")]
-    text = ends[0] if ends[0] == ends[1] else f"{ends[0]} … {ends[1]}"
+    if ends[0] == ends[1]:
+        text = ends[0]
+    elif ends[1] == "—":
+        text = f"at least {ends[0]}"
+    elif ends[0] == "—":
+        text = f"at most {ends[1]}"
+    else:
+        text = f"{ends[0]} … {ends[1]}"
     return f"{text} {plain['unit']} ({plain['basis']})".replace("  ", " ")
 
 
