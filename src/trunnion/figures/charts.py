@@ -15,13 +15,14 @@ from numpy.typing import NDArray
 
 from trunnion.figures.style import (
     COLOURS,
-    DASHES,
     INK,
     LIMIT,
     LOCK,
     QUIET,
     REGION,
     WORST,
+    colour_of,
+    dash_of,
     house_look,
     label,
     new_axes,
@@ -74,8 +75,8 @@ def margin_histogram(
             share,
             edges,
             label=label(name),
-            color=COLOURS[index % len(COLOURS)],
-            linestyle=DASHES[index % len(DASHES)],
+            color=colour_of(index),
+            linestyle=dash_of(index),
             linewidth=1.5,
         )
     axes.set_xlim(float(edges[0]), float(edges[-1]))
@@ -191,7 +192,7 @@ def margin_against_time(
             ha="center",
         )
     for index, (name, margin) in enumerate(margins.items()):
-        colour, dash = COLOURS[index % len(COLOURS)], DASHES[index % len(DASHES)]
+        colour, dash = colour_of(index), dash_of(index)
         axes.plot(times, margin, label=label(name), color=colour, linestyle=dash)
         if worst and name in worst:
             axes.plot(*worst[name], clip_on=False, **WORST)
@@ -214,12 +215,12 @@ def run_margins(runs: Sequence[str], margins: Mapping[str, Sequence[float]], *, 
             places,
             values,
             label=label(name),
-            color=COLOURS[index % len(COLOURS)],
+            color=colour_of(index),
             linestyle="none",
             marker="osD^vP"[index % 6],
             markersize=5 if len(runs) <= _NAMED_RUNS else 2.5,
             clip_on=False,
-            markerfacecolor="none" if index % 2 else COLOURS[index % len(COLOURS)],
+            markerfacecolor="none" if index % 2 else colour_of(index),
         )
     if len(runs) <= _NAMED_RUNS:
         axes.set_xticks(places, [label(run) for run in runs], rotation=45, ha="right")
@@ -242,8 +243,8 @@ def gain_curves(middle: Floats, curves: Mapping[str, Floats], *, locks: Sequence
             middle,
             gain,
             label=label(name),
-            color=COLOURS[index % len(COLOURS)],
-            linestyle=DASHES[index % len(DASHES)],
+            color=colour_of(index),
+            linestyle=dash_of(index),
         )
     for number, lock in enumerate(locks):
         axes.axvline(lock, color=QUIET, linewidth=0.7)
@@ -261,8 +262,8 @@ def error_laws(margins: Floats, pairs: Mapping[str, tuple[Floats, Floats]]) -> s
     figure = new_figure(height_mm=72)
     axes = new_axes(figure)
     for index, (name, (measured, law)) in enumerate(pairs.items()):
-        colour = COLOURS[index % len(COLOURS)]
-        axes.loglog(margins, law, color=colour, linestyle=DASHES[index % len(DASHES)], label=f"{label(name)}, law")
+        colour = colour_of(index)
+        axes.loglog(margins, law, color=colour, linestyle=dash_of(index), label=f"{label(name)}, law")
         axes.loglog(margins, measured, color=colour, linestyle="none", marker="osD"[index % 3], markersize=4)
     axes.xaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
     axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:.0e}"))
@@ -288,13 +289,13 @@ def varied_value(
     for start, end in flips:
         axes.axvspan(start, end, facecolor="#efe3d8", edgecolor=COLOURS[1], hatch="////", linewidth=0.4)
     for index, (name, (low, high)) in enumerate(series.items()):
-        colour = COLOURS[index % len(COLOURS)]
+        colour = colour_of(index)
         axes.plot(
             values,
             low,
             label=label(name),
             color=colour,
-            linestyle=DASHES[index % len(DASHES)],
+            linestyle=dash_of(index),
             marker="o",
             markersize=3,
         )

@@ -24,6 +24,8 @@ from trunnion.figures.style import (
     RULE,
     WORST,
     bare_axes,
+    colour_of,
+    dash_of,
     house_look,
     label,
     new_figure,
@@ -131,9 +133,9 @@ def rings_drawing(
         axes.plot(
             [tail[0], tip[0]],
             [tail[1], tip[1]],
-            color=COLOURS[index % len(COLOURS)],
+            color=colour_of(index),
             linewidth=2.4 if marked else 1.2,
-            linestyle=DASHES[index % len(DASHES)],
+            linestyle=dash_of(index),
         )
         text = f"{index + 1} {label(name)}" + (" (parallel)" if marked else "")
         shift = 0.15 * sum(float(np.hypot(*(tip - other)[:2])) < 0.2 for other in tips)
@@ -143,7 +145,7 @@ def rings_drawing(
             (tip[0], tip[1] + shift),
             (4, 3),
             textcoords="offset points",
-            color=COLOURS[index % len(COLOURS)],
+            color=colour_of(index),
             bbox=_GROUND,
         )
     _frame_panel(axes, "")
@@ -188,14 +190,14 @@ def sphere_drawing(
 
 def _track(axes: Axes, view: Floats, directions: Floats, name: str, index: int) -> None:
     points = directions @ view.T
-    colour = COLOURS[index % len(COLOURS)]
+    colour = colour_of(index)
     front = points[:, 2] >= 0
     if len(points) > 400 or name.endswith("(points)"):
         axes.plot(points[front, 0], points[front, 1], ".", markersize=1.6, color=colour, label=label(name))
         return
     shown = np.where(front[:, None], points, np.nan)
     hidden = np.where(front[:, None], np.nan, points)
-    axes.plot(shown[:, 0], shown[:, 1], color=colour, linestyle=DASHES[index % len(DASHES)], label=label(name))
+    axes.plot(shown[:, 0], shown[:, 1], color=colour, linestyle=dash_of(index), label=label(name))
     axes.plot(hidden[:, 0], hidden[:, 1], color=colour, linewidth=0.5, alpha=0.5)
 
 
@@ -317,7 +319,7 @@ def _ring(axes: Axes, view: Floats, axis: Floats, across: Floats, radius: float,
     two = two / size
     turn = np.linspace(0.0, 2 * np.pi, 181)[:, None]
     points = radius * (np.cos(turn) * one + np.sin(turn) * two) @ view.T
-    axes.plot(points[:, 0], points[:, 1], color=COLOURS[index % len(COLOURS)], linewidth=2.2)
+    axes.plot(points[:, 0], points[:, 1], color=colour_of(index), linewidth=2.2)
 
 
 def _frame_panel(axes: Axes, caption: str, *, size: float = 1.28) -> None:

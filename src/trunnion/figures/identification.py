@@ -8,7 +8,7 @@ import numpy as np
 from matplotlib.ticker import FuncFormatter, MaxNLocator, NullFormatter
 from numpy.typing import NDArray
 
-from trunnion.figures.style import COLOURS, INK, LIMIT, house_look, label, new_axes, new_figure, to_svg
+from trunnion.figures.style import COLOURS, INK, LIMIT, colour_of, house_look, label, new_axes, new_figure, to_svg
 
 Floats = NDArray[np.float64]
 
@@ -28,7 +28,7 @@ def residual_chart(residuals: Mapping[str, Floats], *, limit: float | None = Non
             marker=_MARKS[index % len(_MARKS)],
             markersize=3.2,
             markerfacecolor="white" if index else COLOURS[0],
-            markeredgecolor=INK if index == 0 else COLOURS[index % len(COLOURS)],
+            markeredgecolor=INK if index == 0 else colour_of(index),
             markeredgewidth=0.7,
             linestyle="none",
             label=label(name),

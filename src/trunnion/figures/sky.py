@@ -17,6 +17,8 @@ from trunnion.figures.style import (
     LIMIT,
     LOCK,
     QUIET,
+    colour_of,
+    dash_of,
     house_look,
     label,
     new_axes,
@@ -101,7 +103,7 @@ def sky_plot(
             np.radians(azimuth),
             90.0 - elevation,
             color=COLOURS[(0, 2, 3, 4, 5)[index % 5]],
-            linestyle=DASHES[index % len(DASHES)],
+            linestyle=dash_of(index),
             label=label(name),
         )
     axes.legend(loc="upper center", bbox_to_anchor=(0.5, -0.06), ncols=3)
@@ -148,7 +150,7 @@ def joint_history(
     figure = new_figure(height_mm=18 + 34 * len(angles))
     for row, (name, values) in enumerate(angles.items(), start=1):
         axes = new_axes(figure, len(angles), 1, row)
-        axes.plot(times, values, color=COLOURS[(row - 1) % len(COLOURS)], linestyle=DASHES[(row - 1) % len(DASHES)])
+        axes.plot(times, values, color=colour_of(row - 1), linestyle=dash_of(row - 1))
         low, high = float(np.nanmin(values)), float(np.nanmax(values))
         room = max(0.15 * (high - low), 1.0)
         for stop in (stops or {}).get(name, ()):
@@ -173,8 +175,8 @@ def growth_curves(margins: Floats, curves: Mapping[str, Floats], *, turn: float,
             margins,
             values,
             label=label(name),
-            color=COLOURS[index % len(COLOURS)],
-            linestyle=DASHES[index % len(DASHES)],
+            color=colour_of(index),
+            linestyle=dash_of(index),
         )
     axes.axvline(turn, color=QUIET, linewidth=0.7)
     axes.annotate("misalignment", (turn, 1.0), (3, -3), xycoords=("data", "axes fraction"), textcoords="offset points",

@@ -112,6 +112,16 @@ def bare_axes(figure: Figure, rows: int = 1, columns: int = 1, index: int = 1) -
     return axes
 
 
+def colour_of(index: int) -> str:
+    """The colour of series number `index` from 0; they come round again after the last."""
+    return COLOURS[index % len(COLOURS)]
+
+
+def dash_of(index: int) -> Any:
+    """The dash of series number `index` from 0, as matplotlib's `linestyle`."""
+    return DASHES[index % len(DASHES)]
+
+
 def label(text: str) -> str:
     """Text from the spec as it may stand in a figure: shown literally, missing characters made visible."""
     return visible_text(text)
