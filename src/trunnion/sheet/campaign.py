@@ -18,6 +18,7 @@ from trunnion.figures import charts
 from trunnion.sheet import display, independent, parameters, region_checks, sharing
 from trunnion.sheet.campaign_runs import Run, followed_least, read_run, runs_of, second_look
 from trunnion.sheet.describe import convention_rows, region_rows
+from trunnion.sheet.extremes import record_extreme
 from trunnion.sheet.rounding import ceiling_text, floor_text
 from trunnion.units import parse_quantity
 
@@ -306,20 +307,7 @@ class CampaignSweep:
         return next(iter(self.margins.values())).least.basis.value
 
     def _record(self, quantity: str, name: str, extreme: Extreme) -> None:
-        witness = extreme.witness
-        display.record(
-            quantity=quantity,
-            of=name,
-            over=self.name,
-            lo=float(np.degrees(extreme.lo)),
-            hi=float(np.degrees(extreme.hi)),
-            unit="deg",
-            basis=extreme.basis,
-            attained=None if witness is None else float(np.degrees(witness.value)),
-            witness=None
-            if witness is None
-            else {"matrix": witness.matrix, "where": witness.where, "time": witness.time},
-        )
+        record_extreme(extreme, quantity=quantity, of=name, over=self.name)
 
 
 def _plan(conventions: Mapping[str, Convention], plain: Mapping[str, Any]) -> Plan:

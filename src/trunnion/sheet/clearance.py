@@ -18,6 +18,7 @@ from trunnion.envelope.results import AngleRange, Extreme
 from trunnion.errors import CalculationError
 from trunnion.sheet import display, independent, parameters, region_checks
 from trunnion.sheet.describe import region_rows, words
+from trunnion.sheet.extremes import record_extreme
 from trunnion.sheet.regions import Regions
 from trunnion.sheet.rounding import ceiling_text, floor_text
 from trunnion.spec.meaning.envelopes import STATEMENT_KEYS
@@ -196,19 +197,7 @@ class DirectionClearance:
     def _record(self, quantity: str, name: str, over: str, extreme: Extreme) -> None:
         witness, slack = extreme.witness, 1e-9
         reached = witness is not None and extreme.lo - slack <= witness.value <= extreme.hi + slack
-        display.record(
-            quantity=quantity,
-            of=name,
-            over=over,
-            lo=float(np.degrees(extreme.lo)),
-            hi=float(np.degrees(extreme.hi)),
-            unit="deg",
-            basis=extreme.basis,
-            attained=float(np.degrees(witness.value)) if witness is not None and reached else None,
-            witness=None
-            if witness is None
-            else {"matrix": witness.matrix, "where": witness.where, "time": witness.time},
-        )
+        record_extreme(extreme, reached=reached, quantity=quantity, of=name, over=over)
 
 
 def _statement(plain: Mapping[str, Any]) -> dict[str, Any]:

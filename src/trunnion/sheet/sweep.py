@@ -26,6 +26,7 @@ from trunnion.errors import TrunnionError
 from trunnion.figures import charts, drawings
 from trunnion.sheet import display, parameters, region_checks
 from trunnion.sheet.describe import angles_text, convention_rows, region_rows, table_lines
+from trunnion.sheet.extremes import record_extreme
 from trunnion.sheet.maps import angle_maps, body_track, gains, histogram, phases_along
 from trunnion.sheet.rounding import ceiling_text, floor_text, interval_text
 from trunnion.units import parse_quantity
@@ -378,21 +379,8 @@ class EnvelopeSweep:
         )
 
     def _record(self, quantity: str, name: str, over: str, extreme: Extreme) -> None:
-        witness = extreme.witness
-        display.record(
-            quantity=quantity,
-            of=name,
-            over=over,
-            lo=float(np.degrees(extreme.lo)),
-            hi=float(np.degrees(extreme.hi)),
-            unit="deg",
-            basis=extreme.basis,
-            attained=None if witness is None else float(np.degrees(witness.value)),
-            witness=None
-            if witness is None
-            else {"matrix": witness.matrix, "where": witness.where, "time": witness.time},
-            note=f"governed by {_governed(extreme)}" if extreme.governing else "",
-        )
+        note = f"governed by {_governed(extreme)}" if extreme.governing else ""
+        record_extreme(extreme, quantity=quantity, of=name, over=over, note=note)
 
     def _witness_row(self, name: str, over: str) -> list[str]:
         witness = self.margins[name, over].least.witness
