@@ -8,10 +8,9 @@ scipy's Rotation per attitude of a grid of 41 x 41 x 41, which proves nothing an
 
 from __future__ import annotations
 
-import time
-
 import numpy as np
 from scipy.spatial.transform import Rotation
+from timing import timed
 
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.frames import Frame
@@ -22,16 +21,6 @@ from trunnion.envelope.regions import Box
 from trunnion.envelope.subdivision import self_check
 
 RANGES = tuple(tuple(np.radians(span)) for span in ((-180.0, 180.0), (-25.0, 35.0), (-40.0, 40.0)))
-
-
-def timed(function, repeats: int = 20) -> float:
-    """Best of some runs, in seconds."""
-    best = np.inf
-    for _ in range(repeats):
-        start = time.perf_counter()
-        function()
-        best = min(best, time.perf_counter() - start)
-    return best
 
 
 def batch_rate(boxes: int = 500) -> float:
@@ -59,7 +48,7 @@ def main() -> None:
     convention = Convention("3-2-1", frame, frame, Sequence.ZYX, Sense.MOVING, names)
     other = Convention("1-3-2", frame, frame, Sequence.XZY, Sense.MOVING, names)
     box = Box(convention, RANGES)
-    one = timed(lambda: entry_margin_table(box))
+    one = timed(lambda: entry_margin_table(box), 20)
     print(f"one box, nine pairs, least and largest with witnesses: {one * 1e3:.1f} ms")
     print(f"in a batch: {batch_rate():.0f} boxes/s, nine pairs each")
     print(f"41-cubed grid by scipy, no proof: {timed(grid_margins, 5) / one:.1f} x the time of the closed form")

@@ -9,11 +9,11 @@ motionless one, on which screening has least to hold on to.
 from __future__ import annotations
 
 import sys
-import time
 import warnings
 
 import numpy as np
 from scipy.spatial.transform import Rotation
+from timing import timed
 
 from trunnion.attitude.sequences import Sequence
 from trunnion.envelope.margins import entry_margin_table
@@ -28,16 +28,6 @@ def smooth_path(rows: int, step: float, wander: float, seed: int) -> np.ndarray:
     angles = np.stack([np.sin(2 * np.pi * (f * t + rng.uniform())) for f in rng.uniform(1, 9, 3)], axis=1) * wander
     angles[:, 0] += step * np.arange(rows)
     return np.roll(Rotation.from_euler("ZYX", angles).as_quat(), 1, axis=1)
-
-
-def timed(function, repeats: int = 5) -> float:
-    """Best of some runs, in seconds."""
-    best = np.inf
-    for _ in range(repeats):
-        start = time.perf_counter()
-        function()
-        best = min(best, time.perf_counter() - start)
-    return best
 
 
 def twelve_as_euler(q: np.ndarray) -> None:
@@ -60,8 +50,8 @@ def main() -> None:
     ):
         q = smooth_path(rows, step, wander, 5)
         track = Track(np.arange(rows, dtype=float), q)
-        ours = timed(lambda track=track: entry_margin_table(track))
-        only_least = timed(lambda q=q: end_angles(rows_of(q), u, v))
+        ours = timed(lambda track=track: entry_margin_table(track), 5)
+        only_least = timed(lambda q=q: end_angles(rows_of(q), u, v), 5)
         theirs = timed(lambda q=q: twelve_as_euler(q), 1)
         print(
             f"{name}: least and largest with witnesses {ours * 1e3:.0f} ms ({rows / ours / 1e6:.0f} M rows/s), "

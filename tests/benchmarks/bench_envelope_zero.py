@@ -13,6 +13,7 @@ import time
 import numpy as np
 from scipy.spatial import ConvexHull
 from scipy.spatial.transform import Rotation
+from timing import timed
 
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.frames import Frame
@@ -20,16 +21,6 @@ from trunnion.attitude.sequences import Sense, Sequence
 from trunnion.envelope.farthest import farthest_line
 from trunnion.envelope.regions import Box
 from trunnion.envelope.zero import Side, best_zero
-
-
-def timed(function, repeats: int = 3) -> float:
-    """Best of some runs, in seconds."""
-    best = np.inf
-    for _ in range(repeats):
-        start = time.perf_counter()
-        function()
-        best = min(best, time.perf_counter() - start)
-    return best
 
 
 def box_points(count: int) -> np.ndarray:
@@ -48,7 +39,7 @@ def main() -> None:
         ("100,000 of a box", box_points(100_000)),
         ("1,000,000 of a box", box_points(1_000_000)),
     ):
-        ours = timed(lambda points=points: farthest_line(points))
+        ours = timed(lambda points=points: farthest_line(points), 3)
         line = f"{name}: {ours * 1e3:.0f} ms"
         if len(points) <= 100_000:
             whole = timed(lambda points=points: ConvexHull(np.concatenate([points, -points])), 1)

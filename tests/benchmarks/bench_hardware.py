@@ -9,10 +9,9 @@ the 24 right-angle mounts over ten regions at most 1 s.
 
 from __future__ import annotations
 
-import time
-
 import numpy as np
 from scipy.spatial.transform import Rotation
+from timing import timed
 
 from trunnion.attitude.conventions import Convention
 from trunnion.attitude.frames import Frame
@@ -27,24 +26,14 @@ from trunnion.hardware.ranking import rank_right_angle_mounts
 from trunnion.hardware.sectors import Sector, sectors_along_pass
 
 
-def timed(function, repeats: int = 3) -> float:
-    """Best of some runs, in seconds."""
-    best = np.inf
-    for _ in range(repeats):
-        start = time.perf_counter()
-        function()
-        best = min(best, time.perf_counter() - start)
-    return best
-
-
 def joint_solutions(count: int = 1_000_000) -> None:
     """Both joint solutions against scipy's one, in the same run."""
     axes = np.eye(3)[[2, 1, 0]]
     chain = GimbalChain("chain", tuple(Joint(f"a{k}", axis) for k, axis in enumerate(axes)))
     rotations = Rotation.random(count, random_state=1)
     matrices = rotations.as_matrix()
-    ours = timed(lambda: attitude_solutions(chain, matrices))
-    theirs = timed(lambda: rotations.as_davenport(axes, "intrinsic"))
+    ours = timed(lambda: attitude_solutions(chain, matrices), 3)
+    theirs = timed(lambda: rotations.as_davenport(axes, "intrinsic"), 3)
     print(f"joint solutions of {count:,} attitudes: {ours:.2f} s, {ours / theirs:.2f} x scipy as_davenport (wanted 5)")
 
 
@@ -68,7 +57,7 @@ def day_of_passes(number: int = 14) -> None:
         "base tilt": lambda: best_base_tilt(chain, tracks, largest=np.radians(30)),
         "sector": lambda: [sectors_along_pass([mast], track) for track in tracks],
     }
-    times = {name: timed(part) for name, part in parts.items()}
+    times = {name: timed(part, 3) for name, part in parts.items()}
     said = ", ".join(f"{name} {seconds:.2f} s" for name, seconds in times.items())
     samples = sum(len(track.times) for track in tracks)
     print(f"day of {number} passes, {samples:,} samples: {said}; together {sum(times.values()):.2f} s (wanted 2)")
@@ -89,7 +78,7 @@ def mount_ranking(regions: int = 10) -> None:
         tables = {f"region {k}": entry_margin_table(box).least for k, box in enumerate(boxes)}
         rank_right_angle_mounts(tables, convention, body)
 
-    print(f"24 mounts over {regions} boxes, margins included: {timed(rank):.3f} s (wanted 1)")
+    print(f"24 mounts over {regions} boxes, margins included: {timed(rank, 3):.3f} s (wanted 1)")
 
 
 def main() -> None:
