@@ -185,14 +185,14 @@ _CAUTION = {
     "en": (
         "This package states what was computed from the inputs it lists, on the assumptions it lists. It is no "
         "design release and no clearance for use; a competent person checks and approves it before anything "
-        "rests on it. Verdicts are computed by rule and compare with a slack of {slack}; bounds are printed "
-        "rounded to the unsafe side. A margin from recorded data is that of the recorded estimate."
+        "rests on it. Verdicts are computed by rule and compare with a slack of {slack}; a least value is "
+        "printed rounded down, a largest one up. A margin from recorded data is that of the recorded estimate."
     ),
     "de": (
         "Dieses Dokument gibt wieder, was aus den aufgeführten Eingaben unter den aufgeführten Annahmen "
         "berechnet wurde. Es ist keine Freigabe eines Entwurfs und keine Erlaubnis zum Betrieb; eine fachkundige "
         "Person prüft und genehmigt es, bevor etwas darauf gestützt wird. Urteile folgen einer Regel und "
-        "vergleichen mit einem Spielraum von {slack}; Schranken sind zur unsicheren Seite gerundet. Ein Abstand "
+        "vergleichen mit einem Spielraum von {slack}; kleinste Werte sind ab-, größte aufgerundet. Ein Abstand "
         "aus Messdaten ist der des aufgezeichneten Schätzwertes."
     ),
 }
